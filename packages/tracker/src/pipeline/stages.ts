@@ -1,0 +1,35 @@
+import type { DetectionBlock, LinkedBlock, SampleBlock } from '../core/columns.js';
+import type { RunContext } from '../core/context.js';
+import type { DumpScan } from '../detections/dump.js';
+import type { RunSettings } from '../run/settings.js';
+
+/** What the first look at the data fixes for the whole run (bounded work: the first frames or pairs only). */
+export interface Prior {
+  /** Position noise (standard deviation) per axis, length unit. */
+  readonly noise: readonly [number, number, number];
+  /** Frames in the window of the local fit, odd. */
+  readonly span: number;
+  /** Reach for linking, length unit, per axis. */
+  readonly reach: readonly [number, number, number];
+  /** Mean spacing n^(-1/D) of one frame's particles, length unit. */
+  readonly spacing: number;
+  /** Mean displacement a frame interval over `spacing`, and its 95th percentile. */
+  readonly displacementRatio: number;
+  readonly displacementRatio95: number;
+}
+
+/** What every stage is handed. */
+export interface StageInput {
+  readonly settings: RunSettings;
+  readonly scan: DumpScan;
+  readonly prior: Prior;
+  readonly context: RunContext;
+}
+
+/** Stages of the data path, each a transform of a stream of blocks; later ones are added to the list in pipeline/list.ts. */
+export type CalibrateStage = (
+  input: Omit<StageInput, 'prior'>,
+  blocks: AsyncIterable<DetectionBlock>,
+) => AsyncGenerator<DetectionBlock>;
+export type LinkStage = (input: StageInput, blocks: AsyncIterable<DetectionBlock>) => AsyncGenerator<LinkedBlock>;
+export type FitStage = (input: StageInput, blocks: AsyncIterable<LinkedBlock>) => AsyncGenerator<SampleBlock>;
