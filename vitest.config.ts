@@ -1,7 +1,10 @@
 import { defineConfig } from 'vitest/config';
 
-// Workers start from built JavaScript, so tests import the packages by name and the build comes first.
+// Tests read the TypeScript sources through the `source` condition; only worker threads and the CLI run from
+// `dist`, which `npm test` builds first.
 export default defineConfig({
+  resolve: { conditions: ['source'] },
+  ssr: { resolve: { conditions: ['source'] } },
   test: {
     include: ['tests/**/*.test.ts'],
     exclude: ['tests/long/**', 'tests/cluster/**', '**/node_modules/**'],
