@@ -1,5 +1,6 @@
 import type { DetectionBlock, LinkedBlock, SampleBlock } from '../core/columns.js';
 import type { RunContext } from '../core/context.js';
+import type { CalibrationTally } from '../detections/calibrate.js';
 import type { DumpScan } from '../detections/dump.js';
 import type { RunSettings } from '../run/settings.js';
 
@@ -28,7 +29,7 @@ export interface StageInput {
 
 /** Stages of the data path, each a transform of a stream of blocks; later ones are added to the list in pipeline/list.ts. */
 export type CalibrateStage = (
-  input: Omit<StageInput, 'prior'>,
+  input: Omit<StageInput, 'prior'> & { readonly tally: CalibrationTally },
   blocks: AsyncIterable<DetectionBlock>,
 ) => AsyncGenerator<DetectionBlock>;
 export type LinkStage = (input: StageInput, blocks: AsyncIterable<DetectionBlock>) => AsyncGenerator<LinkedBlock>;

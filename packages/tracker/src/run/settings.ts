@@ -71,7 +71,7 @@ export type GeometrySettings =
       readonly scale: Quantity;
       /** Length of one dump unit along z where it differs; null: as scale. */
       readonly scaleZ: Quantity | null;
-      /** Dump coordinates of the point that becomes (0, 0, 0). */
+      /** Point that becomes (0, 0, 0), in dump units, x and y counted from the outer corner of the first pixel. */
       readonly origin: readonly [number, number, number];
       /** Standard uncertainty of the origin, dump units. */
       readonly originUncertainty: number | null;
