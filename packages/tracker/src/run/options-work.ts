@@ -1,0 +1,163 @@
+import type { SettingRow } from './setting-kinds.js';
+import { choice, row } from './setting-row.js';
+
+/**
+ * How the run is worked on: linking, smoothing, screening, grid, results. Defaults that are figures, and where they
+ * come from:
+ * - `linking.bridge` 2, `linking.shortest` 5, `linking.depth-noise` 3 (2 to 4 along the line of sight),
+ *   `grid.fewest-for-mean` 5, `grid.fewest-for-stress` 50: common practice, no source.
+ * - `screening.median-threshold` 2 and 8 neighbours: Westerweel & Scarano 2005, Exp. Fluids 39, 1096,
+ *   doi:10.1007/s00348-005-0016-6.
+ * - `screening.stuck-factor` 4: of Gaussian noise 1 position in 16 000 lies farther out.
+ * - `linking.risk-limit` 0.5: a link more likely wrong than right is left out.
+ */
+export const WORK_SETTINGS: readonly SettingRow[] = [
+  row(
+    'linking.reach',
+    'reach',
+    { type: 'quantity', dimension: 'length', sign: 'positive', auto: true },
+    'auto',
+    '0.3 mm',
+    'How far from its predicted place a particle is looked for',
+  ),
+  row(
+    'linking.bridge',
+    'bridge',
+    { type: 'whole', least: 0, most: 20 },
+    2,
+    '1',
+    'How many missing frames a pathline may cross',
+  ),
+  row('linking.care', 'care', choice('quick', 'thorough'), 'thorough', 'quick', 'How much work linking does'),
+  row(
+    'linking.shortest',
+    'shortest',
+    { type: 'whole', least: 2, most: 1e6 },
+    5,
+    '8',
+    'Fewest samples of a pathline that is kept',
+  ),
+  row(
+    'linking.search',
+    'search',
+    choice('cells', 'kd-tree'),
+    'cells',
+    'kd-tree',
+    'How neighbours are looked up; the links are the same',
+  ),
+  row(
+    'linking.risk-limit',
+    'risk-limit',
+    { type: 'share', most: 1 },
+    0.5,
+    '0.2',
+    'Links more likely wrong than this are left out',
+  ),
+  row(
+    'linking.depth-noise',
+    'depth-noise',
+    { type: 'number', least: 0.1, most: 100 },
+    3,
+    '2.5',
+    'Position noise along z over that in x and y',
+  ),
+  row(
+    'smoothing.span',
+    'span',
+    { type: 'whole', least: 3, most: 9999, odd: true, auto: true },
+    'auto',
+    '9',
+    'Frames in the window of the local fit, an odd number',
+  ),
+  row('smoothing.order', 'order', { type: 'whole', least: 1, most: 3 }, 2, '3', 'Degree of the local polynomial'),
+  row(
+    'screening.median-threshold',
+    'median-threshold',
+    { type: 'number', least: 0.1, most: 1000 },
+    2,
+    '3',
+    'Threshold of the normalised median test',
+  ),
+  row(
+    'screening.median-neighbours',
+    'median-neighbours',
+    { type: 'whole', least: 4, most: 64 },
+    8,
+    '12',
+    'Neighbouring samples that test looks at',
+  ),
+  row(
+    'screening.stuck-factor',
+    'stuck-factor',
+    { type: 'number', least: 0, most: 1000 },
+    4,
+    '6',
+    'A pathline that stays within so many times its position noise is stuck',
+  ),
+  row(
+    'grid.bin',
+    'bin',
+    { type: 'vector', dimension: 'length', least: 1, most: 3, sign: 'positive', auto: true },
+    'auto',
+    '2 mm',
+    'Bin size, one for all axes or one for each',
+  ),
+  row('grid.overlap', 'overlap', { type: 'share', most: 0.9 }, 0, '50 %', 'Overlap of neighbouring bins'),
+  row(
+    'grid.fewest-for-mean',
+    'fewest-for-mean',
+    { type: 'whole', least: 1, most: 1e9 },
+    5,
+    '10',
+    'Fewest samples in a bin for a mean',
+  ),
+  row(
+    'grid.fewest-for-stress',
+    'fewest-for-stress',
+    { type: 'whole', least: 2, most: 1e9 },
+    50,
+    '100',
+    'Fewest samples in a bin for Reynolds stresses',
+  ),
+  row(
+    'results.keep-pathlines',
+    'keep-pathlines',
+    choice('all', 'thinned', 'none'),
+    'all',
+    'thinned',
+    'How much of the pathlines the result folder keeps',
+  ),
+  row(
+    'results.keep-frames',
+    'keep-frames',
+    choice('all', 'thinned', 'none'),
+    'all',
+    'none',
+    'How much of the samples by frame the result folder keeps',
+  ),
+  row(
+    'results.ram-limit',
+    'ram-limit',
+    { type: 'quantity', dimension: 'bytes', sign: 'positive' },
+    '256 MB',
+    '1 GB',
+    'Working memory the run may take',
+  ),
+  row(
+    'results.threads',
+    'threads',
+    { type: 'whole', least: 1, most: 256 },
+    1,
+    '2',
+    'Worker threads; results do not depend on it',
+  ),
+  row(
+    'notes',
+    'notes',
+    { type: 'notes' },
+    null,
+    'operator: lab 3; run-number: 12',
+    'Free notes that go into the result: operator, facility, calibration-certificate, ...',
+  ),
+  row('seed', 'seed', { type: 'whole', least: 0, most: 4294967295 }, 1, '7', 'Seed of everything drawn at random'),
+];
