@@ -27,8 +27,8 @@ const DEPTH: readonly Anchor[] = [
 /** Blue over almost white to rust; both arms have the same lightness at the same distance from the middle. */
 const TWO_WAYS: readonly Anchor[] = [
   [0.4, 0.13, 262],
-  [0.68, 0.115, 246],
-  [0.965, 0.004, 246],
+  [0.68, 0.105, 248],
+  [0.96, 0.004, 248],
   [0.68, 0.132, 55],
   [0.4, 0.112, 40],
 ];

@@ -9,7 +9,7 @@ import { niceStep } from './ticks.js';
 const SPACING = 25;
 
 /**
- * Velocity arrows on a map, thinned to about one every 25 px, the longest (98 % quantile) as long as their spacing;
+ * Velocity arrows on a map, thinned to about one every 25 px, the longest (98 % quantile) 0.85 of their spacing long;
  * `key` is a reference arrow above the plot. Bins without velocity or inside a body get none.
  */
 export function drawArrows(
@@ -35,7 +35,7 @@ export function drawArrows(
   const speeds = picked.map(({ u, v }) => Math.hypot(u, v)).sort((a, b) => a - b);
   const most = speeds[Math.floor(0.98 * (speeds.length - 1))]!;
   if (!(most > 0)) return { drawn: '', key: '' };
-  const scale = (every * box.width) / nx / most;
+  const scale = (0.85 * every * box.width) / nx / most;
   const path = picked
     .map(({ x, y, u, v }) => arrow(x - (u * scale) / 2, y + (v * scale) / 2, u * scale, -v * scale))
     .join('');

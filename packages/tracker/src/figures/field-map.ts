@@ -3,7 +3,7 @@ import type { Body } from '../run/settings.js';
 import { type Axis, BOTTOM_ROOM, drawAxes, leftRoom, type PlotBox, toX, toY } from './axes.js';
 import { COLOURS, type ColourMap, colourHex, colourIndex, DIVERGING, SEQUENTIAL } from './colour-map.js';
 import { drawArrows } from './field-arrows.js';
-import { formatUnit } from './number-format.js';
+import { axisLabel } from './number-format.js';
 import { dataUri, palettePng } from './palette-png.js';
 import { type FigureTexts, figureId, px, svgRoot, textAt } from './svg.js';
 import { niceTicks, tickLabel } from './ticks.js';
@@ -106,7 +106,7 @@ function plotBox(shape: GridShape, options: FieldMapOptions): PlotBox {
   const axis = (of: 0 | 1, name: string): Axis => ({
     low: shape.first[of] - shape.step[of] / 2,
     high: shape.first[of] + (shape.count[of] - 0.5) * shape.step[of],
-    label: `${name} / ${formatUnit(options.lengthUnit)}`,
+    label: axisLabel(name, options.lengthUnit),
   });
   const x = axis(0, 'x');
   const y = axis(1, 'y');
@@ -189,9 +189,9 @@ function drawBar(
     `<path d="M${px(x)} ${px(y)}h${BAR_WIDTH}l${-BAR_WIDTH / 2} ${to}z" stroke="currentColor" stroke-opacity="0.7" fill="${colourHex(options.colours === 'signed' ? DIVERGING : SEQUENTIAL, to < 0 ? COLOURS - 1 : 0)}"/>`;
   if (beyond.high) parts.push(tip(box.top, -8));
   if (beyond.low) parts.push(tip(box.top + height, 8));
-  const unit = formatUnit(options.unit);
-  const name = unit === '' ? options.quantity : `${options.quantity} / ${unit}`;
-  parts.push(textAt(box.left + box.width + 96, box.top - 14, name, 'text-anchor="end"'));
+  parts.push(
+    textAt(box.left + box.width + 96, box.top - 14, axisLabel(options.quantity, options.unit), 'text-anchor="end"'),
+  );
   return parts.join('');
 }
 

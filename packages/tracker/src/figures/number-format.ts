@@ -2,7 +2,7 @@
 
 const THIN_SPACE = '\u2009';
 
-/** A value rounded to `digits` significant digits; a dash for NaN; powers of ten outside 1e-4 .. 1e7. */
+/** A value rounded to `digits` significant digits (whole numbers in full); a dash for NaN; powers of ten outside 1e-4 .. 1e7. */
 export function formatNumber(value: number, digits = 4): string {
   if (Number.isNaN(value)) return '–';
   if (!Number.isFinite(value)) return value > 0 ? '∞' : '−∞';
@@ -12,6 +12,7 @@ export function formatNumber(value: number, digits = 4): string {
     const [mantissa, exponent] = value.toExponential(digits - 1).split('e');
     return `${mantissa}e${Number(exponent)}`.replaceAll('-', '−');
   }
+  if (Number.isInteger(value)) return group(value.toString());
   const rounded = Number(value.toPrecision(digits));
   const decimals = Math.max(0, digits - 1 - Math.floor(Math.log10(Math.abs(rounded)) + 1e-12));
   return group(rounded.toFixed(decimals));
@@ -63,6 +64,13 @@ export function formatUnit(unit: string): string {
     .replace(/(?<=[A-Za-zµ])\^?3(?!\d)/g, '³');
 }
 
+/** Name of an axis with its unit (quantity over unit, SI Brochure 5.4.1, from memory): `x / mm`, `speed / (mm/s)`, `samples`. */
+export function axisLabel(name: string, unit: string): string {
+  const shown = formatUnit(unit);
+  if (shown === '') return name;
+  return shown.includes('/') ? `${name} / (${shown})` : `${name} / ${shown}`;
+}
+
 /** Seconds as people say them: `0.8 s`, `42 s`, `3 min 05 s`, `2 h 10 min`. */
 export function formatDuration(seconds: number): string {
   if (!Number.isFinite(seconds)) return '–';
@@ -89,7 +97,7 @@ export function formatBytes(bytes: number): string {
 function group(text: string): string {
   const negative = text.startsWith('-');
   const [whole, decimals] = (negative ? text.slice(1) : text).split('.');
-  // Four digits stay together: 1234, but 12 345 (ISO 80000-1 leaves this open; shorter for years and pixels).
+  // Four digits stay together: 1234, but 12 345 (common practice, no source).
   const grouped = whole!.length > 4 ? whole!.replace(/\B(?=(\d{3})+$)/g, THIN_SPACE) : whole!;
   const shown = decimals === undefined ? grouped : `${grouped}.${decimals}`;
   return negative && /[1-9]/.test(shown) ? `−${shown}` : shown;

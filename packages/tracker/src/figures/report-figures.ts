@@ -69,6 +69,8 @@ function transverseMap(record: RunRecord, data: ReportData): string {
     colours: 'signed',
     plane,
     bodies: data.bodies,
+    plotWidth: 400,
+    plotHeight: 400,
   });
   return framed(svg, 'Mean transverse velocity', words);
 }
@@ -88,6 +90,8 @@ function samplesMap(record: RunRecord, data: ReportData): string {
     colours: 'low-to-high',
     plane,
     bodies: data.bodies,
+    plotWidth: 400,
+    plotHeight: 400,
   });
   return framed(svg, 'Samples per bin', words);
 }

@@ -10,7 +10,7 @@ header{padding-top:2.25rem}
 h1{font-size:2.1rem;line-height:1.2;margin:.15rem 0 .3rem;font-weight:650;overflow-wrap:anywhere}
 .under{color:var(--soft);margin:0 0 1.4rem}
 h2{font-size:1.3rem;margin:2.4rem 0 .8rem;padding-top:.6rem;border-top:2px solid var(--rule);font-weight:650}
-.figures{display:grid;grid-template-columns:repeat(auto-fit,minmax(11.5rem,1fr));gap:.9rem;margin:0;padding:0}
+.figures{display:grid;grid-template-columns:repeat(4,1fr);gap:.9rem;margin:0;padding:0}
 .figures>div{background:var(--card);border:1px solid var(--rule);border-top:3px solid var(--mark);border-radius:4px;padding:.7rem .9rem}
 .figures dt{color:var(--soft);font-size:.88rem}
 .figures dd{margin:.1rem 0 0;font-size:1.42rem;font-weight:600;line-height:1.25}
@@ -36,8 +36,9 @@ tr.step th{padding-left:1.9rem;font-weight:400;color:var(--soft)}
 ul.plain{padding-left:1.2rem;margin:.4rem 0}
 .warnings{background:var(--warn-page);border-left:4px solid var(--warn);padding:.5rem 1rem;border-radius:0 4px 4px 0}
 .caution{border:1px solid var(--rule);background:var(--card);border-radius:4px;padding:.7rem 1rem;margin:.9rem 0}
-code{font-family:ui-monospace,Consolas,'DejaVu Sans Mono',monospace;font-size:.88em}
+code{overflow-wrap:anywhere;font-family:ui-monospace,Consolas,'DejaVu Sans Mono',monospace;font-size:.88em}
 footer{color:var(--soft);font-size:.88rem;padding-top:1.4rem;padding-bottom:2.5rem}
+@media (max-width:54rem){.figures{grid-template-columns:repeat(auto-fit,minmax(10rem,1fr))}}
 @media print{@page{margin:14mm}
 :root{color-scheme:light;--ink:#000;--soft:#444;--page:#fff;--card:#fff;--rule:#bbb;--mark:#1d6a96;--warn:#6b3a05;--warn-page:#fff}
 body{font-size:10.5pt;-webkit-print-color-adjust:exact;print-color-adjust:exact}

@@ -106,7 +106,10 @@ export function settingsTable(record: RunRecord): string {
 function settingText(value: RunRecord['settings'][number]['value']): string {
   if (value === null) return 'none';
   if (Array.isArray(value)) return value.map((one) => settingText(one as string | number)).join(', ');
-  if (typeof value === 'number') return Number.isInteger(value) ? formatCount(value) : formatNumber(value, 6);
+  if (typeof value === 'number')
+    return formatNumber(Number(value.toPrecision(6))).length > 8
+      ? formatNumber(value, 6)
+      : String(Number(value.toPrecision(6)));
   return String(value);
 }
 

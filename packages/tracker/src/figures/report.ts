@@ -120,7 +120,7 @@ export function keyFigureList(record: RunRecord): KeyFigure[] {
     },
     {
       name: 'Position noise',
-      value: noise.map((value) => formatNumber(value, 3)).join(', '),
+      value: noise.map((value) => formatNumber(value, 2)).join(', '),
       unit: figures.lengthUnit,
       note: `${names.slice(0, noise.length).join(', ')}, standard deviation`,
     },
