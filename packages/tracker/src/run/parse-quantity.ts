@@ -20,7 +20,7 @@ export const DIMENSION_WORDS: Readonly<Record<Dimension, { readonly name: string
 
 const NUMBER = String.raw`[+-]?(?:\d+\.?\d*|\.\d+)(?:[eE][+-]?\d+)?`;
 const SHAPE = new RegExp(
-  String.raw`^(${NUMBER})\s*([^\s\d+\u00b1-][^+\u00b1]*?|1/s)?\s*(?:(?:\+-|\u00b1|\+/-)\s*(.*))?$`,
+  String.raw`^(${NUMBER})\s*([^\s\d+\u00b1,.-][^+\u00b1]*?|1/s)?\s*(?:(?:\+-|\u00b1|\+/-)\s*(.*))?$`,
 );
 const SPREAD = new RegExp(String.raw`^(${NUMBER})\s*(\S.*)?$`);
 
