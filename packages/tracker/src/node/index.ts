@@ -1,0 +1,5 @@
+export { openFileSink } from './file-sink.js';
+export { openFileSource } from './file-source.js';
+export { nodeHasher } from './hasher.js';
+export { openNodeResultPlace } from './result-place-node.js';
+export { nodeScratch } from './scratch.js';

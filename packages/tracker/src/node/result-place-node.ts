@@ -1,0 +1,102 @@
+import {
+  closeSync,
+  fsyncSync,
+  mkdirSync,
+  openSync,
+  readdirSync,
+  readFileSync,
+  renameSync,
+  rmSync,
+  statfsSync,
+  statSync,
+  writeFileSync,
+} from 'node:fs';
+import { open } from 'node:fs/promises';
+import { join } from 'node:path';
+import * as h5wasm from 'h5wasm/node';
+import { WakeloomError } from '../core/errors.js';
+import type { ResultPlace } from '../core/result-place.js';
+import { writeError } from './file-errors.js';
+import { nodeHasher } from './hasher.js';
+import { nodeScratch } from './scratch.js';
+
+/**
+ * A result folder on the disk. With `create` it is made when missing (parents too). Without, a missing folder is a
+ * place without files. Codes: `store/not-a-folder`, `store/not-writable`, `store/disk-full`.
+ */
+export async function openNodeResultPlace(folder: string, options: { create: boolean }): Promise<ResultPlace> {
+  const module = await h5wasm.ready;
+  const guard = <T>(path: string, need: number, work: () => T): T => {
+    try {
+      return work();
+    } catch (error) {
+      throw writeError(error, path, need);
+    }
+  };
+  if (options.create) guard(folder, 0, () => mkdirSync(folder, { recursive: true }));
+  const path = (file: string) => join(folder, file);
+  return {
+    name: folder,
+    hdf5: { module, File: h5wasm.File },
+    scratch: nodeScratch(folder),
+    hasher: nodeHasher,
+    hdf5Path: path,
+    freeBytes() {
+      try {
+        const { bavail, bsize } = statfsSync(folder);
+        return bavail * bsize;
+      } catch {
+        // Some network file systems do not answer; HDF5's read-back then is the guard.
+        return null;
+      }
+    },
+    files() {
+      try {
+        return readdirSync(folder).sort();
+      } catch (error) {
+        if ((error as NodeJS.ErrnoException).code === 'ENOENT') return [];
+        throw writeError(error, folder);
+      }
+    },
+    size(file) {
+      return statSync(path(file), { throwIfNoEntry: false })?.size ?? -1;
+    },
+    readText(file) {
+      try {
+        return readFileSync(path(file), 'utf8');
+      } catch (error) {
+        const message = `result folder: got no readable ${file}, expected the folder of a finished run (${folder}); process the run first`;
+        throw new WakeloomError('store/not-a-result', message, { path: path(file) }, error);
+      }
+    },
+    writeText: (file, text) => guard(path(file), text.length, () => writeFileSync(path(file), text)),
+    async sync(file) {
+      try {
+        const handle = await open(path(file), 'r+');
+        try {
+          await handle.sync();
+        } finally {
+          await handle.close();
+        }
+      } catch (error) {
+        throw writeError(error, path(file));
+      }
+    },
+    rename(from, to) {
+      guard(path(to), 0, () => renameSync(path(from), path(to)));
+      syncFolder(folder);
+    },
+    remove: (file) => guard(path(file), 0, () => rmSync(path(file), { force: true })),
+  };
+}
+
+/** Brings the folder's entries to the disk. Windows cannot open folders; its file system journals them. */
+function syncFolder(folder: string): void {
+  if (process.platform === 'win32') return;
+  const descriptor = openSync(folder, 'r');
+  try {
+    fsyncSync(descriptor);
+  } finally {
+    closeSync(descriptor);
+  }
+}

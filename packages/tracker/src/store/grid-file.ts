@@ -1,0 +1,76 @@
+import type { RunContext } from '../core/context.js';
+import type { ResultPlace } from '../core/result-place.js';
+import type { GridResult, GridShape } from '../eulerian/grid.js';
+import type { AttributeValue } from './digest.js';
+import { fileAttributes, type ResultUnits } from './file-attributes.js';
+import { type Attributes, createNetcdf } from './netcdf-writer.js';
+
+const AXES = ['x', 'y', 'z'] as const;
+
+/**
+ * Writes grid.nc: coordinates with bounds, `samples`, `pathlines`, and every field with unit, long name and the name
+ * of its standard error. Dimensions (z, )y, x: x fastest. Empty bins are NaN (`_FillValue`). Resolves to the digest.
+ */
+export async function writeGridFile(
+  place: ResultPlace,
+  grid: GridResult,
+  units: ResultUnits,
+  title: string,
+  attributes: Attributes,
+  context: RunContext,
+): Promise<string> {
+  const { shape } = grid;
+  const file = createNetcdf(place, 'grid.nc', fileAttributes(title, null, attributes));
+  try {
+    const axes = AXES.slice(0, shape.dims);
+    axes.forEach((axis, index) => {
+      file.dimension(axis, shape.count[index]);
+    });
+    file.dimension('edge', 2);
+    axes.forEach((axis, index) => {
+      const coordinate = { long_name: `${axis} of the bin centre`, units: units.length, axis: axis.toUpperCase() };
+      file.variable({
+        name: axis,
+        type: 'f64',
+        dimensions: [axis],
+        attributes: { ...coordinate, bounds: `${axis}_bounds` },
+      });
+      file.append(axis, centres(shape, index));
+      file.variable({ name: `${axis}_bounds`, type: 'f64', dimensions: [axis, 'edge'], attributes: {} });
+      file.append(`${axis}_bounds`, bounds(shape, index));
+    });
+    const dimensions = [...axes].reverse();
+    const count = (name: string, longName: string, values: Float64Array) => {
+      file.variable({ name, type: 'i32', dimensions, attributes: { long_name: longName, units: '1' } });
+      file.append(name, Int32Array.from(values));
+    };
+    count('samples', 'samples in the bin', grid.samples);
+    count('pathlines', 'distinct pathlines with samples in the bin', grid.pathlines);
+    for (const [name, field] of grid.fields) {
+      const own: Record<string, AttributeValue> = {
+        long_name: field.longName,
+        units: field.unit === '' ? '1' : field.unit,
+      };
+      if (field.standardError !== null) own['ancillary_variables'] = field.standardError;
+      own['_FillValue'] = { type: 'f32', values: [Number.NaN] };
+      file.variable({ name, type: 'f32', dimensions, attributes: own });
+      file.append(name, field.values);
+      await context.breathe();
+    }
+    return await file.finish(context);
+  } catch (error) {
+    file.abandon();
+    throw error;
+  }
+}
+
+/** Bin centres along an axis. */
+export function centres(shape: GridShape, axis: number): Float64Array {
+  return Float64Array.from({ length: shape.count[axis] }, (_, i) => shape.first[axis] + i * shape.step[axis]);
+}
+
+function bounds(shape: GridShape, axis: number): Float64Array {
+  const half = shape.size[axis] / 2;
+  const middle = centres(shape, axis);
+  return Float64Array.from({ length: 2 * middle.length }, (_, i) => middle[i >> 1] + (i % 2 === 0 ? -half : half));
+}

@@ -1,0 +1,189 @@
+import type { Dims, FlagName, SampleBlock } from '../core/columns.js';
+import type { RunContext } from '../core/context.js';
+import { PARTIAL_PREFIX, type ResultPlace } from '../core/result-place.js';
+import type { GridResult } from '../eulerian/grid.js';
+import { folderDigest } from './digest.js';
+import { checkRoom } from './disk-space.js';
+import { FRAME_KEYS, writeFramesFile } from './frames-file.js';
+import { writeGridFile } from './grid-file.js';
+import type { Attributes } from './netcdf-writer.js';
+import { numberPathlines, rewind } from './numbering.js';
+import type { PathlineRows } from './pathline-rows.js';
+import { keptRows, openPathlinesFile, type PathlinesFile } from './pathlines-file.js';
+import type { RunRecord } from './run-record.js';
+import { sampleColumns } from './sample-columns.js';
+import { sampleStatistics } from './sample-statistics.js';
+import { openSpill, rowBytes, type Spill } from './spill.js';
+import { flagStuck } from './stuck.js';
+import { transpose } from './transpose.js';
+
+/** What a result folder is made with. Lengths in units.length. */
+export interface ResultWriterOptions {
+  readonly dims: Dims;
+  /** Image pairs: no acceleration columns; every sample is a link of its own. */
+  readonly pairs: boolean;
+  readonly units: { readonly length: string; readonly time: string };
+  /** Fewest samples of a pathline that is kept. */
+  readonly shortest: number;
+  /** Missing frames a pathline may cross; noted in pathlines.nc. */
+  readonly bridge: number;
+  readonly keepPathlines: 'all' | 'thinned' | 'none';
+  readonly keepFrames: 'all' | 'thinned' | 'none';
+  /** A pathline that stays within this many standard deviations of `noise` along every axis is stuck. */
+  readonly stuckFactor: number;
+  readonly noise: readonly [number, number, number];
+  /** Working memory of the run, bytes. The writer needs about 60 MB whatever the limit. */
+  readonly ramLimit: number;
+  readonly context: RunContext;
+  /** Title of the files; default `run`. */
+  readonly title?: string;
+  /** Samples to expect, where known: room for them is checked before anything is written. */
+  readonly expectedSamples?: number;
+}
+
+/** What `finish` counted. Speeds and standard error: samples without a flag that excludes them from the grid. */
+export interface FinishedSamples {
+  readonly samples: number;
+  readonly pathlines: number;
+  /** Pathlines with fewer than `shortest` samples, and the detections in them: dropped. */
+  readonly shortFragments: number;
+  readonly shortFragmentDetections: number;
+  readonly links: number;
+  readonly linksBridging: number;
+  readonly flagged: Readonly<Record<FlagName, number>>;
+  readonly unflagged: number;
+  readonly medianPathlineSamples: number;
+  readonly meanSpeed: number;
+  readonly peakSpeed: number;
+  readonly medianVelocitySe: number;
+}
+
+/**
+ * Makes one result folder: `add` blocks, `finish`, `writeGrid`, `complete`, in this order. Whatever fails removes the
+ * partial files; the folder then holds no run.json and is no result. Codes: `store/disk-full`, `store/read-back`,
+ * `store/not-writable`, `store/too-many-samples`, `store/bad-block`, `run/aborted`.
+ */
+export interface ResultWriter {
+  /** Frames in ascending order; takes the block. */
+  add(block: SampleBlock): Promise<void>;
+  /** Hands out whole pathlines in the order of their numbers, then leaves pathlines.nc and frames.nc complete. */
+  finish(onPathlines: (rows: PathlineRows) => void | Promise<void>): Promise<FinishedSamples>;
+  writeGrid(grid: GridResult, attributes: Attributes): Promise<void>;
+  /** Writes report.html, log.ndjson and, last of all, run.json; resolves to the record as written. */
+  complete(record: Omit<RunRecord, 'digest'>, reportHtml: string, logLines: readonly string[]): Promise<RunRecord>;
+  /** Removes what was begun. To be called when anything else of the run fails; no error when all is done. */
+  abandon(): void;
+}
+
+/** Files of a result folder in the order they are made. */
+export const RESULT_FILES = ['pathlines.nc', 'frames.nc', 'grid.nc', 'report.html', 'log.ndjson', 'run.json'] as const;
+
+/** Removes an old run.json first (the folder is no result from then on), then the other files of an old result and leftovers of a run that was killed. */
+function clear(place: ResultPlace): void {
+  place.remove('run.json');
+  for (const file of RESULT_FILES) place.remove(file);
+  for (const file of place.files()) if (file.startsWith(PARTIAL_PREFIX)) place.remove(file);
+}
+
+/** Starts a result in the folder. Memory: 60 MB in the plane and 25 bytes a pathline, whatever the number of samples. */
+export function openResultWriter(place: ResultPlace, options: ResultWriterOptions): ResultWriter {
+  const { dims, pairs, units, context, keepPathlines, keepFrames } = options;
+  const title = options.title ?? 'run';
+  const columns = sampleColumns(dims, pairs);
+  const frameColumns = FRAME_KEYS.flatMap((key) => columns.filter((column) => column.key === key));
+  clear(place);
+  const spillBytes = rowBytes(columns) + 4 + (keepFrames === 'none' ? 0 : rowBytes(frameColumns) + 4);
+  const fileBytes = keepPathlines === 'none' ? 0 : rowBytes(columns);
+  const framesBytes = keepFrames === 'none' ? 0 : rowBytes(frameColumns) + 8;
+  if (options.expectedSamples !== undefined) checkRoom(place, options.expectedSamples * (spillBytes + fileBytes));
+  let spill: Spill | null = openSpill(place, columns, keepFrames === 'none' ? [] : frameColumns);
+  let pathlinesFile: PathlinesFile | null = null;
+  const digests: Record<string, string> = {};
+
+  const abandon = () => {
+    pathlinesFile?.abandon();
+    pathlinesFile = null;
+    spill?.discard();
+    spill = null;
+    for (const file of place.files()) if (file.startsWith(PARTIAL_PREFIX)) place.remove(file);
+  };
+  const guard = async <T>(work: () => Promise<T>): Promise<T> => {
+    try {
+      return await work();
+    } catch (error) {
+      abandon();
+      throw error;
+    }
+  };
+  const inUse = (): Spill => {
+    if (spill === null)
+      throw new Error('result writer: add and finish come once, in this order, before anything failed');
+    return spill;
+  };
+
+  const finish = async (onPathlines: (rows: PathlineRows) => void | Promise<void>): Promise<FinishedSamples> => {
+    const open = inUse();
+    const spilled = open.finish();
+    const numbering = numberPathlines(spilled.counts, options.shortest);
+    checkRoom(
+      place,
+      numbering.samples * (fileBytes + Math.max(0, framesBytes - spillBytes)) + 16 * numbering.pathlines,
+    );
+    const kept = keepPathlines === 'none' ? null : keptRows(keepPathlines, numbering, spilled);
+    if (kept !== null) pathlinesFile = openPathlinesFile(place, columns, kept, units, title, options.bridge);
+    const stuck = new Uint8Array(numbering.pathlines);
+    const rule = { factor: options.stuckFactor, noise: options.noise, shortest: options.shortest };
+    const statistics = sampleStatistics();
+    for await (const rows of transpose(spilled, numbering, columns, context)) {
+      flagStuck(rows, rule, stuck);
+      statistics.add(rows);
+      pathlinesFile?.append(rows);
+      await onPathlines(rows);
+      context.progress('write', rows.firstRow + rows.flags.length, numbering.samples, 'samples');
+    }
+    spilled.samples.discard();
+    if (pathlinesFile !== null) digests['pathlines.nc'] = await pathlinesFile.finish(context);
+    pathlinesFile = null;
+    rewind(numbering, spilled.counts);
+    if (keepFrames !== 'none') {
+      const input = { spilled, numbering, kept, stuck, columns: frameColumns, keep: keepFrames, units, title };
+      digests['frames.nc'] = await writeFramesFile(place, input, context);
+    }
+    open.discard();
+    spill = null;
+    const { medianSamples, next, final, ...counted } = numbering;
+    void [next, final];
+    const links = pairs ? numbering.samples : numbering.samples - numbering.pathlines;
+    return { ...counted, links, medianPathlineSamples: medianSamples, ...statistics.figures() };
+  };
+
+  const complete = async (record: Omit<RunRecord, 'digest'>, reportHtml: string, logLines: readonly string[]) => {
+    const put = async (file: string, text: string) => {
+      checkRoom(place, text.length);
+      place.writeText(PARTIAL_PREFIX + file, text);
+      await place.sync(PARTIAL_PREFIX + file);
+      place.rename(PARTIAL_PREFIX + file, file);
+    };
+    await put('report.html', reportHtml);
+    await put('log.ndjson', logLines.map((line) => `${line}\n`).join(''));
+    const content = folderDigest(place.hasher, digests);
+    const full: RunRecord = { ...record, digest: { content, files: { ...digests } } };
+    await put('run.json', `${JSON.stringify(full, null, 2)}\n`);
+    return full;
+  };
+
+  return {
+    add: (block) =>
+      guard(async () => {
+        inUse().add(block);
+        await context.breathe();
+      }),
+    finish: (onPathlines) => guard(() => finish(onPathlines)),
+    writeGrid: (grid, attributes) =>
+      guard(async () => {
+        digests['grid.nc'] = await writeGridFile(place, grid, units, title, attributes, context);
+      }),
+    complete: (record, reportHtml, logLines) => guard(() => complete(record, reportHtml, logLines)),
+    abandon,
+  };
+}
