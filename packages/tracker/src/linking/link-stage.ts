@@ -1,0 +1,66 @@
+import type { DetectionBlock, LinkedBlock } from '../core/columns.js';
+import type { RunContext } from '../core/context.js';
+import { CellIndex } from '../math/cell-index.js';
+import { KdSearch } from '../math/kd-search.js';
+import type { NeighbourSearch } from '../math/neighbour-search.js';
+import type { LinkingSettings } from '../run/settings.js';
+import { FlowGrid, type FlowGridData } from './flow-grid.js';
+import { Linker } from './linker.js';
+
+/** What linking takes from the first look at the data. */
+export interface LinkPrior {
+  readonly dims: 2 | 3;
+  /** Length unit, in plane. */
+  readonly reach: number;
+  /** Least expected square of a surprise, length unit squared. */
+  readonly noiseSquare: number;
+  /** Expected square of a true detection's distance from the first flow picture, length unit squared. */
+  readonly expected: number;
+  /** Particles per area (volume) of link space. */
+  readonly density: number;
+  readonly flow: FlowGridData;
+  /** Image pairs: no pathline has more than two detections. */
+  readonly pairs: boolean;
+}
+
+/** The search that a setting names. */
+export function searchFor(name: LinkingSettings['search']): NeighbourSearch {
+  return name === 'kd-tree' ? new KdSearch() : new CellIndex();
+}
+
+/** A linker ready for the first frame. */
+export function createLinker(settings: LinkingSettings, prior: LinkPrior): Linker {
+  const flow = new FlowGrid({ ...prior.flow, moments: prior.flow.moments.slice() });
+  const linker = new Linker({
+    dims: prior.dims,
+    reach: prior.reach,
+    bridge: prior.pairs ? 0 : settings.bridge,
+    care: settings.care,
+    riskLimit: settings.riskLimit,
+    depthNoise: prior.dims === 3 ? settings.depthNoise : 1,
+    noiseSquare: prior.noiseSquare,
+    expected: prior.expected,
+    density: prior.density,
+    flow,
+    search: searchFor(settings.search),
+  });
+  linker.pairsOnly = prior.pairs;
+  return linker;
+}
+
+/** Links a stream of blocks in frame order. One block is in memory at a time. */
+export async function* linkBlocks(
+  linker: Linker,
+  blocks: AsyncIterable<DetectionBlock>,
+  context: RunContext,
+): AsyncGenerator<LinkedBlock> {
+  for await (const block of blocks) {
+    const pathline = new Int32Array(block.x.length);
+    const linkRisk = new Float32Array(block.x.length);
+    for (let k = 0; k < block.number.length; k++) {
+      linker.frame(block, k, pathline, linkRisk);
+      await context.breathe();
+    }
+    yield { ...block, pathline, linkRisk };
+  }
+}
