@@ -1,0 +1,83 @@
+import type { BinLayout } from './bin-layout.js';
+import type { GridField, GridResult, GridShape } from './grid.js';
+import { momentsOf } from './moments.js';
+
+/** What the grid needs to know besides its shape. */
+export interface GridOptions {
+  /** Fewest samples of a bin for a mean, for a stress (at least 2). */
+  readonly fewestForMean: number;
+  readonly fewestForStress: number;
+  /** Names of the length and the time unit: `mm`, `s`. */
+  readonly lengthUnit: string;
+  readonly timeUnit: string;
+}
+
+const COMPONENTS = ['u', 'v', 'w'] as const;
+
+/**
+ * Turns the sums of all bins into named fields. Bins with fewer samples than asked for are NaN, never filled.
+ * Normal stresses are given raw and less the mean squared standard error of the velocity (the part that position noise
+ * adds, independent of the flow; it may leave a small negative value, which stays). Shear stresses have no such part,
+ * since the noise of different axes is independent: there both are equal.
+ */
+export function gridFields(shape: GridShape, layout: BinLayout, sums: Float64Array, options: GridOptions): GridResult {
+  const bins = shape.count[0] * shape.count[1] * shape.count[2];
+  const { dims, pairs } = layout;
+  const samples = new Float64Array(bins);
+  const pathlines = new Float64Array(bins);
+  const columns = (count: number) => Array.from({ length: count }, () => new Float32Array(bins).fill(Number.NaN));
+  const mean = columns(dims);
+  const meanSe = columns(dims);
+  const stress = columns(pairs.length);
+  const stressSe = columns(pairs.length);
+  const raw = columns(pairs.length);
+  for (let bin = 0; bin < bins; bin++) {
+    const n = sums[bin * layout.stride + layout.samples]!;
+    samples[bin] = n;
+    pathlines[bin] = sums[bin * layout.stride + layout.pathlines]!;
+    if (n === 0 || (n < options.fewestForMean && n < options.fewestForStress)) continue;
+    const moments = momentsOf(layout, sums, bin);
+    if (n >= options.fewestForMean) {
+      for (let a = 0; a < dims; a++) {
+        mean[a]![bin] = moments.mean[a]!;
+        meanSe[a]![bin] = moments.meanSe[a]!;
+      }
+    }
+    if (n >= options.fewestForStress && n >= 2) {
+      for (let k = 0; k < pairs.length; k++) {
+        const [a, b] = pairs[k]!;
+        raw[k]![bin] = moments.product[k]!;
+        stress[k]![bin] = moments.product[k]! - (a === b ? moments.noise[a]! : 0);
+        stressSe[k]![bin] = moments.productSe[k]!;
+      }
+    }
+  }
+  const speed = `${options.lengthUnit}/${options.timeUnit}`;
+  const square = `${options.lengthUnit}2/${options.timeUnit}2`;
+  const fields = new Map<string, GridField>();
+  for (let a = 0; a < dims; a++) {
+    const name = COMPONENTS[a]!;
+    const along = 'xyz'[a]!;
+    fields.set(name, field(mean[a]!, speed, `mean velocity along ${along}`, `${name}_se`));
+  }
+  for (let a = 0; a < dims; a++) {
+    const name = COMPONENTS[a]!;
+    fields.set(`${name}_se`, field(meanSe[a]!, speed, `standard error of mean velocity along ${'xyz'[a]!}`, null));
+  }
+  const names = pairs.map(([a, b]) => `${COMPONENTS[a]!}${COMPONENTS[b]!}`);
+  const what = (name: string) => `kinematic Reynolds stress, mean of ${name[0]}' ${name[1]}'`;
+  for (const [k, name] of names.entries()) {
+    fields.set(name, field(stress[k]!, square, `${what(name)}, less the part of position noise`, `${name}_se`));
+  }
+  for (const [k, name] of names.entries()) {
+    fields.set(`${name}_se`, field(stressSe[k]!, square, `standard error of the ${what(name)}`, null));
+  }
+  for (const [k, name] of names.entries()) {
+    fields.set(`${name}_raw`, field(raw[k]!, square, `${what(name)}, position noise included`, `${name}_se`));
+  }
+  return { shape, samples, pathlines, fields };
+}
+
+function field(values: Float32Array, unit: string, longName: string, standardError: string | null): GridField {
+  return { values, unit, longName, standardError };
+}

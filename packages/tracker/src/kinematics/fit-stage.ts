@@ -1,0 +1,65 @@
+import type { LinkedBlock, SampleBlock } from '../core/columns.js';
+import { rowCount } from '../core/columns.js';
+import type { StageInput } from '../pipeline/stages.js';
+import type { FitParameters } from './fit-parameters.js';
+import { fitLag, fitParameters } from './fit-parameters.js';
+import type { CoreRange } from './fit-window.js';
+import { fitWindowInSteps } from './fit-window.js';
+import { cutWindows } from './window-cutter.js';
+
+/** Rows of a core at least: enough that handing a window over costs little against fitting it. */
+const CORE_ROWS = 60_000;
+
+/** Runs `fitWindow` somewhere, perhaps in a worker thread; the window is given away. */
+export type FitRunner = (window: LinkedBlock, core: CoreRange, parameters: FitParameters) => Promise<SampleBlock>;
+
+/**
+ * The fit stage: linked blocks in frame order to samples in frame order. Cuts the stream into windows with overlap
+ * and has each fitted by `run`, up to `context.budget.threads` at a time; results come in order and do not depend on
+ * the cuts or the threads. Without `run` the kernel works here, with a breath every few ms. Memory: the windows in
+ * flight, each about three times the lag long, 100 bytes a row.
+ */
+export async function* fitStage(
+  input: StageInput,
+  blocks: AsyncIterable<LinkedBlock>,
+  run?: FitRunner,
+): AsyncGenerator<SampleBlock> {
+  const { context } = input;
+  const parameters = fitParameters(input.settings, input.prior);
+  const runner = run ?? runHere;
+  const limit = run === undefined ? 1 : Math.max(1, context.budget.threads);
+  const flight: Promise<SampleBlock>[] = [];
+  let frames = 0;
+
+  async function runHere(window: LinkedBlock, core: CoreRange, p: FitParameters): Promise<SampleBlock> {
+    const steps = fitWindowInSteps(window, core, p);
+    for (;;) {
+      await context.breathe();
+      const step = steps.next();
+      if (step.done) return step.value;
+    }
+  }
+  const deliver = async (): Promise<SampleBlock> => {
+    const samples = await flight.shift()!;
+    frames += samples.number.length;
+    context.progress('fit', frames, null, 'frames');
+    return samples;
+  };
+
+  try {
+    for await (const { window, core } of cutWindows(blocks, fitLag(parameters), CORE_ROWS)) {
+      await context.breathe();
+      while (flight.length >= limit) yield await deliver();
+      const result = runner(window, core, parameters);
+      // Awaited in its turn; until then a failure must not count as unhandled.
+      result.catch(() => {});
+      flight.push(result);
+    }
+    while (flight.length > 0) {
+      const samples = await deliver();
+      if (rowCount(samples) > 0 || samples.number.length > 0) yield samples;
+    }
+  } finally {
+    await Promise.allSettled(flight);
+  }
+}

@@ -1,0 +1,279 @@
+import type { LinkedBlock } from '../core/columns.js';
+import type { FitParameters } from './fit-parameters.js';
+import type { FitWeights } from './local-fit.js';
+import { WeightTable } from './weight-table.js';
+
+/** Below this share of the noise variance a residual says nothing: the fit passes through the sample. */
+const LEAST_REDUNDANCY = 1e-6;
+
+/**
+ * Fits one pathline after the other. The columns below hold the pathline loaded last, one entry a sample of the
+ * window in frame order; buffers are kept from pathline to pathline. Mutable: one fitter a window.
+ */
+export class PathlineFitter {
+  readonly parameters: FitParameters;
+  readonly deep: boolean;
+  /** Samples loaded. */
+  count = 0;
+  /** Row of the window, frame index there, frame number, time, measured position. */
+  readonly row: Uint32Array;
+  readonly index: Uint32Array;
+  readonly frame: Int32Array;
+  readonly time: Float64Array;
+  readonly x: Float64Array;
+  readonly y: Float64Array;
+  readonly z: Float64Array;
+  /** First and last sample of the window of each fit, and frame numbers of the first and last sample in reach. */
+  readonly low: Int32Array;
+  readonly high: Int32Array;
+  readonly reachFirst: Int32Array;
+  readonly reachLast: Int32Array;
+  /** Samples that take no part in fits. Zero after `load`. */
+  readonly excluded: Uint8Array;
+  /** Results: position, velocity, acceleration per axis; roots of the noise gains. */
+  readonly px: Float64Array;
+  readonly py: Float64Array;
+  readonly pz: Float64Array;
+  readonly vx: Float64Array;
+  readonly vy: Float64Array;
+  readonly vz: Float64Array;
+  readonly ax: Float64Array;
+  readonly ay: Float64Array;
+  readonly az: Float64Array;
+  readonly positionRoot: Float64Array;
+  readonly velocityRoot: Float64Array;
+  readonly accelerationRoot: Float64Array;
+  /** Distance of the measured position from the fit over its expected standard deviation, largest over the axes. */
+  readonly residual: Float64Array;
+
+  private readonly table: WeightTable;
+  private readonly members: Int32Array;
+
+  /** `longest`: most samples of one pathline in the window. */
+  constructor(parameters: FitParameters, deep: boolean, longest: number) {
+    this.parameters = parameters;
+    this.deep = deep;
+    const n = longest;
+    const column = () => new Float64Array(n);
+    this.row = new Uint32Array(n);
+    this.index = new Uint32Array(n);
+    this.frame = new Int32Array(n);
+    this.low = new Int32Array(n);
+    this.high = new Int32Array(n);
+    this.reachFirst = new Int32Array(n);
+    this.reachLast = new Int32Array(n);
+    this.excluded = new Uint8Array(n);
+    this.time = column();
+    this.x = column();
+    this.y = column();
+    this.z = column();
+    this.px = column();
+    this.py = column();
+    this.pz = column();
+    this.vx = column();
+    this.vy = column();
+    this.vz = column();
+    this.ax = column();
+    this.ay = column();
+    this.az = column();
+    this.positionRoot = column();
+    this.velocityRoot = column();
+    this.accelerationRoot = column();
+    this.residual = column();
+    this.table = new WeightTable(parameters.span, parameters.order, parameters.interval);
+    this.members = new Int32Array(parameters.span);
+  }
+
+  /** Takes the samples `rows[from .. to - 1]` of a pathline; `frameOf`: frame index of each row of the window. */
+  load(window: LinkedBlock, frameOf: Uint32Array, rows: Uint32Array, from: number, to: number): void {
+    const n = to - from;
+    this.count = n;
+    const { row, index, frame, time, x, y, z, excluded, deep } = this;
+    for (let i = 0; i < n; i++) {
+      const r = rows[from + i]!;
+      const k = frameOf[r]!;
+      row[i] = r;
+      index[i] = k;
+      frame[i] = window.number[k]!;
+      time[i] = window.time[k]!;
+      x[i] = window.x[r]!;
+      y[i] = window.y[r]!;
+      if (deep) z[i] = window.z[r]!;
+      excluded[i] = 0;
+    }
+  }
+
+  /**
+   * Sets the windows of samples `from .. to - 1`: samples within half a span on either side; where the pathline
+   * ends sooner on one side the window shifts, so that it still covers the span. Nothing farther than span - 1
+   * frames from the sample is looked at.
+   */
+  place(from: number, to: number): void {
+    const { frame, low, high, reachFirst, reachLast, count } = this;
+    const span = this.parameters.span;
+    const half = (span - 1) / 2;
+    let a = 0;
+    let b = 0;
+    let lo = 0;
+    let hi = 0;
+    for (let i = from; i < to; i++) {
+      const own = frame[i]!;
+      while (own - frame[a]! >= span) a++;
+      if (b < i) b = i;
+      while (b + 1 < count && frame[b + 1]! - own < span) b++;
+      let first = own - half;
+      if (first < frame[a]!) first = frame[a]!;
+      let last = first + span - 1;
+      if (last > frame[b]!) {
+        last = frame[b]!;
+        first = last - span + 1;
+        if (first < frame[a]!) first = frame[a]!;
+      }
+      // Window borders never move back from one sample to the next.
+      while (frame[lo]! < first) lo++;
+      if (hi < i) hi = i;
+      while (hi + 1 < count && frame[hi + 1]! <= last) hi++;
+      low[i] = lo;
+      high[i] = hi;
+      reachFirst[i] = frame[a]!;
+      reachLast[i] = frame[b]!;
+    }
+  }
+
+  /** Fits samples `from .. to - 1` over all samples of their windows, and takes their residuals. */
+  fit(from: number, to: number): void {
+    const { frame, low, high, table, members, residual, x, y, z, px, py, pz, deep } = this;
+    const [sx, sy, sz] = this.parameters.noise;
+    const even = table.even;
+    for (let i = from; i < to; i++) {
+      const lo = low[i]!;
+      const hi = high[i]!;
+      const n = hi - lo + 1;
+      let weights: FitWeights;
+      if (even && frame[hi]! - frame[lo]! === n - 1) weights = table.gapless(n, i - lo);
+      else {
+        for (let j = 0; j < n; j++) members[j] = lo + j;
+        weights = table.at(frame, this.time, members, n, i);
+      }
+      this.apply(i, lo, weights);
+      const redundancy = 1 - weights.positionGain;
+      if (redundancy < LEAST_REDUNDANCY) {
+        residual[i] = Number.NaN;
+        continue;
+      }
+      let worst = Math.abs(x[i]! - px[i]!) / sx;
+      const alongY = Math.abs(y[i]! - py[i]!) / sy;
+      if (alongY > worst) worst = alongY;
+      if (deep) {
+        const alongZ = Math.abs(z[i]! - pz[i]!) / sz;
+        if (alongZ > worst) worst = alongZ;
+      }
+      residual[i] = worst / Math.sqrt(redundancy);
+    }
+  }
+
+  /**
+   * Fits sample i anew without the excluded samples of its window. False, and nothing changed, where none of the
+   * window is excluded or fewer than two samples would remain.
+   */
+  refit(i: number): boolean {
+    const { low, high, excluded, members, table } = this;
+    const hi = high[i]!;
+    let n = 0;
+    for (let j = low[i]!; j <= hi; j++) if (excluded[j] === 0) members[n++] = j;
+    if (n < 2 || n === hi - low[i]! + 1) return false;
+    const weights = table.at(this.frame, this.time, members, n, i);
+    this.applyMembers(i, n, weights);
+    return true;
+  }
+
+  /** Sums over successive samples lo, lo + 1, ...: differences from the sample's own position lose fewer digits. */
+  private apply(i: number, lo: number, weights: FitWeights): void {
+    const { x, y } = this;
+    const { position, velocity, acceleration, count } = weights;
+    const x0 = x[i]!;
+    const y0 = y[i]!;
+    let px = 0;
+    let py = 0;
+    let vx = 0;
+    let vy = 0;
+    let ax = 0;
+    let ay = 0;
+    for (let j = 0; j < count; j++) {
+      const dx = x[lo + j]! - x0;
+      const dy = y[lo + j]! - y0;
+      const wp = position[j]!;
+      const wv = velocity[j]!;
+      const wa = acceleration[j]!;
+      px += wp * dx;
+      py += wp * dy;
+      vx += wv * dx;
+      vy += wv * dy;
+      ax += wa * dx;
+      ay += wa * dy;
+    }
+    this.px[i] = x0 + px;
+    this.py[i] = y0 + py;
+    this.vx[i] = vx;
+    this.vy[i] = vy;
+    this.ax[i] = ax;
+    this.ay[i] = ay;
+    if (this.deep) this.applyDepth(i, lo, weights);
+    this.positionRoot[i] = weights.positionRoot;
+    this.velocityRoot[i] = weights.velocityRoot;
+    this.accelerationRoot[i] = weights.accelerationRoot;
+  }
+
+  private applyDepth(i: number, lo: number, weights: FitWeights): void {
+    const { z } = this;
+    const { position, velocity, acceleration, count } = weights;
+    const z0 = z[i]!;
+    let pz = 0;
+    let vz = 0;
+    let az = 0;
+    for (let j = 0; j < count; j++) {
+      const dz = z[lo + j]! - z0;
+      pz += position[j]! * dz;
+      vz += velocity[j]! * dz;
+      az += acceleration[j]! * dz;
+    }
+    this.pz[i] = z0 + pz;
+    this.vz[i] = vz;
+    this.az[i] = az;
+  }
+
+  /** The same over the first `n` of `members`. */
+  private applyMembers(i: number, n: number, weights: FitWeights): void {
+    this.sum(i, n, weights, this.x, this.px, this.vx, this.ax);
+    this.sum(i, n, weights, this.y, this.py, this.vy, this.ay);
+    if (this.deep) this.sum(i, n, weights, this.z, this.pz, this.vz, this.az);
+    this.positionRoot[i] = weights.positionRoot;
+    this.velocityRoot[i] = weights.velocityRoot;
+    this.accelerationRoot[i] = weights.accelerationRoot;
+  }
+
+  private sum(
+    i: number,
+    n: number,
+    weights: FitWeights,
+    measured: Float64Array,
+    position: Float64Array,
+    velocity: Float64Array,
+    acceleration: Float64Array,
+  ): void {
+    const { members } = this;
+    const base = measured[members[0]!]!;
+    let p = 0;
+    let v = 0;
+    let a = 0;
+    for (let j = 0; j < n; j++) {
+      const d = measured[members[j]!]! - base;
+      p += weights.position[j]! * d;
+      v += weights.velocity[j]! * d;
+      a += weights.acceleration[j]! * d;
+    }
+    position[i] = base + p;
+    velocity[i] = v;
+    acceleration[i] = a;
+  }
+}
