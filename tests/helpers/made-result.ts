@@ -121,6 +121,6 @@ export async function makeResult(
   for (const block of madeSamples(made)) await writer.add(block);
   const finished = await writer.finish(onPathlines);
   await writer.writeGrid(madeGrid(dims), { bin_overlap: { type: 'f64', values: [0.5] } });
-  const record = await writer.complete(madeRecord(finished), '<!doctype html><title>made</title>', ['{"code":"a/b"}']);
+  const record = await writer.complete(madeRecord(finished), () => '<!doctype html><title>made</title>', ['{"code":"a/b"}']);
   return { finished, record };
 }

@@ -7,3 +7,5 @@ export type * from './detections/dump.js';
 export * from './eulerian/grid.js';
 export type * from './run/settings.js';
 export * from './store/run-record.js';
+export type { RunRequest, RunTools } from './pipeline/board.js';
+export type { Prior } from './pipeline/stages.js';

@@ -8,15 +8,17 @@ import type { RunSettings } from '../run/settings.js';
 export interface Prior {
   /** Position noise (standard deviation) per axis, length unit. */
   readonly noise: readonly [number, number, number];
+  /** Whether the noise was measured from trial pathlines or assumed from the spacing. */
+  readonly noiseMeasured: boolean;
   /** Frames in the window of the local fit, odd. */
   readonly span: number;
   /** Reach for linking, length unit, per axis. */
   readonly reach: readonly [number, number, number];
   /** Mean spacing n^(-1/D) of one frame's particles, length unit. */
   readonly spacing: number;
-  /** Mean displacement a frame interval over `spacing`, and its 95th percentile. */
-  readonly displacementRatio: number;
-  readonly displacementRatio95: number;
+  /** Mean displacement a frame interval over `spacing`, and its 95th percentile; null where nothing was linked. */
+  readonly displacementRatio: number | null;
+  readonly displacementRatio95: number | null;
 }
 
 /** What every stage is handed. */

@@ -13,7 +13,7 @@ import { keptRows, openPathlinesFile, type PathlinesFile } from './pathlines-fil
 import type { RunRecord } from './run-record.js';
 import { sampleColumns } from './sample-columns.js';
 import { sampleStatistics } from './sample-statistics.js';
-import { openSpill, rowBytes, type Spill } from './spill.js';
+import { openSpill, rowBytes, type Spill, spillBytes } from './spill.js';
 import { flagStuck } from './stuck.js';
 import { transpose } from './transpose.js';
 
@@ -70,7 +70,11 @@ export interface ResultWriter {
   finish(onPathlines: (rows: PathlineRows) => void | Promise<void>): Promise<FinishedSamples>;
   writeGrid(grid: GridResult, attributes: Attributes): Promise<void>;
   /** Writes report.html, log.ndjson and, last of all, run.json; resolves to the record as written. */
-  complete(record: Omit<RunRecord, 'digest'>, reportHtml: string, logLines: readonly string[]): Promise<RunRecord>;
+  complete(
+    record: Omit<RunRecord, 'digest'>,
+    report: (record: RunRecord) => string,
+    logLines: readonly string[],
+  ): Promise<RunRecord>;
   /** Removes what was begun. To be called when anything else of the run fails; no error when all is done. */
   abandon(): void;
 }
@@ -92,11 +96,12 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
   const columns = sampleColumns(dims, pairs);
   const frameColumns = FRAME_KEYS.flatMap((key) => columns.filter((column) => column.key === key));
   clear(place);
-  const spillBytes = rowBytes(columns) + 4 + (keepFrames === 'none' ? 0 : rowBytes(frameColumns) + 4);
-  const fileBytes = keepPathlines === 'none' ? 0 : rowBytes(columns);
-  const framesBytes = keepFrames === 'none' ? 0 : rowBytes(frameColumns) + 8;
-  if (options.expectedSamples !== undefined) checkRoom(place, options.expectedSamples * (spillBytes + fileBytes));
-  let spill: Spill | null = openSpill(place, columns, keepFrames === 'none' ? [] : frameColumns);
+  const withFrames = keepFrames !== 'none';
+  const fileBytes = (keepPathlines === 'none' ? 0 : rowBytes(columns)) + (withFrames ? rowBytes(frameColumns) + 8 : 0);
+  if (options.expectedSamples !== undefined) {
+    checkRoom(place, options.expectedSamples * (spillBytes(columns, withFrames) + fileBytes));
+  }
+  let spill: Spill | null = openSpill(place, columns, withFrames);
   let pathlinesFile: PathlinesFile | null = null;
   const digests: Record<string, string> = {};
 
@@ -125,10 +130,7 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     const open = inUse();
     const spilled = open.finish();
     const numbering = numberPathlines(spilled.counts, options.shortest);
-    checkRoom(
-      place,
-      numbering.samples * (fileBytes + Math.max(0, framesBytes - spillBytes)) + 16 * numbering.pathlines,
-    );
+    checkRoom(place, numbering.samples * fileBytes + 20 * numbering.pathlines);
     const kept = keepPathlines === 'none' ? null : keptRows(keepPathlines, numbering, spilled);
     if (kept !== null) pathlinesFile = openPathlinesFile(place, columns, kept, units, title, options.bridge);
     const stuck = new Uint8Array(numbering.pathlines);
@@ -141,11 +143,10 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
       await onPathlines(rows);
       context.progress('write', rows.firstRow + rows.flags.length, numbering.samples, 'samples');
     }
-    spilled.samples.discard();
     if (pathlinesFile !== null) digests['pathlines.nc'] = await pathlinesFile.finish(context);
     pathlinesFile = null;
     rewind(numbering, spilled.counts);
-    if (keepFrames !== 'none') {
+    if (withFrames) {
       const input = { spilled, numbering, kept, stuck, columns: frameColumns, keep: keepFrames, units, title };
       digests['frames.nc'] = await writeFramesFile(place, input, context);
     }
@@ -157,17 +158,21 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     return { ...counted, links, medianPathlineSamples: medianSamples, ...statistics.figures() };
   };
 
-  const complete = async (record: Omit<RunRecord, 'digest'>, reportHtml: string, logLines: readonly string[]) => {
+  const complete = async (
+    record: Omit<RunRecord, 'digest'>,
+    report: (record: RunRecord) => string,
+    logLines: readonly string[],
+  ) => {
     const put = async (file: string, text: string) => {
       checkRoom(place, text.length);
       place.writeText(PARTIAL_PREFIX + file, text);
       await place.sync(PARTIAL_PREFIX + file);
       place.rename(PARTIAL_PREFIX + file, file);
     };
-    await put('report.html', reportHtml);
-    await put('log.ndjson', logLines.map((line) => `${line}\n`).join(''));
     const content = folderDigest(place.hasher, digests);
     const full: RunRecord = { ...record, digest: { content, files: { ...digests } } };
+    await put('report.html', report(full));
+    await put('log.ndjson', logLines.map((line) => `${line}\n`).join(''));
     await put('run.json', `${JSON.stringify(full, null, 2)}\n`);
     return full;
   };
@@ -183,7 +188,7 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
       guard(async () => {
         digests['grid.nc'] = await writeGridFile(place, grid, units, title, attributes, context);
       }),
-    complete: (record, reportHtml, logLines) => guard(() => complete(record, reportHtml, logLines)),
+    complete: (record, report, logLines) => guard(() => complete(record, report, logLines)),
     abandon,
   };
 }

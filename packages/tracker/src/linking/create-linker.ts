@@ -1,5 +1,3 @@
-import type { DetectionBlock, LinkedBlock } from '../core/columns.js';
-import type { RunContext } from '../core/context.js';
 import { CellIndex } from '../math/cell-index.js';
 import { KdSearch } from '../math/kd-search.js';
 import type { NeighbourSearch } from '../math/neighbour-search.js';
@@ -46,21 +44,4 @@ export function createLinker(settings: LinkingSettings, prior: LinkPrior): Linke
   });
   linker.pairsOnly = prior.pairs;
   return linker;
-}
-
-/** Links a stream of blocks in frame order. One block is in memory at a time. */
-export async function* linkBlocks(
-  linker: Linker,
-  blocks: AsyncIterable<DetectionBlock>,
-  context: RunContext,
-): AsyncGenerator<LinkedBlock> {
-  for await (const block of blocks) {
-    const pathline = new Int32Array(block.x.length);
-    const linkRisk = new Float32Array(block.x.length);
-    for (let k = 0; k < block.number.length; k++) {
-      linker.frame(block, k, pathline, linkRisk);
-      await context.breathe();
-    }
-    yield { ...block, pathline, linkRisk };
-  }
 }

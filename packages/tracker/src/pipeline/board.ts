@@ -1,0 +1,82 @@
+import type { ByteSource, HasherFactory } from '../core/bytes.js';
+import type { DetectionBlock, LinkedBlock, SampleBlock } from '../core/columns.js';
+import type { RunContext, RunEvent } from '../core/context.js';
+import type { Hdf5Opener } from '../core/hdf5.js';
+import type { ResultPlace } from '../core/result-place.js';
+import type { CalibrationTally } from '../detections/calibrate.js';
+import type { Dump, DumpScan } from '../detections/dump.js';
+import type { GridResult } from '../eulerian/grid.js';
+import type { FitRunner } from '../kinematics/fit-stage.js';
+import type { GivenTally } from '../linking/given-pathlines.js';
+import type { LinkTally } from '../linking/linker.js';
+import type { ResolvedRun } from '../run/settings.js';
+import type { FinishedSamples } from '../store/result-writer.js';
+import type { RunRecord } from '../store/run-record.js';
+import type { FirstLook } from './first-look.js';
+
+/** What a run is started with; plain values, so that it can be sent to a worker. */
+export interface RunRequest {
+  readonly resolved: ResolvedRun;
+  readonly programVersion: string;
+}
+
+/** What the surroundings hand in: Node and the browser differ here and nowhere else. */
+export interface RunTools {
+  /** The dump's files, in reading order. */
+  readonly sources: readonly ByteSource[];
+  readonly hdf5: Hdf5Opener | null;
+  readonly hasher: HasherFactory;
+  readonly place: ResultPlace;
+  /** Runs fits elsewhere; absent: in this thread. */
+  readonly fit?: FitRunner;
+  readonly host: { readonly name: string; readonly platform: string; readonly runtime: string };
+  /** Wall clock for provenance only: ISO 8601, and monotonic seconds. */
+  readonly clock: { now(): string; seconds(): number };
+}
+
+/** Counts of how linking went. */
+export interface LinkCounts extends LinkTally {
+  /** Null when the dump has no pathline numbers or they are ignored. */
+  given: (GivenTally & { agreed: number | null }) | null;
+}
+
+/** Smallest and largest coordinate of the samples, and their number, noted while they stream by. */
+export interface SampleExtent {
+  min: [number, number, number];
+  max: [number, number, number];
+  samples: number;
+}
+
+/**
+ * What stages read from and write to. A stage may use what an earlier one gave and nothing else; `runStages`
+ * checks `needs` before it runs one.
+ */
+export interface Board {
+  readonly request: RunRequest;
+  readonly tools: RunTools;
+  readonly context: RunContext;
+  readonly events: RunEvent[];
+  readonly seconds: Record<string, number>;
+  dump?: Dump;
+  scan?: DumpScan;
+  look?: FirstLook;
+  /** Streams: each may be consumed once. */
+  detections?: AsyncIterable<DetectionBlock>;
+  calibration?: CalibrationTally;
+  linked?: AsyncIterable<LinkedBlock>;
+  linkCounts?: LinkCounts;
+  samples?: AsyncIterable<SampleBlock>;
+  extent?: SampleExtent;
+  finished?: FinishedSamples;
+  grid?: GridResult;
+  pathlinesBySamples?: Float64Array;
+  record?: RunRecord;
+}
+
+/** One stage: what it needs from the board, what it puts there. */
+export interface Stage {
+  readonly name: string;
+  readonly needs: readonly (keyof Board)[];
+  readonly gives: readonly (keyof Board)[];
+  run(board: Board): Promise<void> | void;
+}

@@ -1,0 +1,191 @@
+import type { DetectionBlock, Dims, LinkedBlock } from '../core/columns.js';
+import type { RunContext } from '../core/context.js';
+import { WakeloomError } from '../core/errors.js';
+import { chooseSpan } from '../kinematics/choose-span.js';
+import type { Box } from '../linking/flow-grid.js';
+import { createLinker, type LinkPrior } from '../linking/create-linker.js';
+import { chooseReach } from '../linking/reach.js';
+import { type FramePair, voteFlow } from '../linking/vote-flow.js';
+import { estimateNoise } from '../noise/position-noise.js';
+import type { RunSettings } from '../run/settings.js';
+import type { Prior } from './stages.js';
+import { linkDisplacements } from './displacements.js';
+
+/** Pairs of frames that vote for the flow: few, because the flow may change meanwhile. */
+const VOTING_PAIRS = 6;
+/** Pairs of an image-pair recording: many, because none has a neighbour in time. */
+const VOTING_IMAGE_PAIRS = 40;
+/** Detections that vote at most, and detections that are linked on trial for noise and span at most. */
+const VOTING_ROWS = 120_000;
+const TRIAL_ROWS = 400_000;
+/** Detections that choose the span at most: the mean square over so many is good to a few per cent. */
+const SPAN_ROWS = 60_000;
+/** Position noise to assume where it cannot be measured, in mean spacings (about 0.1 px at usual seeding; common practice, no source). */
+const ASSUMED_NOISE = 0.004;
+/** Span where none can be chosen from the data (7 frames; velocity 5 to 9 points is common practice, no source). */
+const DEFAULT_SPAN = 7;
+
+/** What the first look gives: figures for the record, and what the linker starts from. */
+export interface FirstLook {
+  readonly prior: Prior;
+  readonly link: LinkPrior;
+}
+
+/** Frames that the first look wants to see at most, and rows. Whoever feeds it may stop there. */
+export const FIRST_LOOK = { frames: 240, rows: TRIAL_ROWS } as const;
+
+/**
+ * First look at the data: density and spacing, the flow by votes, the reach, then a trial linking of the first
+ * frames that gives position noise, span and displacement ratio. Bounded work whatever the length of the run.
+ * `blocks`: the first calibrated frames; borrowed.
+ *
+ * Throws `linking/no-detections` where there is nothing to look at.
+ */
+export async function firstLook(
+  blocks: readonly DetectionBlock[],
+  settings: RunSettings,
+  context: RunContext,
+): Promise<FirstLook> {
+  const dims: Dims = blocks[0]?.dims ?? 2;
+  const depthNoise = dims === 3 ? settings.linking.depthNoise : 1;
+  const { box, perFrame } = extent(blocks);
+  if (!(perFrame > 0)) {
+    throw new WakeloomError(
+      'linking/no-detections',
+      'linking: got no detection in the first frames, expected some (after the region of interest and bodies were applied); check geometry, region and body',
+    );
+  }
+  const spacing = meanSpacing(box, dims, perFrame);
+  const linkSpacing = dims === 3 ? spacing / Math.cbrt(depthNoise) : spacing;
+  const pairsClock = settings.clock.kind === 'pairs';
+  const pairs = framePairs(blocks, pairsClock ? VOTING_IMAGE_PAIRS : VOTING_PAIRS);
+  const options = { dims, box, spacing: linkSpacing, depthNoise };
+  const flow = await voteFlow(pairs, options, context);
+  const voted = chooseReach(pairs, flow, options);
+  const reach = settings.linking.reach === 'auto' ? voted.reach : settings.linking.reach;
+  const density = 1 / linkSpacing ** dims;
+  const start = (noise: number): LinkPrior => ({
+    dims,
+    reach,
+    noiseSquare: 2 * dims * noise * noise,
+    expected: voted.expected,
+    density,
+    flow: flow.toData(),
+    pairs: pairsClock,
+  });
+  const trial = await trialLinking(blocks, settings, start(ASSUMED_NOISE * spacing), context);
+  const measured = estimateNoise(trial);
+  const noise: [number, number, number] = [0, 0, 0];
+  for (let axis = 0; axis < dims; axis++) {
+    const sigma = measured.sigma[axis];
+    noise[axis] = sigma > 0 ? sigma : ASSUMED_NOISE * spacing;
+  }
+  const { span: wanted, order } = settings.smoothing;
+  const span = wanted === 'auto' ? (pairsClock ? DEFAULT_SPAN : chooseSpan(leading(trial, SPAN_ROWS), noise, order)) : wanted;
+  const moved = linkDisplacements(trial, spacing);
+  context.event({
+    code: 'linking/first-look',
+    level: 'info',
+    message: `reach ${reach} ${settings.units.length}, span ${span} frames, position noise ${noise[0]} ${settings.units.length}, displacement ratio ${moved.mean}`,
+    details: { reach, span, noise, ratio: moved.mean, ratio95: moved.p95, pairs: pairs.length },
+  });
+  return {
+    prior: {
+      noise,
+      span,
+      reach: [reach, reach, reach * depthNoise],
+      spacing,
+      noiseMeasured: measured.sigma[0] > 0,
+      displacementRatio: Number.isNaN(moved.mean) ? null : moved.mean,
+      displacementRatio95: Number.isNaN(moved.p95) ? null : moved.p95,
+    },
+    link: start(noise[0]),
+  };
+}
+
+/** Bounding box of all detections and their mean number a frame. */
+function extent(blocks: readonly DetectionBlock[]): { box: Box; perFrame: number } {
+  const min: [number, number, number] = [Number.POSITIVE_INFINITY, Number.POSITIVE_INFINITY, Number.POSITIVE_INFINITY];
+  const max: [number, number, number] = [Number.NEGATIVE_INFINITY, Number.NEGATIVE_INFINITY, Number.NEGATIVE_INFINITY];
+  let rows = 0;
+  let frames = 0;
+  for (const block of blocks) {
+    rows += block.x.length;
+    frames += block.number.length;
+    for (const [axis, column] of [block.x, block.y, block.z].entries()) {
+      for (let row = 0; row < column.length; row++) {
+        if (column[row] < min[axis]) min[axis] = column[row];
+        if (column[row] > max[axis]) max[axis] = column[row];
+      }
+    }
+  }
+  if (!Number.isFinite(min[2])) {
+    min[2] = 0;
+    max[2] = 0;
+  }
+  return { box: { min, max }, perFrame: frames > 0 ? rows / frames : 0 };
+}
+
+/** n^(-1/D) with n the particles per area or volume of one frame; along an axis without extent the others decide. */
+function meanSpacing(box: Box, dims: Dims, perFrame: number): number {
+  let size = 1;
+  let axes = 0;
+  for (let axis = 0; axis < dims; axis++) {
+    const length = box.max[axis] - box.min[axis];
+    if (length > 0) {
+      size *= length;
+      axes++;
+    }
+  }
+  if (axes === 0) return 1;
+  const cell = size / perFrame;
+  return axes === 1 ? cell : axes === 2 ? Math.sqrt(cell) : Math.cbrt(cell);
+}
+
+/** The first pairs of successive frames within a segment, up to a number of pairs and rows. */
+function framePairs(blocks: readonly DetectionBlock[], most: number): FramePair[] {
+  const pairs: FramePair[] = [];
+  let rows = 0;
+  for (const block of blocks) {
+    for (let k = 0; k + 1 < block.number.length; k++) {
+      if (block.segment[k] !== block.segment[k + 1] || block.number[k + 1] - block.number[k] !== 1) continue;
+      const more = block.offsets[k + 2] - block.offsets[k];
+      if (pairs.length >= most || (pairs.length > 0 && rows + more > VOTING_ROWS)) return pairs;
+      rows += more;
+      pairs.push({ block, first: k, second: k + 1 });
+    }
+  }
+  return pairs;
+}
+
+async function trialLinking(
+  blocks: readonly DetectionBlock[],
+  settings: RunSettings,
+  prior: LinkPrior,
+  context: RunContext,
+): Promise<LinkedBlock[]> {
+  const linker = createLinker(settings.linking, prior);
+  const linked: LinkedBlock[] = [];
+  for (const block of blocks) {
+    const pathline = new Int32Array(block.x.length);
+    const linkRisk = new Float32Array(block.x.length);
+    for (let k = 0; k < block.number.length; k++) {
+      linker.frame(block, k, pathline, linkRisk);
+      await context.breathe();
+    }
+    linked.push({ ...block, pathline, linkRisk });
+  }
+  return linked;
+}
+
+/** The first blocks, as many as hold `rows` rows (at least one). */
+function leading(blocks: readonly LinkedBlock[], rows: number): LinkedBlock[] {
+  const taken: LinkedBlock[] = [];
+  let sum = 0;
+  for (const block of blocks) {
+    if (taken.length > 0 && sum + block.x.length > rows) break;
+    taken.push(block);
+    sum += block.x.length;
+  }
+  return taken;
+}

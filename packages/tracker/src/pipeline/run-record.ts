@@ -1,0 +1,104 @@
+import { calibrationSummary } from '../detections/calibration-summary.js';
+import { SCHEMA_VERSION, type RunRecord } from '../store/run-record.js';
+import type { Board } from './board.js';
+
+/** Share of samples set aside by screening above which a person should look (1 to 5 % normal, above 10 % look; common practice, no source). */
+const MUCH_SET_ASIDE = 0.1;
+/** Displacement ratio above which linking without knowledge of the flow gets doubtful (common practice, no source). */
+const LARGE_RATIO = 1;
+
+/** run.json of a finished run, without its digest. */
+export function runRecord(board: Board, started: string): Omit<RunRecord, 'digest'> {
+  const { request, tools, context } = board;
+  const { settings, records, assumptions } = request.resolved;
+  const scan = board.scan!;
+  const finished = board.finished!;
+  const calibration = board.calibration!;
+  const links = board.linkCounts!;
+  const grid = board.grid!;
+  const { prior } = board.look!;
+  const { frameNumbers } = scan;
+  const summary = calibrationSummary(settings);
+  const { length, time } = settings.units;
+  const forLinking = calibration.detections - calibration.outsideRegion - calibration.insideBody;
+  const pairs = settings.clock.kind === 'pairs';
+  const inPathlines = pairs ? 2 * finished.samples : finished.samples;
+  const filled = countFilled(grid.fields.get('u')?.values);
+  const warnings = board.events.filter((event) => event.level === 'warning').map((event) => event.message);
+  const asideShare = finished.samples > 0 ? 1 - finished.unflagged / finished.samples : 0;
+  if (asideShare > MUCH_SET_ASIDE) {
+    warnings.push(
+      `${percent(asideShare)} of the samples were set aside by screening (above ${percent(MUCH_SET_ASIDE)}, common practice: look at the recording)`,
+    );
+  }
+  if (prior.displacementRatio !== null && prior.displacementRatio > LARGE_RATIO) {
+    warnings.push(
+      `displacement ratio ${prior.displacementRatio.toFixed(2)}: particles move farther than they are apart; wrong links are likely, record at a higher rate or seed less`,
+    );
+  }
+  if (!prior.noiseMeasured && !pairs) {
+    warnings.push('position noise could not be measured from the first pathlines; standard errors rest on an assumed value');
+  }
+  return {
+    schema: SCHEMA_VERSION,
+    program: { name: 'wakeloom', version: request.programVersion },
+    run: settings.run,
+    settings: records,
+    assumptions: [...assumptions, ...summary.remarks],
+    notes: settings.notes,
+    inputs: scan.files,
+    format: scan.format,
+    columns: scan.columns,
+    counts: {
+      rowsPresent: scan.rowsPresent,
+      rowsRead: scan.rowsRead,
+      rowsSetAside: scan.setAside,
+      framesSpanned: frameNumbers.length > 0 ? frameNumbers[frameNumbers.length - 1] - frameNumbers[0] + 1 : 0,
+      framesPresent: frameNumbers.length,
+      detections: calibration.detections,
+      outsideRegion: calibration.outsideRegion,
+      insideBody: calibration.insideBody,
+      detectionsForLinking: forLinking,
+      links: finished.links,
+      linksBridging: finished.linksBridging,
+      linksLeftOutForRisk: links.leftOutForRisk,
+      pathlines: finished.pathlines,
+      samples: finished.samples,
+      shortFragments: finished.shortFragments,
+      shortFragmentDetections: finished.shortFragmentDetections,
+      unlinkedDetections: forLinking - inPathlines - finished.shortFragmentDetections,
+      flagged: finished.flagged,
+      samplesInGrid: finished.unflagged,
+      binsFilled: filled,
+      bins: grid.samples.length,
+    },
+    prior,
+    figures: {
+      meanSpeed: finished.meanSpeed,
+      peakSpeed: finished.peakSpeed,
+      velocityUnit: `${length}/${time}`,
+      lengthUnit: length,
+      timeUnit: time,
+      displacementRatio: prior.displacementRatio ?? Number.NaN,
+      displacementRatio95: prior.displacementRatio95 ?? Number.NaN,
+      medianPathlineSamples: finished.medianPathlineSamples,
+      noise: prior.noise.slice(0, scan.dims),
+      medianVelocitySe: finished.medianVelocitySe,
+    },
+    systematic: summary.systematic,
+    warnings,
+    verdict: null,
+    clockTimes: { started, finished: tools.clock.now(), seconds: { ...board.seconds } },
+    host: { ...tools.host, threads: context.budget.threads },
+  };
+}
+
+function countFilled(values: Float32Array | undefined): number {
+  let filled = 0;
+  for (const value of values ?? []) if (value === value) filled++;
+  return filled;
+}
+
+function percent(share: number): string {
+  return `${(100 * share).toFixed(1)} %`;
+}

@@ -1,0 +1,70 @@
+import type { DetectionBlock, LinkedBlock } from '../core/columns.js';
+import type { RunContext } from '../core/context.js';
+import { LinkComparison } from '../linking/given-check.js';
+import { GivenPathlines } from '../linking/given-pathlines.js';
+import { createLinker } from '../linking/create-linker.js';
+import type { Linker } from '../linking/linker.js';
+import type { LinkCounts, Stage } from './board.js';
+
+/** Turns the stream of detections into a stream of linked ones: our own links, or those the dump came with. */
+export const linkStage: Stage = {
+  name: 'link',
+  needs: ['scan', 'look', 'detections'],
+  gives: ['linked', 'linkCounts'],
+  run(board) {
+    const { context, request } = board;
+    const { settings } = request.resolved;
+    const mode = board.scan!.has.pathline ? settings.dump.given : 'ignore';
+    const counts: LinkCounts = { links: 0, bridging: 0, leftOutForRisk: 0, pathlines: 0, given: null };
+    const linker = mode === 'keep' ? null : createLinker(settings.linking, board.look!.link);
+    const given = mode === 'ignore' ? null : new GivenPathlines(settings.linking.bridge);
+    board.linkCounts = counts;
+    board.linked = linkStream(board.detections!, linker, given, settings.linking.bridge, counts, context);
+  },
+};
+
+async function* linkStream(
+  blocks: AsyncIterable<DetectionBlock>,
+  linker: Linker | null,
+  given: GivenPathlines | null,
+  bridge: number,
+  counts: LinkCounts,
+  context: RunContext,
+): AsyncGenerator<LinkedBlock> {
+  const comparison = linker !== null && given !== null ? new LinkComparison(bridge) : null;
+  let frames = 0;
+  for await (const block of blocks) {
+    const own = linker === null ? null : await linkBlock(linker, block, context);
+    const theirs = given === null ? null : given.link(block);
+    if (comparison !== null) comparison.add(theirs!, own!);
+    frames += block.number.length;
+    context.progress('link', frames, null, 'frames');
+    yield (own ?? theirs)!;
+  }
+  if (linker !== null) Object.assign(counts, linker.tally);
+  if (given === null) return;
+  if (linker === null) {
+    counts.links = given.tally.links;
+    counts.pathlines = given.begun;
+  }
+  counts.given = { ...given.tally, agreed: comparison?.agreed ?? null };
+  const { links, twiceInFrame, broken } = given.tally;
+  const agreed = comparison === null ? '' : `, ${comparison.agreed} of them found by linking anew as well`;
+  context.event({
+    code: 'linking/given-pathlines',
+    level: twiceInFrame + broken > 0 ? 'warning' : 'note',
+    message: `the dump came with pathline numbers: ${links} links${agreed}; ${twiceInFrame} detections shared a number within a frame, ${broken} links crossed more than ${bridge} missing frames`,
+    details: { links, twiceInFrame, broken, agreed: comparison?.agreed ?? null },
+  });
+}
+
+/** Links one block with the run's linker. */
+async function linkBlock(linker: Linker, block: DetectionBlock, context: RunContext): Promise<LinkedBlock> {
+  const pathline = new Int32Array(block.x.length);
+  const linkRisk = new Float32Array(block.x.length);
+  for (let k = 0; k < block.number.length; k++) {
+    linker.frame(block, k, pathline, linkRisk);
+    await context.breathe();
+  }
+  return { ...block, pathline, linkRisk };
+}

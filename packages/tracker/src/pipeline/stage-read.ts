@@ -1,0 +1,83 @@
+import type { DetectionBlock } from '../core/columns.js';
+import { createContext } from '../core/context.js';
+import { WakeloomError } from '../core/errors.js';
+import { calibrate, newTally } from '../detections/calibrate.js';
+import { openDump } from '../detections/open-dump.js';
+import type { Board, Stage } from './board.js';
+import { FIRST_LOOK, firstLook } from './first-look.js';
+
+/** Rows a block holds: small enough to live in the cache's neighbourhood, large enough to cost nothing. */
+const BLOCK_ROWS = 40_000;
+
+/** Reads the whole dump once: columns, frames, rows set aside, hash. */
+export const scanStage: Stage = {
+  name: 'scan',
+  needs: [],
+  gives: ['dump', 'scan'],
+  async run(board) {
+    const { request, tools, context } = board;
+    const { settings } = request.resolved;
+    board.dump = openDump(tools.sources, settings.dump, {
+      hasher: tools.hasher,
+      hdf5: tools.hdf5,
+      ramLimit: Math.trunc(settings.results.ramLimit / 2),
+    });
+    board.scan = await board.dump.scan(context);
+    for (const remark of board.scan.remarks) {
+      context.event({ code: 'dump/remark', level: 'note', message: remark, details: {} });
+    }
+    for (const aside of board.scan.setAside) {
+      context.event({
+        code: 'dump/rows-set-aside',
+        level: 'warning',
+        message: `${aside.count} rows set aside: ${aside.reason}`,
+        details: { reason: aside.reason, count: aside.count, examples: aside.examples },
+      });
+    }
+    if (board.scan.rowsRead === 0) {
+      throw new WakeloomError(
+        'dump/no-detections',
+        `dump: got no usable row of ${board.scan.rowsPresent}, expected detections (${tools.sources[0]?.name ?? 'no file'})`,
+      );
+    }
+  },
+};
+
+/** Links the first frames on trial: flow, reach, noise, span. */
+export const lookStage: Stage = {
+  name: 'look',
+  needs: ['dump', 'scan'],
+  gives: ['look'],
+  async run(board) {
+    const { request, context } = board;
+    const first: DetectionBlock[] = [];
+    let rows = 0;
+    let frames = 0;
+    // Its own tally and silent events: the same frames are read again by the run proper.
+    const quiet = createContext({ signal: context.signal, bytes: context.budget.bytes });
+    for await (const block of calibrated(board, quiet, newTally())) {
+      first.push(block);
+      rows += block.x.length;
+      frames += block.number.length;
+      if (frames >= FIRST_LOOK.frames || rows >= FIRST_LOOK.rows) break;
+    }
+    board.look = await firstLook(first, request.resolved.settings, context);
+  },
+};
+
+/** Opens the stream of calibrated detections. */
+export const detectionsStage: Stage = {
+  name: 'detections',
+  needs: ['dump', 'scan'],
+  gives: ['detections', 'calibration'],
+  run(board) {
+    board.calibration = newTally();
+    board.detections = calibrated(board, board.context, board.calibration);
+  },
+};
+
+function calibrated(board: Board, context: Board['context'], tally: ReturnType<typeof newTally>) {
+  const { settings } = board.request.resolved;
+  const scan = board.scan!;
+  return calibrate({ settings, scan, context, tally }, board.dump!.blocks(context, BLOCK_ROWS));
+}

@@ -1,0 +1,93 @@
+import { WakeloomError } from '../core/errors.js';
+import { createGridAccumulator } from '../eulerian/accumulate.js';
+import { gridShape } from '../eulerian/grid-shape.js';
+import { reportHtml } from '../figures/report.js';
+import { openResultWriter } from '../store/result-writer.js';
+import type { Stage } from './board.js';
+import { runRecord } from './run-record.js';
+
+/** Pathlines longer than this share the last bar of the length histogram. */
+const LONGEST_BAR = 100_000;
+
+/**
+ * Draws the samples through the stages before, spills them, turns them into pathline order, bins them on the way,
+ * and completes the result folder. Whatever fails leaves a folder that is no result.
+ */
+export const storeStage: Stage = {
+  name: 'store',
+  needs: ['scan', 'look', 'calibration', 'linkCounts', 'samples', 'extent'],
+  gives: ['finished', 'grid', 'pathlinesBySamples', 'record'],
+  async run(board) {
+    const { context, tools, request, seconds } = board;
+    const { settings } = request.resolved;
+    const { dims, rowsRead, frameNumbers, frameCounts } = board.scan!;
+    const { prior } = board.look!;
+    const pairs = settings.clock.kind === 'pairs';
+    const started = tools.clock.now();
+    const writer = openResultWriter(tools.place, {
+      dims,
+      pairs,
+      units: settings.units,
+      shortest: pairs ? 1 : settings.linking.shortest,
+      bridge: settings.linking.bridge,
+      keepPathlines: settings.results.keepPathlines,
+      keepFrames: settings.results.keepFrames,
+      stuckFactor: settings.screening.stuckFactor,
+      noise: prior.noise,
+      ramLimit: settings.results.ramLimit,
+      context,
+      title: settings.run,
+      expectedSamples: rowsRead,
+    });
+    try {
+      const streamed = tools.clock.seconds();
+      for await (const block of board.samples!) await writer.add(block);
+      seconds['stream'] = tools.clock.seconds() - streamed;
+      if (board.extent!.samples === 0) throw nothingLinked();
+      const bounds = board.extent!;
+      const shape = gridShape(settings.grid, dims, bounds, prior.spacing, frameNumbers.length);
+      const bins = createGridAccumulator(shape, dims, {
+        fewestForMean: settings.grid.fewestForMean,
+        fewestForStress: settings.grid.fewestForStress,
+        lengthUnit: settings.units.length,
+        timeUnit: settings.units.time,
+      });
+      const bySamples = new Float64Array(LONGEST_BAR);
+      let longest = 0;
+      const written = tools.clock.seconds();
+      const finished = await writer.finish((rows) => {
+        bins.add({ ...rows, rowStart: rows.offsets });
+        for (let k = 0; k + 1 < rows.offsets.length; k++) {
+          const length = Math.min(rows.offsets[k + 1] - rows.offsets[k], LONGEST_BAR - 1);
+          bySamples[length]++;
+          if (length > longest) longest = length;
+        }
+      });
+      board.finished = finished;
+      board.pathlinesBySamples = bySamples.slice(0, longest + 1);
+      board.grid = bins.finish();
+      await writer.writeGrid(board.grid, {});
+      seconds['write'] = tools.clock.seconds() - written;
+      if (finished.pathlines === 0) throw nothingLinked();
+      const record = runRecord(board, started);
+      const data = {
+        grid: board.grid,
+        bodies: settings.body,
+        detectionsPerFrame: { frame: frameNumbers, detections: frameCounts },
+        pathlinesBySamples: board.pathlinesBySamples,
+      };
+      const log = board.events.map((event) => JSON.stringify(event));
+      board.record = await writer.complete(record, (full) => reportHtml(full, data), log);
+    } catch (error) {
+      writer.abandon();
+      throw error;
+    }
+  },
+};
+
+function nothingLinked(): WakeloomError {
+  return new WakeloomError(
+    'linking/no-pathlines',
+    'linking: got no pathline of the shortest length kept, expected some; check the frame column, the rate and the scale, then --reach and --shortest',
+  );
+}
