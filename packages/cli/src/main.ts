@@ -1,6 +1,8 @@
 import { readFileSync } from 'node:fs';
 import { WakeloomError } from '@wakeloom/tracker/core/errors';
 import { nearestWord } from '@wakeloom/tracker/run/nearest';
+import { DEMO } from './commands/demo.js';
+import { EXPORT } from './commands/export.js';
 import { PROCESS } from './commands/process.js';
 import { EXIT, exitCodeOf } from './exit-codes.js';
 import { errorText } from './messages.js';
@@ -8,7 +10,7 @@ import { processTerminal, type Terminal } from './terminal.js';
 import { helpText, makeParser, parseVerb, type Verb, verbParser } from './verbs.js';
 
 /** Every verb there is, in the order of the help. */
-const VERBS: readonly Verb[] = [PROCESS];
+const VERBS: readonly Verb[] = [PROCESS, EXPORT, DEMO];
 
 /**
  * Runs the command. Never throws and never exits: the caller sets the exit code (0 done, 1 failed, 2 wrong usage or
@@ -43,7 +45,7 @@ async function dispatch(argv: readonly string[], terminal: Terminal): Promise<nu
   if (verb === undefined) throw unknownVerb(name);
   const parser = verbParser(verb, terminal);
   if (first === 'help' || rest.includes('--help') || rest.includes('-h')) {
-    terminal.result(await helpText(parser));
+    terminal.result(await helpText(verb.usage, parser));
     return EXIT.done;
   }
   const { words, args } = parseVerb(parser, rest);
@@ -61,18 +63,28 @@ function unknownVerb(name: string): WakeloomError {
 }
 
 function overview(terminal: Terminal): Promise<string> {
-  const parser = makeParser(terminal).usage(
-    'wakeloom VERB ...\n\nLinks detections of tracer particles into pathlines, gives velocity and acceleration with standard errors, and mean fields on a grid.',
-  );
-  for (const verb of VERBS) parser.command(verb.name, verb.about);
-  parser
+  const width = Math.max(...VERBS.map(({ name }) => name.length)) + 2;
+  const usage = [
+    'wakeloom VERB ...',
+    '',
+    'Links detections of tracer particles into pathlines, gives velocity and',
+    'acceleration with standard errors, and mean fields on a grid.',
+    '',
+    'Verbs:',
+    ...VERBS.map(({ name, about }) => `  ${name.padEnd(width)}${about}`),
+    '',
+    'Start here:',
+    '  wakeloom demo --out demo',
+    '  wakeloom process demo/cylinder-wake.yaml --out demo/result',
+  ];
+  const parser = makeParser(terminal)
     .option('version', { type: 'boolean', alias: 'v', description: 'Show the version', group: 'Options:' })
     .epilogue(
       'wakeloom VERB --help shows the options of a verb and examples that work.\n' +
         'Exit codes: 0 done, 1 failed, 2 wrong usage or run sheet, 130 interrupted.\n' +
-        'NO_COLOR, TERM=dumb and --quiet are kept; WAKELOOM_DEBUG=1 shows where an error happened.',
+        'NO_COLOR, TERM=dumb and --quiet are kept; WAKELOOM_DEBUG=1 shows where an\nerror happened.',
     );
-  return helpText(parser);
+  return helpText(usage.join('\n'), parser);
 }
 
 /** Version of this package, as `--version` prints it. */

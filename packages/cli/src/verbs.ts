@@ -12,7 +12,9 @@ export interface Verb {
   readonly name: string;
   /** One line for the list of verbs. */
   readonly about: string;
-  /** Adds usage lines, options and examples. */
+  /** How it is used, what it does, examples that work: printed as it stands, so that lines can be copied. */
+  readonly usage: string;
+  /** Adds the options. */
   readonly options: (parser: Argv) => Argv;
   readonly run: (words: readonly string[], args: Args, terminal: Terminal) => Promise<number>;
 }
@@ -43,9 +45,9 @@ export function verbParser(verb: Verb, terminal: Pick<Terminal, 'columns'>): Arg
   return verb.options(makeParser(terminal)).strictOptions();
 }
 
-/** Help text of a parser without the parser's own type marks: every value here is written as a person would. */
-export async function helpText(parser: Argv): Promise<string> {
-  return (await parser.getHelp()).replace(/\s+\[(string|boolean)\]$/gm, '');
+/** Usage and options of a parser, without the parser's own type marks: every value here is written as a person would. */
+export async function helpText(usage: string, parser: Argv): Promise<string> {
+  return `${usage}\n\n${(await parser.getHelp()).replace(/\s+\[(string|boolean)\]$/gm, '')}`;
 }
 
 /** Arguments of a verb. Codes: `usage/unknown-option`, `usage/options` for what else the parser refuses. */

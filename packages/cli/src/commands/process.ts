@@ -33,10 +33,10 @@ Examples:
 export const PROCESS: Verb = {
   name: 'process',
   about: 'a dump in, a result folder out',
+  usage: USAGE,
   options: (parser) =>
     addSettings(
       parser
-        .usage(USAGE)
         .option('out', { type: 'string', description: 'Folder for the result; made when missing' })
         .option('replace', { type: 'boolean', description: 'Write into a folder that holds other files; they stay' })
         .option('quiet', { type: 'boolean', description: 'Say nothing but errors' }),
