@@ -2,6 +2,7 @@ import { open } from 'node:fs/promises';
 import type { ByteSource } from '../core/bytes.js';
 import { WakeloomError } from '../core/errors.js';
 import { systemCode } from './file-errors.js';
+import { rememberPath } from './source-paths.js';
 
 /**
  * A file open for reading; `name` is the path as given. Codes: `dump/no-such-file`, `dump/not-readable`
@@ -15,7 +16,7 @@ export async function openFileSource(path: string): Promise<ByteSource> {
       await handle.close();
       throw Object.assign(new Error(`${path} is a folder`), { code: 'EISDIR' });
     }
-    return {
+    const source: ByteSource = {
       name: path,
       size: stat.size,
       modified: stat.mtime.toISOString(),
@@ -30,6 +31,7 @@ export async function openFileSource(path: string): Promise<ByteSource> {
       },
       close: () => handle.close(),
     };
+    return rememberPath(source, path);
   } catch (error) {
     const code = systemCode(error) ?? 'an error';
     if (code === 'ENOENT') {

@@ -6,16 +6,13 @@ import { createNetcdf, type NetcdfWriter } from './netcdf-writer.js';
 import type { Numbering } from './numbering.js';
 import { type Kept, LEFT_OUT } from './pathlines-file.js';
 import type { SampleColumn } from './sample-columns.js';
-import { type Column, columnOf, type Spilled } from './spill.js';
+import { type Batch, type Column, columnOf, readBatch, type Spilled } from './spill.js';
 
 /** Columns of a sample that frames.nc shows, besides the pathline and its row in pathlines.nc. */
 export const FRAME_KEYS = ['x', 'y', 'z', 'u', 'v', 'w', 'flags'] as const;
 
 /** Samples in the overview, at most about (the choice is by row number, see `inOverview`). A screenful; our choice. */
 const OVERVIEW_SAMPLES = 1 << 16;
-
-/** Rows gathered before they are written: a whole number of chunks. */
-const OUT_ROWS = 1 << 16;
 
 /** What frames.nc is made from. `kept` is null when there is no pathlines.nc. */
 export interface FramesInput {
@@ -43,7 +40,7 @@ export function inOverview(row: number, rows: number): boolean {
  * twice (the first time the pathline numbers only). Resolves to the content digest.
  */
 export async function writeFramesFile(place: ResultPlace, input: FramesInput, context: RunContext): Promise<string> {
-  const { spilled, numbering, columns, keep } = input;
+  const { spilled, numbering, keep } = input;
   const sizes = await keptPerFrame(input, context);
   const frameCount = sizes.length;
   const shown = (frame: number) => keep === 'all' || frame % THINNING === 0;
@@ -81,7 +78,7 @@ export async function writeFramesFile(place: ResultPlace, input: FramesInput, co
       'pathline',
       Int32Array.from({ length: numbering.pathlines }, (_, number) => number),
     );
-    await writeSamples(file, input, samples, overview, columns, shown, context);
+    await writeSamples(file, input, samples, overview, shown, context);
     return await file.finish(context);
   } catch (error) {
     file.abandon();
@@ -92,10 +89,10 @@ export async function writeFramesFile(place: ResultPlace, input: FramesInput, co
 /** Samples of kept pathlines in each frame. */
 async function keptPerFrame({ spilled, numbering }: FramesInput, context: RunContext): Promise<Int32Array> {
   const sizes = new Int32Array(spilled.frameRows.length);
-  for await (const { pathline, frames } of walkBatches(spilled, [], context)) {
+  for await (const { order, pathline, frames } of walkBatches(spilled, context)) {
     for (const { frame, first, end } of frames) {
       let count = 0;
-      for (let i = first; i < end; i++) if (numbering.final[pathline[i]] >= 0) count++;
+      for (let i = first; i < end; i++) if (numbering.final[pathline[order[i]]] >= 0) count++;
       sizes[frame] += count;
     }
   }
@@ -103,35 +100,29 @@ async function keptPerFrame({ spilled, numbering }: FramesInput, context: RunCon
 }
 
 interface FrameBatch {
+  readonly batch: Batch;
+  /** Place in the batch's columns of each of its rows in frame order. */
+  readonly order: Int32Array;
   readonly pathline: Int32Array;
-  readonly values: readonly Column[];
   /** Rows of this batch by frame index. */
   readonly frames: readonly { readonly frame: number; readonly first: number; readonly end: number }[];
 }
 
-/** The frame spill batch by batch; columns of `wanted` in that order (all of the spill's, or none). */
-async function* walkBatches(
-  spilled: Spilled,
-  wanted: readonly SampleColumn[],
-  context: RunContext,
-  bytesARow = 0,
-): AsyncGenerator<FrameBatch> {
-  const { frames, batches, frameRows } = spilled;
-  if (frames === null) return;
+/** The spill batch by batch, with its frame order. The arrays are used again for the next batch. */
+async function* walkBatches(spilled: Spilled, context: RunContext): AsyncGenerator<FrameBatch> {
+  const { batches, frameRows } = spilled;
+  const most = batches.reduce((rows, batch) => Math.max(rows, batch.rows), 0);
+  const allOrder = new Int32Array(most);
+  const allPathline = new Int32Array(most);
   let position = 0;
   let frame = 0;
   let left = frameRows.length > 0 ? frameRows.array[0] : 0;
-  const rowSize = bytesARow > 0 ? bytesARow : frames.length / batches.reduce((sum, batch) => sum + batch.rows, 0);
   for (const batch of batches) {
-    const pathline = new Int32Array(batch.rows);
-    frames.read(position, new Uint8Array(pathline.buffer));
-    let at = position + 4 * batch.rows;
-    const values = wanted.map((column) => {
-      const out = columnOf(column.stored, batch.rows);
-      frames.read(at, new Uint8Array(out.buffer));
-      at += out.byteLength;
-      return out;
-    });
+    const order = allOrder.subarray(0, batch.rows);
+    const pathline = allPathline.subarray(0, batch.rows);
+    spilled.order?.read(position, new Uint8Array(order.buffer, 0, order.byteLength));
+    position += order.byteLength;
+    readBatch(spilled, batch, -1, 0, pathline);
     const ranges: { frame: number; first: number; end: number }[] = [];
     for (let row = 0; row < batch.rows; ) {
       while (left === 0) left = frameRows.array[++frame];
@@ -140,67 +131,68 @@ async function* walkBatches(
       left -= end - row;
       row = end;
     }
-    yield { pathline, values, frames: ranges };
-    position += rowSize * batch.rows;
+    yield { batch, order, pathline, frames: ranges };
     await context.breathe();
   }
 }
 
+/** The columns of the sample dimension, a batch at a time, and the overview out of them. */
 async function writeSamples(
   file: NetcdfWriter,
   input: FramesInput,
   samples: number,
   overview: number,
-  columns: readonly SampleColumn[],
   shown: (frame: number) => boolean,
   context: RunContext,
 ): Promise<void> {
-  const { spilled, numbering, kept, stuck } = input;
+  const { spilled, numbering, kept, stuck, columns } = input;
   const { final, next } = numbering;
-  const out = columns.map((column) => columnOf(column.stored, OUT_ROWS));
-  const outPathline = new Int32Array(OUT_ROWS);
-  const outRow = new Int32Array(OUT_ROWS);
+  const most = spilled.batches.reduce((rows, batch) => Math.max(rows, batch.rows), 0);
+  const picked = new Int32Array(most);
+  const numbers = new Int32Array(most);
+  const fileRows = new Int32Array(most);
+  const [read, gathered] = [new ArrayBuffer(8 * most), new ArrayBuffer(8 * most)];
   const few = columns.map((column) => columnOf(column.stored, overview));
   const fewPathline = new Int32Array(overview);
   const fewFrame = new Int32Array(overview);
-  const flags = columns.findIndex((column) => column.key === 'flags');
-  let used = 0;
   let row = 0;
-  let picked = 0;
-  const flush = () => {
-    columns.forEach((column, index) => {
-      file.append(column.name, out[index].subarray(0, used));
-    });
-    file.append('pathline_index', outPathline.subarray(0, used));
-    if (kept !== null) file.append('pathlines_row', outRow.subarray(0, used));
-    used = 0;
-  };
-  for await (const { pathline, values, frames } of walkBatches(spilled, columns, context)) {
+  let inFew = 0;
+  for await (const { batch, order, pathline, frames } of walkBatches(spilled, context)) {
+    const firstRow = row;
+    const firstFew = inFew;
+    let used = 0;
     for (const { frame, first, end } of frames) {
       const show = shown(frame);
       for (let i = first; i < end; i++) {
-        const number = final[pathline[i]];
+        const provisional = pathline[order[i]];
+        const number = final[provisional];
         if (number < 0) continue;
-        const fullRow = next[pathline[i]]++;
+        const fullRow = next[provisional]++;
         if (!show) continue;
-        for (let c = 0; c < values.length; c++) out[c][used] = values[c][i];
-        if (stuck[number] === 1) out[flags][used] |= FLAG.stuck;
-        outPathline[used] = number;
+        picked[used] = order[i];
+        numbers[used] = number;
         const shift = kept === null || kept.shift === null ? 0 : kept.shift[number];
-        outRow[used] = shift === LEFT_OUT ? -1 : fullRow + shift;
-        if (inOverview(row, samples)) {
-          for (let c = 0; c < values.length; c++) few[c][picked] = out[c][used];
-          fewPathline[picked] = number;
-          fewFrame[picked] = spilled.frameNumber.array[frame];
-          picked++;
+        fileRows[used++] = shift === LEFT_OUT ? -1 : fullRow + shift;
+        if (inOverview(row++, samples)) {
+          fewPathline[inFew] = number;
+          fewFrame[inFew++] = spilled.frameNumber.array[frame];
         }
-        row++;
-        used++;
-        if (used === OUT_ROWS) flush();
       }
     }
+    columns.forEach((column, c) => {
+      const Type = few[c].constructor as new (buffer: ArrayBuffer, offset: number, length: number) => Column;
+      const values = new Type(read, 0, batch.rows);
+      const out = new Type(gathered, 0, used);
+      readBatch(spilled, batch, spilled.stored.indexOf(column), 0, values);
+      for (let i = 0; i < used; i++) out[i] = values[picked[i]];
+      if (column.key === 'flags') for (let i = 0; i < used; i++) if (stuck[numbers[i]] === 1) out[i] |= FLAG.stuck;
+      let at = firstFew;
+      for (let i = 0; i < used; i++) if (inOverview(firstRow + i, samples)) few[c][at++] = out[i];
+      file.append(column.name, out);
+    });
+    file.append('pathline_index', numbers.subarray(0, used));
+    if (kept !== null) file.append('pathlines_row', fileRows.subarray(0, used));
   }
-  if (used > 0) flush();
   columns.forEach((column, index) => {
     file.append(`overview_${column.name}`, few[index]);
   });

@@ -5,7 +5,7 @@ import { WakeloomError } from '../core/errors.js';
 import type { ResultPlace } from '../core/result-place.js';
 import { checkRoom } from './disk-space.js';
 import { type Growable, growable } from './growable.js';
-import type { SampleColumn } from './sample-columns.js';
+import type { SampleColumn, SampleKey } from './sample-columns.js';
 
 /** Rows sorted and written at once: about 13 MB in the plane, and again as much while they are sorted. */
 const BATCH_ROWS = 1 << 17;
@@ -18,7 +18,7 @@ export const BUCKET_PATHLINES = 64;
 
 export type Column = Float64Array | Float32Array | Int32Array | Uint16Array;
 
-/** One batch in a scratch file: columns one after the other, each of `rows` values. */
+/** One batch in a scratch file: pathline numbers, then the columns, one after the other, each of `rows` values. */
 export interface Batch {
   readonly position: number;
   readonly rows: number;
@@ -29,11 +29,13 @@ export interface Batch {
 
 /** What was spilled, to be read again in `finish`. */
 export interface Spilled {
-  /** All columns and the pathline number, each batch sorted by bucket. */
+  /** Each batch sorted by bucket. */
   readonly samples: ScratchFile;
   readonly batches: readonly Batch[];
-  /** The columns that frames.nc shows, in frame order. */
-  readonly frames: ScratchFile | null;
+  /** Columns in `samples`: all but the time; `frame` holds the index of the frame. */
+  readonly stored: readonly SampleColumn[];
+  /** Where each row of a batch went, in frame order: 32-bit row numbers, batch after batch; null: not noted. */
+  readonly order: ScratchFile | null;
   /** Samples of each provisional pathline. */
   readonly counts: Growable<Int32Array>;
   readonly frameNumber: Growable<Int32Array>;
@@ -63,48 +65,38 @@ export function columnOf(stored: SampleColumn['stored'], rows: number): Column {
   return stored === 'i32' ? new Int32Array(rows) : new Uint16Array(rows);
 }
 
+/** Bytes a sample takes in scratch files. */
+export function spillBytes(columns: readonly SampleColumn[], withOrder: boolean): number {
+  return rowBytes(columns.filter((column) => column.key !== 'time')) + (withOrder ? 8 : 4);
+}
+
 /**
- * Opens the spill. Memory: about 26 MB in the plane and 4 bytes a pathline. `frameColumns` are those of `columns`
- * that frames.nc takes (empty: no frames.nc).
+ * Opens the spill. Memory: about 13 MB in the plane and 4 bytes a pathline. `withOrder`: note the frame order too,
+ * for frames.nc.
  */
-export function openSpill(
-  place: ResultPlace,
-  columns: readonly SampleColumn[],
-  frameColumns: readonly SampleColumn[],
-): Spill {
+export function openSpill(place: ResultPlace, columns: readonly SampleColumn[], withOrder: boolean): Spill {
   const samples = place.scratch.create('samples');
-  const frames = frameColumns.length > 0 ? place.scratch.create('frames') : null;
+  const order = withOrder ? place.scratch.create('order') : null;
+  // The time follows from the frame: 8 bytes a sample less to write.
+  const stored = columns.filter((column) => column.key !== 'time');
   const batches: Batch[] = [];
   const counts = growable(Int32Array);
   const frameNumber = growable(Int32Array);
   const frameTime = growable(Float64Array);
   const frameRows = growable(Int32Array);
-  let staged = columns.map((column) => columnOf(column.stored, BATCH_ROWS));
+  let staged = stored.map((column) => columnOf(column.stored, BATCH_ROWS));
   let stagedPathline = new Int32Array(BATCH_ROWS);
   let sorted = new Float64Array(BATCH_ROWS);
   let slots = new Int32Array(BATCH_ROWS);
   let used = 0;
-  let frameRowBytes = rowBytes(frameColumns) + 4;
-  if (frames === null) frameRowBytes = 0;
-
-  const bytesOf = (array: Column, rows: number) =>
-    new Uint8Array(array.buffer, array.byteOffset, rows * array.BYTES_PER_ELEMENT);
 
   const flush = () => {
     if (used === 0) return;
-    checkRoom(place, used * (rowBytes(columns) + 4 + frameRowBytes));
-    if (frames !== null) {
-      frames.append(bytesOf(stagedPathline, used));
-      for (const column of frameColumns) frames.append(bytesOf(staged[columns.indexOf(column)], used));
-    }
+    checkRoom(place, used * spillBytes(columns, withOrder));
     const { buckets, firstRows } = sortByBucket(stagedPathline, used, slots);
     batches.push({ position: samples.length, rows: used, buckets, firstRows });
-    for (const source of [stagedPathline, ...staged]) {
-      const Type = source.constructor as new (buffer: ArrayBufferLike, offset: number, length: number) => Column;
-      const target = new Type(sorted.buffer, 0, used);
-      for (let i = 0; i < used; i++) target[slots[i]] = source[i];
-      samples.append(bytesOf(target, used));
-    }
+    for (const source of [stagedPathline, ...staged]) samples.append(bytesOf(scatter(source, slots, sorted, used)));
+    order?.append(bytesOf(slots.subarray(0, used)));
     used = 0;
   };
 
@@ -112,27 +104,26 @@ export function openSpill(
     add(block) {
       const rows = rowCount(block);
       checkBlock(block, frameNumber);
+      countPathlines(block.pathline, rows, counts);
+      const firstFrame = frameNumber.length;
       for (let frame = 0; frame < block.number.length; frame++) {
         frameNumber.push(block.number[frame]);
         frameTime.push(block.time[frame]);
         frameRows.push(block.offsets[frame + 1] - block.offsets[frame]);
       }
-      countPathlines(block.pathline, rows, counts);
       let frame = 0;
       for (let first = 0; first < rows; ) {
         const end = Math.min(rows, first + BATCH_ROWS - used);
         stagedPathline.set(block.pathline.subarray(first, end), used);
-        columns.forEach((column, index) => {
-          if (column.key === 'frame' || column.key === 'time') return;
-          staged[index].set(block[column.key].subarray(first, end), used);
+        stored.forEach((column, index) => {
+          if (column.key === 'frame') return;
+          staged[index].set(block[column.key as SampleKey].subarray(first, end), used);
         });
-        const number = staged[columns.findIndex((column) => column.key === 'frame')];
-        const time = staged[columns.findIndex((column) => column.key === 'time')];
+        const frameIndex = staged[stored.findIndex((column) => column.key === 'frame')];
         for (let row = first; row < end; ) {
           while (block.offsets[frame + 1] <= row) frame++;
           const stop = Math.min(end, block.offsets[frame + 1]);
-          number.fill(block.number[frame], used + row - first, used + stop - first);
-          time.fill(block.time[frame], used + row - first, used + stop - first);
+          frameIndex.fill(firstFrame + frame, used + row - first, used + stop - first);
           row = stop;
         }
         used += end - first;
@@ -146,13 +137,32 @@ export function openSpill(
       stagedPathline = new Int32Array(0);
       sorted = new Float64Array(0);
       slots = new Int32Array(0);
-      return { samples, batches, frames, counts, frameNumber, frameTime, frameRows };
+      return { samples, batches, stored, order, counts, frameNumber, frameTime, frameRows };
     },
     discard() {
       samples.discard();
-      frames?.discard();
+      order?.discard();
     },
   };
+}
+
+function bytesOf(array: Column): Uint8Array {
+  return new Uint8Array(array.buffer, array.byteOffset, array.byteLength);
+}
+
+/** Row i of `source` at slots[i], as a view of `room`. */
+function scatter(source: Column, slots: Int32Array, room: Float64Array, rows: number): Column {
+  const Type = source.constructor as new (buffer: ArrayBufferLike, offset: number, length: number) => Column;
+  const target = new Type(room.buffer, 0, rows);
+  for (let i = 0; i < rows; i++) target[slots[i]] = source[i];
+  return target;
+}
+
+/** Reads rows start .. start + into.length - 1 of a batch: of stored column `index`, or of the pathline numbers for -1. */
+export function readBatch(spilled: Spilled, batch: Batch, index: number, start: number, into: Column): void {
+  const before = index < 0 ? 0 : 4 + rowBytes(spilled.stored.slice(0, index));
+  const position = batch.position + before * batch.rows + into.BYTES_PER_ELEMENT * start;
+  spilled.samples.read(position, bytesOf(into));
 }
 
 function checkBlock(block: SampleBlock, frameNumber: Growable<Int32Array>): void {

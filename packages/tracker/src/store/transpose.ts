@@ -2,10 +2,10 @@ import type { RunContext } from '../core/context.js';
 import type { Numbering } from './numbering.js';
 import type { PathlineRows } from './pathline-rows.js';
 import type { SampleColumn } from './sample-columns.js';
-import { type Batch, BUCKET_PATHLINES, type Column, columnOf, rowBytes, type Spilled } from './spill.js';
+import { type Batch, BUCKET_PATHLINES, type Column, columnOf, readBatch, rowBytes, type Spilled } from './spill.js';
 
-/** Rows of a group in one pass, by size: 32 MB of columns, unless one pathline alone is longer. */
-const GROUP_BYTES = 32 << 20;
+/** Rows of a group in one pass, by size: 16 MB of columns, unless one pathline alone is longer. */
+const GROUP_BYTES = 16 << 20;
 
 /** Columns of absent axes. */
 const NONE = { f64: new Float64Array(0), f32: new Float32Array(0) } as const;
@@ -33,7 +33,8 @@ export async function* transpose(
   const capacity = Math.max(1, Math.floor(GROUP_BYTES / (rowBytes(columns) + 8)));
   let held: Column[] = [];
   let pathline = new Int32Array(0);
-  let batchIndex = 0;
+  const most = spilled.batches.reduce((rows, batch) => Math.max(rows, batch.rows), 0);
+  const windows = { target: new Int32Array(most), bytes: new ArrayBuffer(8 * most) };
   for (const group of groupsOf(spilled, numbering, capacity)) {
     if (pathline.length < group.rows) {
       const size = Math.max(group.rows, Math.min(capacity, numbering.samples));
@@ -42,13 +43,9 @@ export async function* transpose(
     }
     const firstBucket = Math.floor(group.first / BUCKET_PATHLINES);
     const lastBucket = Math.floor((group.end - 1) / BUCKET_PATHLINES);
-    // Provisional numbers ascend with the first frame, so batches before the first that holds this bucket stay behind.
-    while (batchIndex < spilled.batches.length && lastOf(spilled.batches[batchIndex].buckets) < firstBucket)
-      batchIndex++;
-    for (let index = 0; index < spilled.batches.length; index++) {
-      const batch = spilled.batches[index];
+    for (const batch of spilled.batches) {
       if (batch.buckets[0] > lastBucket || lastOf(batch.buckets) < firstBucket) continue;
-      gather(spilled, batch, firstBucket, lastBucket, group, numbering, columns, held);
+      gather(spilled, batch, firstBucket, lastBucket, group, numbering, columns, held, windows);
       await context.breathe();
     }
     yield rowsOf(group, numbering, spilled, columns, held, pathline);
@@ -90,6 +87,12 @@ function lowerBound(values: Int32Array, value: number): number {
   return low;
 }
 
+/** Working arrays of `gather`, a batch's rows long, used again from call to call. */
+interface Windows {
+  readonly target: Int32Array;
+  readonly bytes: ArrayBuffer;
+}
+
 function gather(
   spilled: Spilled,
   batch: Batch,
@@ -99,30 +102,37 @@ function gather(
   numbering: Numbering,
   columns: readonly SampleColumn[],
   held: readonly Column[],
+  windows: Windows,
 ): void {
   const from = lowerBound(batch.buckets, firstBucket);
   const to = lowerBound(batch.buckets, lastBucket + 1);
   if (from === to) return;
   const start = batch.firstRows[from];
   const rows = (to < batch.firstRows.length ? batch.firstRows[to] : batch.rows) - start;
-  const target = new Int32Array(rows);
-  spilled.samples.read(batch.position + 4 * start, new Uint8Array(target.buffer));
+  const target = windows.target.subarray(0, rows);
+  readBatch(spilled, batch, -1, start, target);
   const { final, next } = numbering;
   for (let i = 0; i < rows; i++) {
     const p = target[i];
     target[i] = p >= group.first && p < group.end && final[p] >= 0 ? next[p]++ - group.firstRow : -1;
   }
-  const window = new ArrayBuffer(8 * rows);
-  let position = batch.position + 4 * batch.rows;
-  columns.forEach((column, index) => {
-    const out = held[index];
-    const size = out.BYTES_PER_ELEMENT;
+  spilled.stored.forEach((column, index) => {
+    const out = held[columns.indexOf(column)];
     const Type = out.constructor as new (buffer: ArrayBuffer, offset: number, length: number) => Column;
-    const values = new Type(window, 0, rows);
-    spilled.samples.read(position + size * start, new Uint8Array(window, 0, size * rows));
-    for (let i = 0; i < rows; i++) if (target[i] >= 0) out[target[i]] = values[i];
-    position += size * batch.rows;
+    const values = new Type(windows.bytes, 0, rows);
+    readBatch(spilled, batch, index, start, values);
+    if (column.key === 'frame') {
+      scatterInto(held[columns.findIndex((each) => each.key === 'time')], target, values, spilled.frameTime.array);
+      scatterInto(out, target, values, spilled.frameNumber.array);
+    } else {
+      for (let i = 0; i < rows; i++) if (target[i] >= 0) out[target[i]] = values[i];
+    }
   });
+}
+
+/** Frame indices to what the table holds for them. */
+function scatterInto(out: Column, target: Int32Array, frames: Column, table: Int32Array | Float64Array): void {
+  for (let i = 0; i < target.length; i++) if (target[i] >= 0) out[target[i]] = table[frames[i]];
 }
 
 function rowsOf(
