@@ -73,12 +73,13 @@ function sliceByY(
     if (value < low) low = value;
     if (value > high) high = value;
   }
-  // Subtraction, product and truncation are each monotone, so slices ascend with y whatever the rounding.
+  // Subtraction, product and truncation are each monotone, so slices ascend with y whatever the rounding. Where
+  // high - low is 0, overflows, or is so small that its inverse does, all products are 0, NaN or infinite, which
+  // `>>> 0` makes slice 0: one slice, sorted by comparison.
   const perLength = (n - 1) / (high - low);
-  const usable = perLength > 0 && perLength <= Number.MAX_VALUE;
   first.fill(0, 0, n + 1);
   for (let i = 0; i < n; i++) {
-    const s = usable ? ((y[from + i]! - low) * perLength) >>> 0 : 0;
+    const s = ((y[from + i]! - low) * perLength) >>> 0;
     slice[i] = s;
     first[s + 1] = first[s + 1]! + 1;
   }
