@@ -1,5 +1,4 @@
 import { WakeloomError } from '@wakeloom/tracker';
-import { readNormalisation } from '@wakeloom/tracker/run/normalisation';
 import { float32Text } from '@wakeloom/tracker/store/exports/csv';
 import { divisorFor, unitPowers } from '@wakeloom/tracker/store/exports/normalise';
 import { EXPORTERS, exportGrid, exportPathlines } from '@wakeloom/tracker/store/exports/registry';
@@ -180,14 +179,6 @@ describe('figures and units of exports', () => {
       expect.objectContaining({ code: 'usage/normalise' }),
     );
     expect(() => divisorFor('Pa', MM_S, { length: 1, speed: 1 })).toThrow(
-      expect.objectContaining({ code: 'usage/normalise' }),
-    );
-  });
-
-  it('reads the two figures in the units of the results', () => {
-    expect(readNormalisation('0.5 cm', '0.03 m/s', MM_S)).toEqual({ length: 5, speed: 30 });
-    expect(() => readNormalisation('5 px', '1 mm/s', MM_S)).toThrow(expect.objectContaining({ code: 'usage/unit' }));
-    expect(() => readNormalisation('0 mm', '1 mm/s', MM_S)).toThrow(
       expect.objectContaining({ code: 'usage/normalise' }),
     );
   });

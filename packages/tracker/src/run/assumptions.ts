@@ -24,7 +24,7 @@ export function assumptionsOf(settings: RunSettings, given: GivenSettings): read
   if (clock.kind === 'bursts' && clock.every === null) {
     sentences.push('The time between bursts is not given: they follow each other by frame number and rate.');
   }
-  if (clock.kind === 'pairs') sentences.push('An even frame number and the next odd one form a pair.');
+  if (clock.kind === 'pairs') sentences.push('From the first frame on, every two frame numbers form a pair.');
   if (fluid?.kind === 'water') {
     sentences.push(
       `Water is taken as pure and fresh at 0.1 MPa (IAPWS SR6-08): at ${fluid.temperature!.value} degC ` +
