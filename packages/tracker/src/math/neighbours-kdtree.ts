@@ -51,8 +51,8 @@ export function buildKdTree(points: PointColumns, dims: Dims, from = 0, to = poi
     const z = dims === 3 ? points.z[row] : 0;
     if (!Number.isNaN(x + y + z)) list.push({ x, y, z, row });
   }
+  // The constructor sorts the array it is given: taken before, and the array is ours.
   const size = list.length;
-  // The constructor sorts the array it is given: it is ours.
   // A CommonJS module: Node finds the class on the default import only.
   const { kdTree: Tree } = kdTreeModule;
   // While pruning, the library measures from points that carry the named dimensions only: a distance in the plane
@@ -63,7 +63,8 @@ export function buildKdTree(points: PointColumns, dims: Dims, from = 0, to = poi
 
 /**
  * The k nearest rows, fewer where the tree holds fewer. Exact; among rows at the same distance the lower ones are
- * taken, also where the k-th place falls between them. A NaN query has no neighbours. Cost: about 30 us a query for k = 8 among 2000 points.
+ * taken, also where the k-th place falls between them. A NaN query has no neighbours.
+ * Cost: about 30 us a query for k = 8 among 2000 points.
  */
 export function kdNearest(tree: KdTree, query: KdQuery, k: number): KdNeighbours {
   const at = pointOf(tree, query);
@@ -123,10 +124,4 @@ function squareInPlane(a: KdPoint, b: KdPoint): number {
 function squareInSpace(a: KdPoint, b: KdPoint): number {
   const dz = a.z - b.z;
   return squareInPlane(a, b) + dz * dz;
-}
-
-function planeSquare(a: KdPoint, b: KdPoint): number {
-  const dx = a.x - b.x;
-  const dy = a.y - b.y;
-  return dx * dx + dy * dy;
 }
