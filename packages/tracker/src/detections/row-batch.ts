@@ -20,7 +20,7 @@ export interface RowBatch {
   /** 1 for each role the dump carries. */
   readonly used: Uint8Array;
   /** 1-based line of each row; 0 in formats without lines. */
-  readonly line: Float64Array;
+  readonly line: Uint32Array;
   /** 0-based data row over all files in reading order, rows set aside included. */
   readonly row: Float64Array;
 }
@@ -30,7 +30,7 @@ export function createRowBatch(): RowBatch {
     rows: 0,
     columns: ROLES.map(() => new Float64Array(BATCH_ROWS)),
     used: new Uint8Array(ROLES.length),
-    line: new Float64Array(BATCH_ROWS),
+    line: new Uint32Array(BATCH_ROWS),
     row: new Float64Array(BATCH_ROWS),
   };
 }

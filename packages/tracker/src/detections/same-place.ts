@@ -1,19 +1,13 @@
-/** Mixes the bits of a coordinate into a hash (multipliers of MurmurHash3's finaliser, A. Appleby, public domain). */
-function mix(hash: number, low: number, high: number): number {
-  let h = Math.imul(hash ^ low, 0x85ebca6b);
-  h = Math.imul(h ^ (h >>> 13) ^ high, 0xc2b2ae35);
-  return h ^ (h >>> 16);
-}
+/** Odd multiplier near 2^32 over the golden ratio: Fibonacci hashing (Knuth, TAOCP 3, section 6.4). */
+const GOLDEN = 0x9e3779b1;
 
 /**
- * Finds rows of one frame that lie at exactly the place of an earlier row (0 and -0 are one place). Keeps its table
+ * Finds rows of one frame that lie at exactly the place of an earlier row (coordinates hold no -0, see judgeRows). Keeps its table
  * between frames. Memory: 8 to 16 bytes a row of the largest frame. Cost: about 10 ns a row.
  */
 export class SamePlace {
   /** Row + 1 in each slot, 0 for a free one; always a power of two long and at most half full. */
   #slots = new Int32Array(64);
-  readonly #pair = new Float64Array(3);
-  readonly #bits = new Int32Array(this.#pair.buffer);
 
   /**
    * Calls `found(i)` in ascending order for each row `from <= i < to` that stands where an earlier row of the range
@@ -36,18 +30,16 @@ export class SamePlace {
     const slots = this.#slots;
     slots.fill(0, 0, used);
     const mask = used - 1;
-    const pair = this.#pair;
-    const bits = this.#bits;
     const solid = z.length > 0;
-    for (let i = from; i < to; i++) {
-      // Adding 0 turns -0 into 0 and leaves all else.
-      pair[0] = x[i] + 0;
-      pair[1] = y[i] + 0;
-      let hash = mix(mix(0, bits[0], bits[1]), bits[2], bits[3]);
-      if (solid) {
-        pair[2] = z[i] + 0;
-        hash = mix(hash, bits[4], bits[5]);
-      }
+    // Two 32-bit halves a coordinate; which half stands first depends on the machine and does not matter.
+    const xBits = halves(x, from, to);
+    const yBits = halves(y, from, to);
+    const zBits = solid ? halves(z, from, to) : xBits;
+    for (let i = from, at = 0; i < to; i++, at += 2) {
+      let hash = Math.imul(xBits[at] ^ Math.imul(xBits[at + 1], GOLDEN), GOLDEN) ^ yBits[at];
+      hash = Math.imul(hash ^ (hash >>> 15) ^ Math.imul(yBits[at + 1], GOLDEN), GOLDEN);
+      if (solid) hash = Math.imul(hash ^ zBits[at] ^ Math.imul(zBits[at + 1], GOLDEN), GOLDEN);
+      hash ^= hash >>> 15;
       let slot = hash & mask;
       for (;;) {
         const other = slots[slot] - 1;
@@ -64,4 +56,8 @@ export class SamePlace {
       }
     }
   }
+}
+
+function halves(values: Float64Array, from: number, to: number): Int32Array {
+  return new Int32Array(values.buffer, values.byteOffset + 8 * from, 2 * (to - from));
 }
