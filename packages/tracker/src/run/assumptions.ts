@@ -1,15 +1,15 @@
 import type { GivenSettings } from './given-settings.js';
 import type { RunSettings } from './settings.js';
 
-/** Plain sentences about what nobody said and the program therefore took for granted. */
+/**
+ * Plain sentences about what nobody said and the program therefore took for granted. Uncertainties that nobody
+ * stated are the calibration's to tell.
+ */
 export function assumptionsOf(settings: RunSettings, given: GivenSettings): readonly string[] {
   const sentences: string[] = [];
   const { clock, geometry, fluid, units } = settings;
   if (geometry.kind === 'scale') {
     if (units.length === 'px') sentences.push('No scale is given: lengths are in px.');
-    else if (geometry.scale.standardUncertainty === null) {
-      sentences.push('The scale is given without an uncertainty: none is carried into the results.');
-    }
     if (given.origin('geometry.y-axis') === 'default') sentences.push('y as written in the dump counts as up.');
     if (given.origin('geometry.origin') === 'default') sentences.push('The origin is the zero of the dump.');
   } else {
@@ -18,9 +18,6 @@ export function assumptionsOf(settings: RunSettings, given: GivenSettings): read
   }
   if (clock.kind === 'none') sentences.push('No frame rate is given: times are in frames.');
   else if (clock.kind === 'times') sentences.push('The time column is taken to be in s.');
-  else if (clock.rate.standardUncertainty === null) {
-    sentences.push('The rate is given without an uncertainty: none is carried into the results.');
-  }
   if (clock.kind === 'bursts' && clock.every === null) {
     sentences.push('The time between bursts is not given: they follow each other by frame number and rate.');
   }
