@@ -1,6 +1,16 @@
-import { accessSync, constants, readdirSync, statSync } from 'node:fs';
+import { accessSync, constants, readdirSync, type Stats, statSync } from 'node:fs';
 import { basename, dirname, isAbsolute, join, resolve, sep } from 'node:path';
 import { WakeloomError } from '@wakeloom/tracker/core/errors';
+
+/** What lies at a path; undefined when nothing does, also where part of the path is a file. */
+export function lookAt(path: string): Stats | undefined {
+  try {
+    return statSync(path, { throwIfNoEntry: false });
+  } catch (error) {
+    if ((error as NodeJS.ErrnoException).code === 'ENOTDIR') return undefined;
+    throw error;
+  }
+}
 
 /** Order in which people count: digits by value, `frame_9` before `frame_10`; ties by code units. */
 export function naturalOrder(a: string, b: string): number {
@@ -32,7 +42,7 @@ export function expandFiles(patterns: readonly string[], folder = '.'): string[]
   const files: string[] = [];
   for (const pattern of patterns) {
     const path = isAbsolute(pattern) || folder === '.' ? pattern : join(folder, pattern);
-    const exact = statSync(path, { throwIfNoEntry: false });
+    const exact = lookAt(path);
     if (exact === undefined && hasWildcard(path)) files.push(...matches(path));
     else files.push(path);
   }
@@ -45,7 +55,7 @@ function hasWildcard(path: string): boolean {
 }
 
 function checkReadable(file: string): void {
-  const found = statSync(file, { throwIfNoEntry: false });
+  const found = lookAt(file);
   if (found === undefined) {
     const near = neighboursOf(file);
     throw new WakeloomError(
@@ -75,8 +85,7 @@ function checkReadable(file: string): void {
 
 function neighboursOf(file: string): string {
   const folder = dirname(file);
-  if (statSync(folder, { throwIfNoEntry: false })?.isDirectory() !== true)
-    return `the folder "${folder}" does not exist`;
+  if (lookAt(folder)?.isDirectory() !== true) return `the folder "${folder}" does not exist`;
   const start = basename(file)
     .replace(/\.[^.]*$/, '')
     .toLowerCase();
@@ -93,7 +102,7 @@ function matches(pattern: string): string[] {
   const found: string[] = [];
   const walk = (folder: string, rest: readonly string[]) => {
     const [head, ...tail] = rest;
-    if (statSync(folder, { throwIfNoEntry: false })?.isDirectory() !== true) return;
+    if (lookAt(folder)?.isDirectory() !== true) return;
     if (head === '**') walk(folder, tail);
     for (const entry of readdirSync(folder, { withFileTypes: true })) {
       const path = folder === '.' && fixed.length === 0 ? entry.name : join(folder, entry.name);

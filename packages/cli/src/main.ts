@@ -1,4 +1,3 @@
-import { readFileSync } from 'node:fs';
 import { WakeloomError } from '@wakeloom/tracker/core/errors';
 import { nearestWord } from '@wakeloom/tracker/run/nearest';
 import { DEMO } from './commands/demo.js';
@@ -8,6 +7,7 @@ import { EXIT, exitCodeOf } from './exit-codes.js';
 import { errorText } from './messages.js';
 import { processTerminal, type Terminal } from './terminal.js';
 import { helpText, makeParser, parseVerb, type Verb, verbParser } from './verbs.js';
+import { programVersion } from './version.js';
 
 /** Every verb there is, in the order of the help. */
 const VERBS: readonly Verb[] = [PROCESS, EXPORT, DEMO];
@@ -85,10 +85,4 @@ function overview(terminal: Terminal): Promise<string> {
         'NO_COLOR, TERM=dumb and --quiet are kept; WAKELOOM_DEBUG=1 shows where an\nerror happened.',
     );
   return helpText(usage.join('\n'), parser);
-}
-
-/** Version of this package, as `--version` prints it. */
-export function programVersion(): string {
-  const text = readFileSync(new URL('../package.json', import.meta.url), 'utf8');
-  return (JSON.parse(text) as { version: string }).version;
 }

@@ -1,6 +1,7 @@
-import { mkdirSync, readdirSync, readFileSync, rmSync, statSync, writeFileSync } from 'node:fs';
+import { mkdirSync, readdirSync, readFileSync, rmSync, writeFileSync } from 'node:fs';
 import { join } from 'node:path';
 import { WakeloomError } from '@wakeloom/tracker/core/errors';
+import { lookAt } from './files.js';
 
 /** Files a result folder consists of, finished or cut short. */
 const OURS = /^(run\.json|pathlines\.nc|frames\.nc|grid\.nc|log\.ndjson|report\.html|\.partial-.*)$/;
@@ -13,7 +14,7 @@ const IGNORED = /^(\.DS_Store|Thumbs\.db|desktop\.ini)$/;
  * `usage/out-not-a-folder`, `usage/out-not-empty`, `usage/out-not-writable`.
  */
 export function prepareOutFolder(folder: string, replace: boolean): void {
-  const found = statSync(folder, { throwIfNoEntry: false });
+  const found = lookAt(folder);
   if (found !== undefined && !found.isDirectory()) {
     throw new WakeloomError('usage/out-not-a-folder', `--out: got "${folder}", which is a file, expected a folder`, {
       path: folder,

@@ -1,7 +1,8 @@
-import { WakeloomError } from '@wakeloom/tracker/core/errors';
+import { processInWorker } from '@wakeloom/tracker/node/process-in-worker';
 import type { ResolvedRun } from '@wakeloom/tracker/run/settings';
 import type { RunRecord } from '@wakeloom/tracker/store/run-record';
 import type { Hooks } from './hooks.js';
+import { programVersion } from './version.js';
 
 /** What a run is started with: everything in it has been checked. */
 export interface ProcessRequest {
@@ -12,10 +13,9 @@ export interface ProcessRequest {
   readonly out: string;
 }
 
-/** Hands the run to the tracker's worker threads. */
-export function processRun(request: ProcessRequest, _hooks: Hooks): Promise<RunRecord> {
-  throw new WakeloomError(
-    'run/not-joined',
-    `process: got ${request.files.length} files, expected the joined pipeline, which is not there yet`,
-  );
+/** Hands the run to the tracker's worker threads, so that this thread stays free for progress and Ctrl-C. */
+export function processRun(request: ProcessRequest, hooks: Hooks): Promise<RunRecord> {
+  const { threads, ramLimit } = request.run.settings.results;
+  const job = { resolved: request.run, programVersion: programVersion() };
+  return processInWorker(job, request.files, request.out, { threads, ramLimit, ...hooks });
 }

@@ -1,4 +1,4 @@
-import { renameSync, rmSync, statSync } from 'node:fs';
+import { renameSync, rmSync } from 'node:fs';
 import { dirname } from 'node:path';
 import { WakeloomError } from '@wakeloom/tracker/core/errors';
 import { formatBytes, formatCount } from '@wakeloom/tracker/figures/number-format';
@@ -6,6 +6,7 @@ import { openFileSink } from '@wakeloom/tracker/node';
 import { EXPORTERS, findExporter } from '@wakeloom/tracker/store/exports/registry';
 import { EXIT } from '../exit-codes.js';
 import { type ExportWish, exportResult, openExport } from '../export-result.js';
+import { lookAt } from '../files.js';
 import { single } from '../options.js';
 import { isOurResult } from '../out-folder.js';
 import { plainText } from '../plain-text.js';
@@ -92,7 +93,7 @@ function readWish(words: readonly string[], args: Args): ExportWish {
   }
   const format = args['format'] === undefined ? 'csv' : single('format', args['format'], 'a format').toLowerCase();
   findExporter(format);
-  if (statSync(folder, { throwIfNoEntry: false })?.isDirectory() !== true) {
+  if (lookAt(folder)?.isDirectory() !== true) {
     throw new WakeloomError(
       'usage/no-such-folder',
       `export: got "${folder}", which is no folder, expected a result folder (wakeloom process makes one)`,
@@ -112,12 +113,12 @@ function readWish(words: readonly string[], args: Args): ExportWish {
 }
 
 function checkOutFile(out: string): void {
-  if (statSync(out, { throwIfNoEntry: false })?.isDirectory() === true) {
+  if (lookAt(out)?.isDirectory() === true) {
     throw new WakeloomError('usage/out-not-a-file', `--out: got "${out}", which is a folder, expected a file`, {
       path: out,
     });
   }
-  if (statSync(dirname(out), { throwIfNoEntry: false })?.isDirectory() !== true) {
+  if (lookAt(dirname(out))?.isDirectory() !== true) {
     throw new WakeloomError(
       'usage/no-such-folder',
       `--out: got "${out}", whose folder does not exist, expected a file in an existing folder`,
