@@ -31,6 +31,12 @@ export interface PlanarModel {
  */
 const CONDITION_LIMIT = 1e5;
 
+/**
+ * Change of every coefficient (of size 1 here) below which the iteration ends: each step shrinks the next one by
+ * about the residuals over the field, 1e-3 or less, so what is left is below 1e-13.
+ */
+const SETTLED = 1e-10;
+
 /** Steps after which Gauss-Newton is stopped; from the linear solution it needs about five. */
 const STEP_LIMIT = 40;
 
@@ -107,6 +113,7 @@ const PROJECTIVE: PlanarModel = {
       if (!(nextError < error)) break;
       p = next;
       error = nextError;
+      if (change.every((value) => Math.abs(value) <= SETTLED)) break;
     }
     return p;
   },
