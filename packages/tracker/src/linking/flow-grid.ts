@@ -24,6 +24,8 @@ const MOMENTS = { 2: 12, 3: 22 } as const;
 const MODEL = { 2: 9, 3: 16 } as const;
 /** Gradients are drawn to zero as if this many links, spread evenly over the cell, had shown none. */
 const RIDGE = 1.5;
+/** Weight of a velocity borrowed from neighbouring cells, in links. */
+const BORROWED = 1e-3;
 
 /**
  * Running picture of the flow as the linker knows it: on coarse cells a local linear fit (mean velocity at the
@@ -61,6 +63,8 @@ export class FlowGrid {
     this.modelStride = MODEL[data.dims];
     this.model = new Float64Array(this.cells * this.modelStride);
     this.fit();
+    // The first time, knowledge spreads as far as it takes; later a ring of cells a frame is enough.
+    while (this.spread() > 0);
   }
 
   /** A grid without any flow in it. `edge`: cell edge, length unit. */
@@ -162,12 +166,58 @@ export class FlowGrid {
     }
   }
 
-  /** Fits every cell anew from its sums. Cost: one small symmetric solve a cell. */
+  /**
+   * Fits every cell anew from its sums; cells that have seen nothing borrow from their neighbours, one ring a call.
+   * Cost: one small symmetric solve a cell.
+   */
   fit(): void {
+    let known = 0;
     for (let cell = 0; cell < this.cells; cell++) {
+      if (this.moments[cell * this.stride] > 0) known++;
       if (this.dims === 2) this.fitPlane(cell);
       else this.fitSpace(cell);
     }
+    if (known < this.cells) this.spread();
+  }
+
+  /**
+   * Gives every cell without a velocity the mean of its neighbours that have one, with next to no weight: better
+   * than rest for a particle that comes to a place nobody has been to. Returns how many cells were filled.
+   */
+  private spread(): number {
+    const { countX, countY, countZ, model, modelStride, dims } = this;
+    const velocity = 1 + dims;
+    const filled: number[] = [];
+    const values: number[] = [];
+    for (let cell = 0; cell < this.cells; cell++) {
+      if (model[cell * modelStride] > 0) continue;
+      const i = cell % countX;
+      const line = (cell - i) / countX;
+      const j = line % countY;
+      const k = (line - j) / countY;
+      const sum = [0, 0, 0];
+      let neighbours = 0;
+      for (let c = Math.max(0, k - 1); c <= Math.min(countZ - 1, k + 1); c++) {
+        for (let b = Math.max(0, j - 1); b <= Math.min(countY - 1, j + 1); b++) {
+          for (let a = Math.max(0, i - 1); a <= Math.min(countX - 1, i + 1); a++) {
+            const at = ((c * countY + b) * countX + a) * modelStride;
+            if (!(model[at] > 0)) continue;
+            neighbours++;
+            for (let axis = 0; axis < dims; axis++) sum[axis] += model[at + velocity + axis];
+          }
+        }
+      }
+      if (neighbours === 0) continue;
+      filled.push(cell);
+      for (let axis = 0; axis < dims; axis++) values.push(sum[axis] / neighbours);
+    }
+    for (const [n, cell] of filled.entries()) {
+      const at = cell * modelStride;
+      model.fill(0, at, at + modelStride);
+      model[at] = BORROWED;
+      for (let axis = 0; axis < dims; axis++) model[at + velocity + axis] = values[n * dims + axis];
+    }
+    return filled.length;
   }
 
   private fitPlane(cell: number): void {
@@ -176,8 +226,9 @@ export class FlowGrid {
     const to = cell * this.modelStride;
     const model = this.model;
     const weight = m[at];
-    model[to] = weight;
+    // A cell without links of its own keeps what it has borrowed.
     if (!(weight > 0)) return;
+    model[to] = weight;
     const per = 1 / weight;
     const mx = m[at + 1] * per;
     const my = m[at + 2] * per;
@@ -208,8 +259,9 @@ export class FlowGrid {
     const to = cell * this.modelStride;
     const model = this.model;
     const weight = m[at];
-    model[to] = weight;
+    // A cell without links of its own keeps what it has borrowed.
     if (!(weight > 0)) return;
+    model[to] = weight;
     const per = 1 / weight;
     const mx = m[at + 1] * per;
     const my = m[at + 2] * per;

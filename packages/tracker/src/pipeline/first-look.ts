@@ -22,6 +22,8 @@ const TRIAL_ROWS = 400_000;
 const SPAN_ROWS = 60_000;
 /** Position noise to assume where it cannot be measured, in mean spacings (about 0.1 px at usual seeding; common practice, no source). */
 const ASSUMED_NOISE = 0.004;
+/** Least position noise that gates are built on, in mean spacings. */
+const LEAST_NOISE = 0.001;
 /** Span where none can be chosen from the data (7 frames; velocity 5 to 9 points is common practice, no source). */
 const DEFAULT_SPAN = 7;
 
@@ -99,7 +101,8 @@ export async function firstLook(
       displacementRatio: Number.isNaN(moved.mean) ? null : moved.mean,
       displacementRatio95: Number.isNaN(moved.p95) ? null : moved.p95,
     },
-    link: start(noise[0]),
+    // No real detection is better than a thousandth of a spacing; a gate of rounding errors would lose links.
+    link: start(Math.max(noise[0], LEAST_NOISE * spacing)),
   };
 }
 

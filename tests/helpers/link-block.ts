@@ -1,0 +1,54 @@
+import type { DetectionBlock } from '@wakeloom/tracker';
+import { createContext } from '@wakeloom/tracker';
+import { createFrameSorter } from '@wakeloom/tracker/detections/canonical-order';
+import { createLinker } from '@wakeloom/tracker/linking/create-linker';
+import { firstLook } from '@wakeloom/tracker/pipeline/first-look';
+import { resolveRun } from '@wakeloom/tracker/run/resolve';
+import type { LinkingSettings } from '@wakeloom/tracker/run/settings';
+
+/** Links one block as a run would (canonical order, first look, linker) and gives the pathline of every row of the block as it came. */
+export async function linkBlock(
+  block: DetectionBlock,
+  options: Record<string, string | number> = {},
+  change: Partial<LinkingSettings> = {},
+) {
+  const { settings } = resolveRun({ options: { rate: '60 Hz', scale: '1 mm/px', ...options }, dumpFiles: ['x.csv'] });
+  const linking = { ...settings.linking, ...change };
+  const sorted = sortedCopy(block);
+  const look = await firstLook([sorted], { ...settings, linking }, createContext());
+  const linker = createLinker(linking, look.link);
+  const pathline = new Int32Array(sorted.x.length);
+  const risk = new Float32Array(sorted.x.length);
+  for (let k = 0; k < sorted.number.length; k++) linker.frame(sorted, k, pathline, risk);
+  const byRow = new Int32Array(pathline.length);
+  for (let row = 0; row < pathline.length; row++) byRow[sorted.row[row]] = pathline[row];
+  return { pathline: byRow, prior: look.prior, tally: linker.tally };
+}
+
+/** Links as `row>row` pairs, whatever the numbering of the pathlines. */
+export function linkSet(pathline: ArrayLike<number>, frame: ArrayLike<number>): Set<string> {
+  const order = Array.from({ length: pathline.length }, (_, row) => row).sort((a, b) => frame[a] - frame[b]);
+  const last = new Map<number, number>();
+  const links = new Set<string>();
+  for (const row of order) {
+    const before = last.get(pathline[row]);
+    if (before !== undefined) links.add(`${before}>${row}`);
+    last.set(pathline[row], row);
+  }
+  return links;
+}
+
+function sortedCopy(block: DetectionBlock): DetectionBlock {
+  const copy: DetectionBlock = {
+    ...block,
+    x: block.x.slice(),
+    y: block.y.slice(),
+    z: block.z.slice(),
+    brightness: block.brightness.slice(),
+    row: block.row.slice(),
+    given: block.given.slice(),
+  };
+  const sort = createFrameSorter();
+  for (let k = 0; k < copy.number.length; k++) sort(copy, copy.offsets[k], copy.offsets[k + 1]);
+  return copy;
+}
