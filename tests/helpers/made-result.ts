@@ -70,6 +70,7 @@ export function madeRecord(finished: FinishedSamples): Omit<RunRecord, 'digest'>
     },
     prior: {
       noise: [0, 0, 0],
+      noiseMeasured: true,
       span: 7,
       reach: [1, 1, 1],
       spacing: 1,
@@ -121,6 +122,8 @@ export async function makeResult(
   for (const block of madeSamples(made)) await writer.add(block);
   const finished = await writer.finish(onPathlines);
   await writer.writeGrid(madeGrid(dims), { bin_overlap: { type: 'f64', values: [0.5] } });
-  const record = await writer.complete(madeRecord(finished), () => '<!doctype html><title>made</title>', ['{"code":"a/b"}']);
+  const record = await writer.complete(madeRecord(finished), () => '<!doctype html><title>made</title>', [
+    '{"code":"a/b"}',
+  ]);
   return { finished, record };
 }

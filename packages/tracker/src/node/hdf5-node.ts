@@ -1,11 +1,11 @@
 import { mkdtempSync, rmSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
-import * as h5wasm from 'h5wasm/node';
 import type { ByteSource } from '../core/bytes.js';
 import type { Hdf5Opener } from '../core/hdf5.js';
 import { openHdf5Reader } from '../store/hdf5-reader.js';
 import { openFileSink } from './file-sink.js';
+import { nodeHdf5Build } from './hdf5-build.js';
 import { pathOf } from './source-paths.js';
 
 /** Bytes copied at once when a source is no file. */
@@ -17,8 +17,7 @@ const COPY = 1 << 20;
  */
 export const nodeHdf5: Hdf5Opener = {
   async open(source) {
-    const module = await h5wasm.ready;
-    const build = { module, File: h5wasm.File };
+    const build = await nodeHdf5Build();
     const path = pathOf(source);
     if (path !== null) return openHdf5Reader(build, path, source.name);
     const folder = mkdtempSync(join(tmpdir(), 'wakeloom-'));

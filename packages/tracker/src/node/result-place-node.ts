@@ -13,11 +13,11 @@ import {
 } from 'node:fs';
 import { open } from 'node:fs/promises';
 import { join } from 'node:path';
-import * as h5wasm from 'h5wasm/node';
 import { WakeloomError } from '../core/errors.js';
 import type { ResultPlace } from '../core/result-place.js';
 import { writeError } from './file-errors.js';
 import { nodeHasher } from './hasher.js';
+import { nodeHdf5Build } from './hdf5-build.js';
 import { nodeScratch } from './scratch.js';
 
 /**
@@ -25,7 +25,7 @@ import { nodeScratch } from './scratch.js';
  * place without files. Codes: `store/not-a-folder`, `store/not-writable`, `store/disk-full`.
  */
 export async function openNodeResultPlace(folder: string, options: { create: boolean }): Promise<ResultPlace> {
-  const module = await h5wasm.ready;
+  const hdf5 = await nodeHdf5Build();
   const guard = <T>(path: string, need: number, work: () => T): T => {
     try {
       return work();
@@ -37,7 +37,7 @@ export async function openNodeResultPlace(folder: string, options: { create: boo
   const path = (file: string) => join(folder, file);
   return {
     name: folder,
-    hdf5: { module, File: h5wasm.File },
+    hdf5,
     scratch: nodeScratch(folder),
     hasher: nodeHasher,
     hdf5Path: path,

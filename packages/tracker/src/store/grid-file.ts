@@ -20,7 +20,8 @@ export async function writeGridFile(
   context: RunContext,
 ): Promise<string> {
   const { shape } = grid;
-  const file = createNetcdf(place, 'grid.nc', fileAttributes(title, null, attributes));
+  const own = { ...shapeAttributes(shape), ...fieldList(grid), ...attributes };
+  const file = createNetcdf(place, 'grid.nc', fileAttributes(title, null, own));
   try {
     const axes = AXES.slice(0, shape.dims);
     axes.forEach((axis, index) => {
@@ -62,6 +63,21 @@ export async function writeGridFile(
     file.abandon();
     throw error;
   }
+}
+
+/** The shape as numbers, since differences of coordinates do not give it back to the last bit. */
+function shapeAttributes({ count, first, step, size }: GridShape): Attributes {
+  return {
+    bin_count: { type: 'i32', values: count },
+    first_bin_centre: { type: 'f64', values: first },
+    bin_step: { type: 'f64', values: step },
+    bin_size: { type: 'f64', values: size },
+  };
+}
+
+/** Names of the fields in their order; none: no attribute, since HDF5 has no empty text. */
+function fieldList(grid: GridResult): Attributes {
+  return grid.fields.size === 0 ? {} : { fields: [...grid.fields.keys()].join(' ') };
 }
 
 /** Bin centres along an axis. */

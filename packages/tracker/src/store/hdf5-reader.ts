@@ -15,8 +15,8 @@ export function openHdf5Reader(
   name: string,
   onClose: () => void = () => {},
 ): Hdf5Reader {
-  const file = openQuietly(build, path);
-  if (file === null) {
+  const file = new build.File(path, 'r');
+  if (file.file_id < 0n) {
     const message = `HDF5 file: got bytes that are not HDF5, expected an HDF5 file (${name}); check the file or give its format`;
     throw new WakeloomError('dump/not-hdf5', message, { path: name });
   }
@@ -42,19 +42,6 @@ export function openHdf5Reader(
       onClose();
     },
   };
-}
-
-/** Opens for reading; null when it cannot, where the build by itself would print HDF5's error stack. */
-export function openQuietly(build: Hdf5Build, path: string): H5.File | null {
-  build.module.activate_throwing_error_handler();
-  try {
-    const file = new build.File(path, 'r');
-    return file.file_id < 0n ? null : file;
-  } catch {
-    return null;
-  } finally {
-    build.module.deactivate_throwing_error_handler();
-  }
 }
 
 type Entity = H5.Entity | null;

@@ -65,22 +65,17 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
   const ledger = openLedger(hasher);
   const dimensions = new Map<string, { size: number; made: boolean }>();
   const variables = new Map<string, OpenVariable>();
-  place.remove(partial);
+  // Made by the place first, which says why when it cannot; HDF5 only prints.
+  place.writeText(partial, '');
   const handle = new hdf5.File(place.hdf5Path(partial), 'w', { track_order: true });
-  if (handle.file_id < 0n) {
-    const path = `${place.name}/${partial}`;
-    throw new WakeloomError(
-      'store/not-writable',
-      `result file: got no access to make it, expected a folder that can be written (${path}); check its permissions`,
-      { path },
-    );
-  }
   let open = true;
   const scratch = hdf5.module._malloc(WINDOW);
   let bytesWritten = 0;
 
   const put = (owner: string, values: Attributes) => {
     for (const [name, value] of Object.entries(values)) {
+      // HDF5 has no text without characters.
+      if (value === '') continue;
       writeAttribute(owner === '/' ? handle : (handle.get(owner) as AttributeTarget), name, value);
       ledger.attribute(owner, name, value);
     }
@@ -157,7 +152,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
       close();
       await place.sync(partial);
       const found = await readBackDigest(place, partial, context);
-      if (found !== expected) throw readBackError(place, partial, file, bytesWritten, expected, found);
+      if (found !== expected) throw readBackError(place, file, bytesWritten, expected, found);
       place.rename(partial, file);
       return expected;
     },
@@ -185,19 +180,26 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
   }
 }
 
-/** A read-back that differs on a disk without room is a full disk; otherwise code `store/read-back`. */
+/**
+ * Why a file reads back otherwise than it was written: a disk without room for a megabyte more is full (the build hides
+ * the failed writes), whatever it says of itself; otherwise code `store/read-back`.
+ */
 function readBackError(
   place: ResultPlace,
-  partial: string,
   file: string,
   bytes: number,
   expected: string,
   found: string,
 ): WakeloomError {
   const path = `${place.name}/${file}`;
-  const missing = bytes - place.size(partial);
-  const free = place.freeBytes();
-  if (missing > 0 || (free !== null && free < 1 << 16)) return diskFull(path, Math.max(missing, 1 << 16), free);
+  const probe = `${PARTIAL_PREFIX}probe`;
+  try {
+    place.writeText(probe, ' '.repeat(1 << 20));
+  } catch (error) {
+    if ((error as { code?: unknown }).code === 'store/disk-full') return diskFull(path, bytes, 0, error);
+  } finally {
+    place.remove(probe);
+  }
   return new WakeloomError(
     'store/read-back',
     `result file read back: got content ${found.slice(0, 12)}, expected ${expected.slice(0, 12)} as written (${path}); the disk did not keep what was written, check it and run again`,
@@ -275,7 +277,6 @@ function writeLarge(
 /** Text as fixed-length characters (what CF calls a char attribute), numbers as a row of their type. */
 function writeAttribute(target: AttributeTarget, name: string, value: AttributeValue): void {
   if (typeof value === 'string') {
-    if (value === '') throw new Error(`netcdf: attribute ${name} is empty, which HDF5 cannot hold; leave it out`);
     target.create_attribute(name, value, [], `S${new TextEncoder().encode(value).length}`);
   } else {
     target.create_attribute(name, [...value.values], [value.values.length], DTYPE[value.type]);

@@ -39,6 +39,8 @@ export interface ResultWriterOptions {
   readonly title?: string;
   /** Samples to expect, where known: room for them is checked before anything is written. */
   readonly expectedSamples?: number;
+  /** Rows spilled at once and bytes of pathlines assembled at once; the files do not depend on them. */
+  readonly working?: { readonly batchRows: number; readonly groupBytes: number };
 }
 
 /** What `finish` counted. Speeds and standard error: samples without a flag that excludes them from the grid. */
@@ -58,6 +60,9 @@ export interface FinishedSamples {
   readonly medianVelocitySe: number;
 }
 
+/** The text of report.html, or how to make it from the whole record. */
+export type ReportText = string | ((record: RunRecord) => string);
+
 /**
  * Makes one result folder: `add` blocks, `finish`, `writeGrid`, `complete`, in this order. Whatever fails removes the
  * partial files; the folder then holds no run.json and is no result. Codes: `store/disk-full`, `store/read-back`,
@@ -70,11 +75,7 @@ export interface ResultWriter {
   finish(onPathlines: (rows: PathlineRows) => void | Promise<void>): Promise<FinishedSamples>;
   writeGrid(grid: GridResult, attributes: Attributes): Promise<void>;
   /** Writes report.html, log.ndjson and, last of all, run.json; resolves to the record as written. */
-  complete(
-    record: Omit<RunRecord, 'digest'>,
-    report: (record: RunRecord) => string,
-    logLines: readonly string[],
-  ): Promise<RunRecord>;
+  complete(record: Omit<RunRecord, 'digest'>, report: ReportText, logLines: readonly string[]): Promise<RunRecord>;
   /** Removes what was begun. To be called when anything else of the run fails; no error when all is done. */
   abandon(): void;
 }
@@ -101,8 +102,9 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
   if (options.expectedSamples !== undefined) {
     checkRoom(place, options.expectedSamples * (spillBytes(columns, withFrames) + fileBytes));
   }
-  let spill: Spill | null = openSpill(place, columns, withFrames);
+  let spill: Spill | null = openSpill(place, columns, withFrames, options.working?.batchRows);
   let pathlinesFile: PathlinesFile | null = null;
+  let completed = false;
   const digests: Record<string, string> = {};
 
   const abandon = () => {
@@ -110,13 +112,18 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     pathlinesFile = null;
     spill?.discard();
     spill = null;
-    for (const file of place.files()) if (file.startsWith(PARTIAL_PREFIX)) place.remove(file);
+    // Files that were done already are of no use without run.json, and take the room a rerun needs.
+    if (!completed) clear(place);
   };
   const guard = async <T>(work: () => Promise<T>): Promise<T> => {
     try {
       return await work();
     } catch (error) {
-      abandon();
+      try {
+        abandon();
+      } catch {
+        // What went wrong first is what to tell; the folder has no run.json in any case.
+      }
       throw error;
     }
   };
@@ -136,7 +143,7 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     const stuck = new Uint8Array(numbering.pathlines);
     const rule = { factor: options.stuckFactor, noise: options.noise, shortest: options.shortest };
     const statistics = sampleStatistics();
-    for await (const rows of transpose(spilled, numbering, columns, context)) {
+    for await (const rows of transpose(spilled, numbering, columns, context, options.working?.groupBytes)) {
       flagStuck(rows, rule, stuck);
       statistics.add(rows);
       pathlinesFile?.append(rows);
@@ -158,11 +165,7 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     return { ...counted, links, medianPathlineSamples: medianSamples, ...statistics.figures() };
   };
 
-  const complete = async (
-    record: Omit<RunRecord, 'digest'>,
-    report: (record: RunRecord) => string,
-    logLines: readonly string[],
-  ) => {
+  const complete = async (record: Omit<RunRecord, 'digest'>, report: ReportText, logLines: readonly string[]) => {
     const put = async (file: string, text: string) => {
       checkRoom(place, text.length);
       place.writeText(PARTIAL_PREFIX + file, text);
@@ -171,9 +174,10 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     };
     const content = folderDigest(place.hasher, digests);
     const full: RunRecord = { ...record, digest: { content, files: { ...digests } } };
-    await put('report.html', report(full));
+    await put('report.html', typeof report === 'string' ? report : report(full));
     await put('log.ndjson', logLines.map((line) => `${line}\n`).join(''));
     await put('run.json', `${JSON.stringify(full, null, 2)}\n`);
+    completed = true;
     return full;
   };
 

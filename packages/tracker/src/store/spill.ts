@@ -74,7 +74,12 @@ export function spillBytes(columns: readonly SampleColumn[], withOrder: boolean)
  * Opens the spill. Memory: about 13 MB in the plane and 4 bytes a pathline. `withOrder`: note the frame order too,
  * for frames.nc.
  */
-export function openSpill(place: ResultPlace, columns: readonly SampleColumn[], withOrder: boolean): Spill {
+export function openSpill(
+  place: ResultPlace,
+  columns: readonly SampleColumn[],
+  withOrder: boolean,
+  batchRows = BATCH_ROWS,
+): Spill {
   const samples = place.scratch.create('samples');
   const order = withOrder ? place.scratch.create('order') : null;
   // The time follows from the frame: 8 bytes a sample less to write.
@@ -84,10 +89,10 @@ export function openSpill(place: ResultPlace, columns: readonly SampleColumn[], 
   const frameNumber = growable(Int32Array);
   const frameTime = growable(Float64Array);
   const frameRows = growable(Int32Array);
-  let staged = stored.map((column) => columnOf(column.stored, BATCH_ROWS));
-  let stagedPathline = new Int32Array(BATCH_ROWS);
-  let sorted = new Float64Array(BATCH_ROWS);
-  let slots = new Int32Array(BATCH_ROWS);
+  let staged = stored.map((column) => columnOf(column.stored, batchRows));
+  let stagedPathline = new Int32Array(batchRows);
+  let sorted = new Float64Array(batchRows);
+  let slots = new Int32Array(batchRows);
   let used = 0;
 
   const flush = () => {
@@ -113,7 +118,7 @@ export function openSpill(place: ResultPlace, columns: readonly SampleColumn[], 
       }
       let frame = 0;
       for (let first = 0; first < rows; ) {
-        const end = Math.min(rows, first + BATCH_ROWS - used);
+        const end = Math.min(rows, first + batchRows - used);
         stagedPathline.set(block.pathline.subarray(first, end), used);
         stored.forEach((column, index) => {
           if (column.key === 'frame') return;
@@ -128,7 +133,7 @@ export function openSpill(place: ResultPlace, columns: readonly SampleColumn[], 
         }
         used += end - first;
         first = end;
-        if (used === BATCH_ROWS) flush();
+        if (used === batchRows) flush();
       }
     },
     finish() {

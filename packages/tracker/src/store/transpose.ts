@@ -29,8 +29,9 @@ export async function* transpose(
   numbering: Numbering,
   columns: readonly SampleColumn[],
   context: RunContext,
+  groupBytes = GROUP_BYTES,
 ): AsyncGenerator<PathlineRows> {
-  const capacity = Math.max(1, Math.floor(GROUP_BYTES / (rowBytes(columns) + 8)));
+  const capacity = Math.max(1, Math.floor(groupBytes / (rowBytes(columns) + 8)));
   let held: Column[] = [];
   let pathline = new Int32Array(0);
   const most = spilled.batches.reduce((rows, batch) => Math.max(rows, batch.rows), 0);
