@@ -1,6 +1,6 @@
-import { Candidates } from '@wakeloom/tracker/linking/candidates';
 import { GroupedAssignment } from '@wakeloom/tracker/linking/assign-exact';
 import { assignQuickly } from '@wakeloom/tracker/linking/assign-quick';
+import { Candidates } from '@wakeloom/tracker/linking/candidates';
 import { randomStream } from '@wakeloom/tracker/synthesis/random-stream';
 import { linearSumAssignment } from 'linear-sum-assignment';
 import { describe, expect, it } from 'vitest';

@@ -1,8 +1,8 @@
+import type { Flow } from '@wakeloom/tracker/synthesis/flow';
 import { potentialCylinder } from '@wakeloom/tracker/synthesis/flows-bodies';
 import { taylorGreen } from '@wakeloom/tracker/synthesis/flows-cellular';
 import { poiseuilleChannel, uniformFlow } from '@wakeloom/tracker/synthesis/flows-elementary';
 import { burgersVortex } from '@wakeloom/tracker/synthesis/flows-vortices';
-import type { Flow } from '@wakeloom/tracker/synthesis/flow';
 import { describe, expect, it } from 'vitest';
 import { linkBlock } from '../helpers/link-block';
 import { scoreLinks, truthBlock, truthDump } from '../helpers/truth';
@@ -22,32 +22,33 @@ const FLOWS: [string, Flow, number][] = [
 ];
 
 describe('precision at least 0.995 and recall at least 0.985', () => {
-  it.each(
-    FLOWS.flatMap(([name, flow, speed]) => [0.2, 0.4].map((ratio) => [name, ratio, flow, speed] as const)),
-  )('%s at displacement ratio %d', async (_name, ratio, flow, speed) => {
-    const rate = speed / (ratio * SPACING);
-    const dump = truthDump({
-      flow,
-      frames: 40,
-      rate,
-      perFrame: PER_FRAME,
-      box: [
-        [-SIDE / 3, (2 * SIDE) / 3],
-        flow.name.includes('hannel') || flow.name.includes('oiseuille') ? [0, SIDE] : [-SIDE / 2, SIDE / 2],
-      ],
-      lossShare: 0.05,
-      ghostShare: 0.05,
-      noise: 0.005,
-      stayFrames: 60,
-      steps: 8,
-      seed: 4,
-    });
-    const { pathline } = await linkBlock(truthBlock(dump), { rate: `${rate} Hz` });
-    const score = scoreLinks(pathline, dump.particle, dump.frame, 2);
-    expect(score.true).toBeGreaterThan(40_000);
-    expect(score.precision).toBeGreaterThanOrEqual(0.995);
-    expect(score.recall).toBeGreaterThanOrEqual(0.985);
-  });
+  it.each(FLOWS.flatMap(([name, flow, speed]) => [0.2, 0.4].map((ratio) => [name, ratio, flow, speed] as const)))(
+    '%s at displacement ratio %d',
+    async (_name, ratio, flow, speed) => {
+      const rate = speed / (ratio * SPACING);
+      const dump = truthDump({
+        flow,
+        frames: 40,
+        rate,
+        perFrame: PER_FRAME,
+        box: [
+          [-SIDE / 3, (2 * SIDE) / 3],
+          flow.name.includes('hannel') || flow.name.includes('oiseuille') ? [0, SIDE] : [-SIDE / 2, SIDE / 2],
+        ],
+        lossShare: 0.05,
+        ghostShare: 0.05,
+        noise: 0.005,
+        stayFrames: 60,
+        steps: 8,
+        seed: 4,
+      });
+      const { pathline } = await linkBlock(truthBlock(dump), { rate: `${rate} Hz` });
+      const score = scoreLinks(pathline, dump.particle, dump.frame, 2);
+      expect(score.true).toBeGreaterThan(40_000);
+      expect(score.precision).toBeGreaterThanOrEqual(0.995);
+      expect(score.recall).toBeGreaterThanOrEqual(0.985);
+    },
+  );
 
   it('Burgers vortex in a volume, depth noise three times that in plane', async () => {
     const flow = burgersVortex(60, 1, 1);

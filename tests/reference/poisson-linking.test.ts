@@ -47,33 +47,36 @@ describe('plain nearest neighbour on a periodic box', () => {
 
 describe('with prediction', () => {
   // The flow of the first frames is known from votes before a link is made: no error at any displacement.
-  it.each([0.25, 0.5, 1, 1.4])('a field that moves by %d mean spacings a frame has no wrong or missed link', async (ratio) => {
-    const count = 1500;
-    const frames = 10;
-    const field = uniformPoints(count, 2, 5);
-    const move = ratio / Math.sqrt(count);
-    const rows = count * frames;
-    const frame = Int32Array.from({ length: rows }, (_, row) => Math.trunc(row / count));
-    const block = {
-      dims: 2 as const,
-      number: Int32Array.from({ length: frames }, (_, k) => k),
-      time: Float64Array.from({ length: frames }, (_, k) => k / 60),
-      segment: new Int32Array(frames),
-      offsets: Uint32Array.from({ length: frames + 1 }, (_, k) => k * count),
-      x: Float64Array.from({ length: rows }, (_, row) => field.x[row % count] + 0.8 * move * frame[row]),
-      y: Float64Array.from({ length: rows }, (_, row) => field.y[row % count] - 0.6 * move * frame[row]),
-      z: new Float64Array(0),
-      brightness: new Float32Array(0),
-      row: Float64Array.from({ length: rows }, (_, row) => row),
-      given: new Int32Array(0),
-    };
-    const { pathline } = await linkBlock(block);
-    const links = linkSet(pathline, frame);
-    let right = 0;
-    for (let row = 0; row < rows - count; row++) if (links.has(`${row}>${row + count}`)) right++;
-    expect(links.size - right).toBe(0);
-    expect(rows - count - right).toBe(0);
-  });
+  it.each([0.25, 0.5, 1, 1.4])(
+    'a field that moves by %d mean spacings a frame has no wrong or missed link',
+    async (ratio) => {
+      const count = 1500;
+      const frames = 10;
+      const field = uniformPoints(count, 2, 5);
+      const move = ratio / Math.sqrt(count);
+      const rows = count * frames;
+      const frame = Int32Array.from({ length: rows }, (_, row) => Math.trunc(row / count));
+      const block = {
+        dims: 2 as const,
+        number: Int32Array.from({ length: frames }, (_, k) => k),
+        time: Float64Array.from({ length: frames }, (_, k) => k / 60),
+        segment: new Int32Array(frames),
+        offsets: Uint32Array.from({ length: frames + 1 }, (_, k) => k * count),
+        x: Float64Array.from({ length: rows }, (_, row) => field.x[row % count] + 0.8 * move * frame[row]),
+        y: Float64Array.from({ length: rows }, (_, row) => field.y[row % count] - 0.6 * move * frame[row]),
+        z: new Float64Array(0),
+        brightness: new Float32Array(0),
+        row: Float64Array.from({ length: rows }, (_, row) => row),
+        given: new Int32Array(0),
+      };
+      const { pathline } = await linkBlock(block);
+      const links = linkSet(pathline, frame);
+      let right = 0;
+      for (let row = 0; row < rows - count; row++) if (links.has(`${row}>${row + count}`)) right++;
+      expect(links.size - right).toBe(0);
+      expect(rows - count - right).toBe(0);
+    },
+  );
 });
 
 function wrap(x: number): number {
@@ -101,5 +104,10 @@ function periodic(points: ReturnType<typeof uniformPoints>, count: number, dims:
       }
     }
   }
-  return { x: Float64Array.from(x), y: Float64Array.from(y), z: dims === 3 ? Float64Array.from(z) : new Float64Array(0), source };
+  return {
+    x: Float64Array.from(x),
+    y: Float64Array.from(y),
+    z: dims === 3 ? Float64Array.from(z) : new Float64Array(0),
+    source,
+  };
 }

@@ -77,7 +77,11 @@ export class Linker {
     this.options = options;
     this.depth = options.dims === 3 ? 1 / options.depthNoise : 1;
     this.reaches = [options.reach, options.reach, options.reach * (options.dims === 3 ? options.depthNoise : 1)];
-    this.predictors = new Predictors(options.flow, options.noiseSquare, Math.max(options.expected, options.noiseSquare));
+    this.predictors = new Predictors(
+      options.flow,
+      options.noiseSquare,
+      Math.max(options.expected, options.noiseSquare),
+    );
   }
 
   /** Number of pathlines begun so far; provisional numbers are below it. */
@@ -208,7 +212,8 @@ export class Linker {
       if (i !== -1) {
         const e = edgeOfRow[i];
         let rowSum = 0;
-        for (let other = candidates.start[i]; other < candidates.start[i + 1]; other++) rowSum += candidates.density[other];
+        for (let other = candidates.start[i]; other < candidates.start[i + 1]; other++)
+          rowSum += candidates.density[other];
         wrong = linkRisk(candidates.density[e], rowSum, columnDensity[column], stray);
         if (wrong > riskLimit) {
           tally.leftOutForRisk++;

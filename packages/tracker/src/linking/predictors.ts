@@ -59,7 +59,12 @@ export class Predictors {
     let fv = flow[1];
     let fw = flow[2];
     const half = 0.5 * step;
-    const known = grid.at(x + half * (fu + active.du[i]), y + half * (fv + active.dv[i]), z + half * (fw + active.dw[i]), flow);
+    const known = grid.at(
+      x + half * (fu + active.du[i]),
+      y + half * (fv + active.dv[i]),
+      z + half * (fw + active.dw[i]),
+      flow,
+    );
     fu = flow[0];
     fv = flow[1];
     fw = flow[2];

@@ -99,7 +99,7 @@ class VoteTable {
     const from = block.offsets[second];
     const to = block.offsets[second + 1];
     if (to === from) return;
-    const reach = (field === null ? VOTE_REACH : 2 * this.kernel / spacing) * spacing;
+    const reach = (field === null ? VOTE_REACH : (2 * this.kernel) / spacing) * spacing;
     this.search.build(block, from, to, dims, [reach, reach, reach * (dims === 3 ? depthNoise : 1)]);
     if (this.near.length < to - from) this.near = new Int32Array(to - from);
     const flow = new Float64Array(3);

@@ -33,13 +33,7 @@ export class CellIndex implements NeighbourSearch {
   private scaleY = 1;
   private scaleZ = 1;
 
-  build(
-    points: PointColumns,
-    from: number,
-    to: number,
-    dims: Dims,
-    reach: readonly [number, number, number],
-  ): void {
+  build(points: PointColumns, from: number, to: number, dims: Dims, reach: readonly [number, number, number]): void {
     const n = to - from;
     this.dims = dims;
     this.columns = points;

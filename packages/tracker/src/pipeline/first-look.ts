@@ -2,14 +2,14 @@ import type { DetectionBlock, Dims, LinkedBlock } from '../core/columns.js';
 import type { RunContext } from '../core/context.js';
 import { WakeloomError } from '../core/errors.js';
 import { chooseSpan } from '../kinematics/choose-span.js';
-import type { Box } from '../linking/flow-grid.js';
 import { createLinker, type LinkPrior } from '../linking/create-linker.js';
+import type { Box } from '../linking/flow-grid.js';
 import { chooseReach } from '../linking/reach.js';
 import { type FramePair, voteFlow } from '../linking/vote-flow.js';
 import { estimateNoise } from '../noise/position-noise.js';
 import type { RunSettings } from '../run/settings.js';
-import type { Prior } from './stages.js';
 import { linkDisplacements } from './displacements.js';
+import type { Prior } from './stages.js';
 
 /** Pairs of frames that vote for the flow: few, because the flow may change meanwhile. */
 const VOTING_PAIRS = 6;
@@ -83,7 +83,8 @@ export async function firstLook(
     noise[axis] = sigma > 0 ? sigma : ASSUMED_NOISE * spacing;
   }
   const { span: wanted, order } = settings.smoothing;
-  const span = wanted === 'auto' ? (pairsClock ? DEFAULT_SPAN : chooseSpan(leading(trial, SPAN_ROWS), noise, order)) : wanted;
+  const span =
+    wanted === 'auto' ? (pairsClock ? DEFAULT_SPAN : chooseSpan(leading(trial, SPAN_ROWS), noise, order)) : wanted;
   const moved = linkDisplacements(trial, spacing);
   context.event({
     code: 'linking/first-look',

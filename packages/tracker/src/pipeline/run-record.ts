@@ -1,5 +1,5 @@
 import { calibrationSummary } from '../detections/calibration-summary.js';
-import { SCHEMA_VERSION, type RunRecord } from '../store/run-record.js';
+import { type RunRecord, SCHEMA_VERSION } from '../store/run-record.js';
 import type { Board } from './board.js';
 
 /** Share of samples set aside by screening above which a person should look (1 to 5 % normal, above 10 % look; common practice, no source). */
@@ -37,7 +37,9 @@ export function runRecord(board: Board, started: string): Omit<RunRecord, 'diges
     );
   }
   if (!prior.noiseMeasured && !pairs) {
-    warnings.push('position noise could not be measured from the first pathlines; standard errors rest on an assumed value');
+    warnings.push(
+      'position noise could not be measured from the first pathlines; standard errors rest on an assumed value',
+    );
   }
   return {
     schema: SCHEMA_VERSION,

@@ -1,8 +1,8 @@
 import type { DetectionBlock, LinkedBlock } from '../core/columns.js';
 import type { RunContext } from '../core/context.js';
+import { createLinker } from '../linking/create-linker.js';
 import { LinkComparison } from '../linking/given-check.js';
 import { GivenPathlines } from '../linking/given-pathlines.js';
-import { createLinker } from '../linking/create-linker.js';
 import type { Linker } from '../linking/linker.js';
 import type { LinkCounts, Stage } from './board.js';
 
