@@ -1,7 +1,7 @@
 import type { ByteSink } from '../core/bytes.js';
 import { WakeloomError } from '../core/errors.js';
 import { displacementRatio } from './displacement-ratio.js';
-import { dumpToCsv } from './dump-to-csv.js';
+import { type CsvCounts, dumpToCsv } from './dump-to-csv.js';
 import { burgersVortex } from './flows-vortices.js';
 import { gzipSink } from './gzip-sink.js';
 import { type SynthesisOptions, type SyntheticFrame, synthesise } from './make-dump.js';
@@ -92,8 +92,12 @@ export async function writeDemo(
   const sheet = `${name}.yaml`;
   const plain = await makeSink(dump);
   const sink = dump.endsWith('.gz') ? gzipSink(plain) : plain;
-  const counts = await dumpToCsv(watched(synthesise(synthesis), synthesis.frames, options.onFrame), sink);
-  await sink.close();
+  let counts: CsvCounts;
+  try {
+    counts = await dumpToCsv(watched(synthesise(synthesis), synthesis.frames, options.onFrame), sink);
+  } finally {
+    await sink.close();
+  }
   const sheetSink = await makeSink(sheet);
   await sheetSink.write(new TextEncoder().encode(demoSheet(name, dump)));
   await sheetSink.close();

@@ -18,8 +18,11 @@ export function gzipSink(inner: ByteSink): ByteSink {
     // `write` borrows, the stream does not: it may still hold the bytes after the promise has settled.
     write: (bytes) => Promise.race([writer.write(bytes.slice()), drained]),
     close: async () => {
-      await Promise.all([writer.close(), drained]);
-      await inner.close();
+      try {
+        await Promise.all([writer.close(), drained]);
+      } finally {
+        await inner.close();
+      }
     },
   };
 }

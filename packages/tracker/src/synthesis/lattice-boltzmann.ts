@@ -1,3 +1,6 @@
+import { CX, CY, equilibriumInto, OPPOSITE } from './lattice-directions.js';
+import { findWallLinks, type WallLinks } from './wall-links.js';
+
 /** What a lattice is made of. Lattice units: cell edge 1, time step 1, density 1. */
 export interface LatticeOptions {
   /** Cells along x and y, the outermost ring included. Cell (i, j) has its centre at (i, j). */
@@ -20,12 +23,6 @@ export interface LatticeOptions {
   /** Columns before the right side over which viscosity rises tenfold, to damp what leaves. Default 0. */
   readonly sponge?: number;
 }
-
-/** Directions, opposites next to each other after the first: rest, E W, N S, NE SW, NW SE. */
-const CX = [0, 1, -1, 0, 0, 1, -1, -1, 1];
-const CY = [0, 0, 0, 1, -1, 1, -1, 1, -1];
-const WEIGHT = [4 / 9, 1 / 9, 1 / 9, 1 / 9, 1 / 9, 1 / 36, 1 / 36, 1 / 36, 1 / 36];
-const OPPOSITE = [0, 2, 1, 4, 3, 6, 5, 8, 7];
 
 /**
  * (tau+ - 1/2)(tau- - 1/2) = 1/12 cancels the leading error of advection (I. Ginzburg, F. Verhaeghe & D. d'Humieres,
@@ -83,7 +80,7 @@ export class Lattice {
       this.minus[i] = 1 / (MAGIC / half + 0.5);
     }
     this.runs = this.findRuns();
-    this.links = this.findLinks();
+    this.links = findWallLinks(options);
     this.edgeVelocity = new Float64Array(2 * cells * (options.edge === undefined ? 0 : 1));
     if (options.edge !== undefined) {
       this.overRing((i, j) => {
@@ -151,33 +148,6 @@ export class Lattice {
       }
     }
     return Int32Array.from(runs);
-  }
-
-  /** Links from a fluid cell into a solid one, with the share of the link that lies in the fluid (by bisection). */
-  private findLinks(): WallLinks {
-    const { wall } = this.options;
-    const fluid: number[] = [];
-    const direction: number[] = [];
-    const share: number[] = [];
-    for (let j = 1; wall !== undefined && j < this.height - 1; j++) {
-      for (let i = 1; i < this.width - 1; i++) {
-        if (this.solid(i, j)) continue;
-        for (let d = 1; d < 9; d++) {
-          if (!this.solid(i + CX[d], j + CY[d])) continue;
-          let low = 0;
-          let high = 1;
-          for (let halving = 0; halving < 48; halving++) {
-            const middle = 0.5 * (low + high);
-            if (wall(i + middle * CX[d], j + middle * CY[d]) > 0) low = middle;
-            else high = middle;
-          }
-          fluid.push(j * this.width + i);
-          direction.push(d);
-          share.push(high);
-        }
-      }
-    }
-    return { fluid: Int32Array.from(fluid), direction: Int8Array.from(direction), share: Float64Array.from(share) };
   }
 
   /**
@@ -291,19 +261,5 @@ export class Lattice {
         t8[at] = f8 - half + odd;
       }
     }
-  }
-}
-
-interface WallLinks {
-  readonly fluid: Int32Array;
-  readonly direction: Int8Array;
-  readonly share: Float64Array;
-}
-
-function equilibriumInto(density: number, u: number, v: number, into: Float64Array): void {
-  const even = density - 1.5 * (u * u + v * v);
-  for (let d = 0; d < 9; d++) {
-    const along = CX[d] * u + CY[d] * v;
-    into[d] = WEIGHT[d] * (even + 3 * along + 4.5 * along * along);
   }
 }

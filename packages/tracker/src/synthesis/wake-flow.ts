@@ -162,10 +162,10 @@ function mirrorBorder(plane: Float32Array, across: number, rows: number): void {
   plane.copyWithin((rows + 1) * line, (rows - 1) * line, rows * line);
 }
 
-/** Pole of the cubic spline's inverse filter, sqrt(3) - 2 (Unser 1999, box 2). */
+/** Pole of the cubic spline's inverse filter, sqrt(3) - 2 (Unser 1999). */
 const POLE = Math.sqrt(3) - 2;
 
-/** Turns samples into cubic spline coefficients in place, mirrored at both ends (Unser 1999, box 2). */
+/** Turns samples into cubic spline coefficients in place, mirrored at both ends (Unser 1999). */
 function prefilter(values: Float64Array, start: number, stride: number, length: number): void {
   const last = start + (length - 1) * stride;
   let sum = 0;
