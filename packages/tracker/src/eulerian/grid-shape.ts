@@ -1,5 +1,6 @@
 import type { Dims } from '../core/columns.js';
 import { WakeloomError } from '../core/errors.js';
+import { cubeRoot } from '../math/cube-root.js';
 import type { GridSettings } from '../run/settings.js';
 import type { GridShape } from './grid.js';
 
@@ -86,24 +87,12 @@ function automaticBin(dims: Dims, bounds: Bounds, spacing: number, frames: numbe
   for (let axis = 0; axis < dims; axis++) longest = Math.max(longest, bounds.max[axis]! - bounds.min[axis]!);
   // A field without extent or spacing: one bin of any size will do.
   if (!(longest > 0)) return [1, 1, 1];
-  const filled =
-    spacing > 0 && Number.isFinite(spacing) ? spacing * root(SAMPLES_PER_BIN / Math.max(1, frames), dims) : 0;
+  const root = dims === 3 ? cubeRoot : Math.sqrt;
+  const filled = spacing > 0 && Number.isFinite(spacing) ? spacing * root(SAMPLES_PER_BIN / Math.max(1, frames)) : 0;
   const least = spacing > 0 && Number.isFinite(spacing) ? spacing * LEAST_SPACINGS : 0;
   const wanted = Math.min(Math.max(filled, least), longest * MOST_SHARE);
   const side = roundLength(wanted > 0 ? wanted : longest * MOST_SHARE);
   return [side, side, side];
-}
-
-/** Square or cube root without Math.cbrt, whose last bits differ between engines. */
-function root(value: number, dims: Dims): number {
-  if (dims === 2) return Math.sqrt(value);
-  // Newton's iteration from a start above the root falls steadily; it ends when rounding stops it.
-  let x = Math.max(value, 1);
-  for (;;) {
-    const next = (2 * x + value / (x * x)) / 3;
-    if (!(next < x)) return x;
-    x = next;
-  }
 }
 
 /** Nearest plain number at or above `length` (to a hair). */

@@ -17,7 +17,7 @@ export type FitRunner = (window: LinkedBlock, core: CoreRange, parameters: FitPa
  * The fit stage: linked blocks in frame order to samples in frame order. Cuts the stream into windows with overlap
  * and has each fitted by `run`, up to `context.budget.threads` at a time; results come in order and do not depend on
  * the cuts or the threads. Without `run` the kernel works here, with a breath every few ms. Memory: the windows in
- * flight, each about three times the lag long, 100 bytes a row.
+ * flight, each three to four times the lag long, about 100 bytes a row.
  */
 export async function* fitStage(
   input: StageInput,

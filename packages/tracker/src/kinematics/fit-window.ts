@@ -96,7 +96,7 @@ class WindowWork {
 
   /** First round: fits, marks positions off their fit, fits again without them; writes velocities and the core's samples. */
   *fitAll(): Generator<void, void> {
-    const { order, fitter, core, parameters, off, marks } = this;
+    const { order, fitter, core, parameters } = this;
     const reach = fitReach(parameters);
     const half = (parameters.span - 1) / 2;
     const far = 2 * reach + 1;
@@ -114,35 +114,39 @@ class WindowWork {
       const fitTo = this.firstFrom(core.to + far + half);
       if (fitFrom === fitTo) continue;
       fitter.place(fitFrom, fitTo);
-      fitter.fit(fitFrom, fitTo);
-      const markFrom = this.firstFrom(core.from - far);
-      const markTo = this.firstFrom(core.to + far);
-      const marked = markOffFit(
-        fitter.residual.subarray(fitFrom, fitTo),
-        fitter.frame.subarray(fitFrom, fitTo),
-        fitTo - fitFrom,
-        markFrom - fitFrom,
-        markTo - fitFrom,
-        half,
-        parameters.offFitLimit,
-        off,
-        this.scratch,
-      );
+      const largest = fitter.fit(fitFrom, fitTo);
       const useFrom = this.firstFrom(core.from - reach - 1);
       const useTo = this.firstFrom(core.to + reach + 1);
-      if (marked > 0) {
-        for (let i = markFrom; i < markTo; i++) {
-          if (off[i - fitFrom] === 0) continue;
-          off[i - fitFrom] = 0;
-          fitter.excluded[i] = 1;
-          const row = fitter.row[i]!;
-          marks[row] = marks[row]! | MARK.offFit;
-        }
+      if (largest > parameters.offFitLimit) {
+        this.leaveOutOffFit(fitFrom, fitTo, this.firstFrom(core.from - far), this.firstFrom(core.to + far));
         for (let i = useFrom; i < useTo; i++) fitter.refit(i);
       }
       this.keepVelocities(useFrom, useTo);
       const coreTo = this.firstFrom(core.to);
       for (let i = this.firstFrom(core.from); i < coreTo; i++) this.writeFlags(i, this.writeFit(i));
+    }
+  }
+
+  /** Marks and excludes samples `from .. to - 1` of the loaded pathline that are off their fit; residuals stand from `fitFrom` on. */
+  private leaveOutOffFit(fitFrom: number, fitTo: number, from: number, to: number): void {
+    const { fitter, off, marks, parameters } = this;
+    markOffFit(
+      fitter.residual.subarray(fitFrom, fitTo),
+      fitter.frame.subarray(fitFrom, fitTo),
+      fitTo - fitFrom,
+      from - fitFrom,
+      to - fitFrom,
+      (parameters.span - 1) / 2,
+      parameters.offFitLimit,
+      off,
+      this.scratch,
+    );
+    for (let i = from; i < to; i++) {
+      if (off[i - fitFrom] === 0) continue;
+      off[i - fitFrom] = 0;
+      fitter.excluded[i] = 1;
+      const row = fitter.row[i]!;
+      marks[row] = marks[row]! | MARK.offFit;
     }
   }
 

@@ -140,11 +140,12 @@ export class PathlineFitter {
     }
   }
 
-  /** Fits samples `from .. to - 1` over all samples of their windows, and takes their residuals. */
-  fit(from: number, to: number): void {
+  /** Fits samples `from .. to - 1` over all samples of their windows, and takes their residuals; returns the largest of these. */
+  fit(from: number, to: number): number {
     const { frame, low, high, table, members, residual, x, y, z, px, py, pz, deep } = this;
     const [sx, sy, sz] = this.parameters.noise;
     const even = table.even;
+    let largest = 0;
     for (let i = from; i < to; i++) {
       const lo = low[i]!;
       const hi = high[i]!;
@@ -168,8 +169,11 @@ export class PathlineFitter {
         const alongZ = Math.abs(z[i]! - pz[i]!) / sz;
         if (alongZ > worst) worst = alongZ;
       }
-      residual[i] = worst / Math.sqrt(redundancy);
+      const own = worst / Math.sqrt(redundancy);
+      residual[i] = own;
+      if (own > largest) largest = own;
     }
+    return largest;
   }
 
   /**

@@ -8,9 +8,12 @@ export interface FitTask {
   readonly core: CoreRange;
 }
 
+/** A core of this many times the least rows is long enough with one lag of frames. */
+const MANY_CORES = 4;
+
 /**
- * Cuts a stream of linked blocks into windows: a core of at least `coreRows` rows and at least `lag` frames, with
- * `lag` frames of overlap on both sides. Cuts depend on the rows of the frames alone, not on how the stream was cut
+ * Cuts a stream of linked blocks into windows: a core of at least `coreRows` rows and one to two `lag`s of
+ * frames, with `lag` frames of overlap on both sides. Cuts depend on the rows of the frames alone, not on how the stream was cut
  * into blocks. Holds at most the blocks of one window and one block more. Brightness and given pathline numbers are
  * left behind: fits do not look at them.
  */
@@ -49,7 +52,9 @@ function coreEnd(held: HeldFrames, from: number, lag: number, coreRows: number):
   let rows = 0;
   for (let k = from; k < held.frames; k++) {
     rows += held.rowsOf(k);
-    if (rows >= coreRows && k + 1 - from >= Math.max(1, lag)) return k + 1;
+    const frames = k + 1 - from;
+    // Long cores spend less on overlap, short ones less memory: two lags long where frames are small, else one.
+    if (rows >= coreRows && frames >= Math.max(1, rows >= MANY_CORES * coreRows ? lag : 2 * lag)) return k + 1;
   }
   return -1;
 }

@@ -1,21 +1,27 @@
 import type { Dims } from '../core/columns.js';
+import { cubeRoot } from './cube-root.js';
 import type { PointColumns } from './neighbour-search.js';
 
-/** Points a cell should hold on average: measured best between 1 and 4 for eight neighbours in the plane. */
+/** Points a cell should hold on average: measured best between 2 and 5 for eight neighbours in the plane. */
 const POINTS_PER_CELL = 2;
+
+/** A hair below 1: squared distances to borders of cells are shrunk by it, so that rounding can hide no point. */
+const ROUNDING = 1 - 1e-9;
 
 /**
  * The k nearest other points of each point, among scattered points without a given reach. Square (cubic) cells with
- * about two points each; cells are looked at in growing rings until no closer point can lie outside, so the answer is
+ * about three points each; cells are looked at in growing rings until no closer point can lie outside, so the answer is
  * exact. Cells follow from the points alone. At equal distance the point met first in cell order counts as nearer.
  * Cost for k = 8: about 0.15 us a query in the plane. Mutable: one a user; buffers are kept between builds.
  */
 export class NearestFew {
-  /** Rows of the neighbours of the last query, nearest first. [k] */
-  readonly rows: Uint32Array;
+  /** Slots of the neighbours of the last query, nearest first; see `rowOf`. [k] */
+  readonly slots: Uint32Array;
+  /** Row of each slot: points in cell order, so that neighbours lie close together in memory. */
+  rowOf = new Uint32Array(0);
   private readonly k: number;
   private readonly square: Float64Array;
-  private dims: Dims = 2;
+  dims: Dims = 2;
   private edge = 1;
   private minX = 0;
   private minY = 0;
@@ -24,23 +30,25 @@ export class NearestFew {
   private countY = 1;
   private countZ = 1;
   private start = new Uint32Array(2);
-  private slotRow = new Uint32Array(0);
-  private slotOf = new Uint32Array(0);
+  /** Slot of each candidate. */
+  slotOf = new Uint32Array(0);
   private cellOf = new Uint32Array(0);
-  private px = new Float64Array(0);
-  private py = new Float64Array(0);
-  private pz = new Float64Array(0);
+  private cellOfSlot = new Uint32Array(0);
+  /** Points by slot. */
+  px = new Float64Array(0);
+  py = new Float64Array(0);
+  pz = new Float64Array(0);
 
   constructor(k: number) {
     this.k = k;
-    this.rows = new Uint32Array(k);
+    this.slots = new Uint32Array(k);
     this.square = new Float64Array(k);
   }
 
   /** Takes the points `points[candidates[0 .. count - 1]]`, all finite. Cost O(count). */
   build(points: PointColumns, candidates: Uint32Array, count: number, dims: Dims): void {
     this.dims = dims;
-    if (this.slotRow.length < count) this.grow(count);
+    if (this.rowOf.length < count) this.grow(count);
     const { x, y, z } = points;
     const deep = dims === 3;
     let minX = Number.POSITIVE_INFINITY;
@@ -74,7 +82,7 @@ export class NearestFew {
     this.countZ = deep ? cells(extents[2]!, edge) : 1;
     const total = this.countX * this.countY * this.countZ;
     if (this.start.length < total + 1) this.start = new Uint32Array(total + 1);
-    const { start, cellOf, slotOf, slotRow, px, py, pz, countX, countY } = this;
+    const { start, cellOf, cellOfSlot, slotOf, rowOf, px, py, pz, countX, countY } = this;
     start.fill(0, 0, total + 1);
     for (let i = 0; i < count; i++) {
       const r = candidates[i]!;
@@ -93,7 +101,8 @@ export class NearestFew {
       start[cell] = slot;
       const r = candidates[i]!;
       slotOf[i] = slot;
-      slotRow[slot] = r;
+      cellOfSlot[slot] = cell - 1;
+      rowOf[slot] = r;
       px[slot] = x[r]!;
       py[slot] = y[r]!;
       if (deep) pz[slot] = z[r]!;
@@ -103,45 +112,67 @@ export class NearestFew {
     start[total] = count;
   }
 
-  /** Finds the neighbours of candidate `i`; returns how many there are (k, or all others where there are fewer). */
-  near(i: number): number {
+  /** Finds the neighbours of the point in slot `own`; returns how many there are (k, or all others where there are fewer). */
+  near(own: number): number {
     const { px, py, pz, dims, countX, countY, countZ, edge, k, square } = this;
-    const own = this.slotOf[i]!;
     const qx = px[own]!;
     const qy = py[own]!;
     const qz = dims === 3 ? pz[own]! : 0;
-    const cell = this.cellOf[i]!;
+    const cell = this.cellOfSlot[own]!;
     const cx = cell % countX;
     const line = (cell - cx) / countX;
     const cy = line % countY;
     const cz = (line - cy) / countY;
-    let found = 0;
-    for (let ring = 1; ; ring++) {
-      const x0 = cx - ring;
-      const x1 = cx + ring;
-      const y0 = cy - ring;
-      const y1 = cy + ring;
-      const z0 = cz - ring;
-      const z1 = cz + ring;
-      found = this.takeRing(ring, cx, cy, cz, own, qx, qy, qz, found);
+    let found = dims === 2 ? this.takeBlock(cx, cy, own, qx, qy) : 0;
+    for (let ring = dims === 2 ? 1 : 0; ; ring++) {
+      if (dims === 3 || ring > 1) found = this.takeRing(ring, cx, cy, cz, own, qx, qy, qz, found);
       // No point outside the block of cells is nearer than its nearest side; sides beyond the field do not count.
       let bound = Number.POSITIVE_INFINITY;
-      if (x0 > 0) bound = Math.min(bound, qx - this.minX - x0 * edge);
-      if (x1 < countX - 1) bound = Math.min(bound, this.minX + (x1 + 1) * edge - qx);
-      if (y0 > 0) bound = Math.min(bound, qy - this.minY - y0 * edge);
-      if (y1 < countY - 1) bound = Math.min(bound, this.minY + (y1 + 1) * edge - qy);
+      if (cx - ring > 0) bound = qx - this.minX - (cx - ring) * edge;
+      if (cx + ring < countX - 1) bound = Math.min(bound, this.minX + (cx + ring + 1) * edge - qx);
+      if (cy - ring > 0) bound = Math.min(bound, qy - this.minY - (cy - ring) * edge);
+      if (cy + ring < countY - 1) bound = Math.min(bound, this.minY + (cy + ring + 1) * edge - qy);
       if (dims === 3) {
-        if (z0 > 0) bound = Math.min(bound, qz - this.minZ - z0 * edge);
-        if (z1 < countZ - 1) bound = Math.min(bound, this.minZ + (z1 + 1) * edge - qz);
+        if (cz - ring > 0) bound = Math.min(bound, qz - this.minZ - (cz - ring) * edge);
+        if (cz + ring < countZ - 1) bound = Math.min(bound, this.minZ + (cz + ring + 1) * edge - qz);
       }
       if (bound === Number.POSITIVE_INFINITY) return found;
-      // A hair less than the bound, so that rounding of the cell borders can hide no point.
-      const safe = bound * (1 - 1e-9);
-      if (found === k && square[k - 1]! <= safe * safe) return found;
+      if (found === k && bound > 0 && square[k - 1]! <= bound * bound * ROUNDING) return found;
     }
   }
 
-  /** Looks at the cells of one ring (the first includes the centre); returns the neighbours held. */
+  /** Rings 0 and 1 in the plane, where nearly every query ends: the middle line of cells first, so that the others mostly bring nothing. */
+  private takeBlock(cx: number, cy: number, own: number, qx: number, qy: number): number {
+    const { start, px, py, slots, square, k, countX, countY } = this;
+    const x0 = cx > 0 ? cx - 1 : 0;
+    const x1 = cx + 1 < countX ? cx + 2 : countX;
+    const last = k - 1;
+    let found = 0;
+    let worst = Number.POSITIVE_INFINITY;
+    for (let turn = 0; turn < 3; turn++) {
+      const b = turn === 0 ? cy : turn === 1 ? cy - 1 : cy + 1;
+      if (b < 0 || b >= countY) continue;
+      const to = start[b * countX + x1]!;
+      for (let slot = start[b * countX + x0]!; slot < to; slot++) {
+        const dx = px[slot]! - qx;
+        const dy = py[slot]! - qy;
+        const d = dx * dx + dy * dy;
+        if (d >= worst || slot === own) continue;
+        let at = found < k ? found++ : last;
+        while (at > 0 && square[at - 1]! > d) {
+          square[at] = square[at - 1]!;
+          slots[at] = slots[at - 1]!;
+          at--;
+        }
+        square[at] = d;
+        slots[at] = slot;
+        if (found === k) worst = square[last]!;
+      }
+    }
+    return found;
+  }
+
+  /** Looks at the cells of one ring (ring 0 is the point's own cell); returns the neighbours held. */
   private takeRing(
     ring: number,
     cx: number,
@@ -153,7 +184,7 @@ export class NearestFew {
     qz: number,
     held: number,
   ): number {
-    const { start, countX, countY, countZ, dims } = this;
+    const { start, countX, countY, countZ, dims, k, square, edge } = this;
     const deep = dims === 3;
     const z0 = deep ? Math.max(0, cz - ring) : 0;
     const z1 = deep ? Math.min(countZ - 1, cz + ring) : 0;
@@ -165,8 +196,13 @@ export class NearestFew {
     for (let c = z0; c <= z1; c++) {
       for (let b = y0; b <= y1; b++) {
         const line = (c * countY + b) * countX;
-        const face = ring === 1 || b === cy - ring || b === cy + ring || (deep && (c === cz - ring || c === cz + ring));
-        if (face) {
+        if (b === cy - ring || b === cy + ring || (deep && (c === cz - ring || c === cz + ring))) {
+          if (found === k) {
+            // The whole line of cells may lie beyond the farthest neighbour held.
+            const dy = b < cy ? qy - this.minY - (b + 1) * edge : b > cy ? this.minY + b * edge - qy : 0;
+            const dz = c < cz ? qz - this.minZ - (c + 1) * edge : c > cz ? this.minZ + c * edge - qz : 0;
+            if ((dy > 0 ? dy * dy : 0) + (dz > 0 ? dz * dz : 0) > square[k - 1]! * (2 - ROUNDING)) continue;
+          }
           found = this.takeSlots(start[line + x0]!, start[line + x1 + 1]!, own, qx, qy, qz, found);
           continue;
         }
@@ -180,11 +216,12 @@ export class NearestFew {
   }
 
   private takeSlots(from: number, to: number, own: number, qx: number, qy: number, qz: number, held: number): number {
-    const { px, py, pz, rows, square, slotRow, k } = this;
+    const { px, py, pz, slots, square, k } = this;
     const deep = this.dims === 3;
     let found = held;
+    // Points beyond the k-th so far are turned away by one comparison.
+    let worst = found === k ? square[k - 1]! : Number.POSITIVE_INFINITY;
     for (let slot = from; slot < to; slot++) {
-      if (slot === own) continue;
       const dx = px[slot]! - qx;
       const dy = py[slot]! - qy;
       let d = dx * dx + dy * dy;
@@ -192,26 +229,26 @@ export class NearestFew {
         const dz = pz[slot]! - qz;
         d += dz * dz;
       }
-      let at: number;
-      if (found < k) at = found++;
-      else if (d < square[k - 1]!) at = k - 1;
-      else continue;
+      if (d >= worst || slot === own) continue;
+      let at = found < k ? found++ : k - 1;
       while (at > 0 && square[at - 1]! > d) {
         square[at] = square[at - 1]!;
-        rows[at] = rows[at - 1]!;
+        slots[at] = slots[at - 1]!;
         at--;
       }
       square[at] = d;
-      rows[at] = slotRow[slot]!;
+      slots[at] = slot;
+      if (found === k) worst = square[k - 1]!;
     }
     return found;
   }
 
   private grow(count: number): void {
     const size = Math.ceil(count * 1.25) + 16;
-    this.slotRow = new Uint32Array(size);
+    this.rowOf = new Uint32Array(size);
     this.slotOf = new Uint32Array(size);
     this.cellOf = new Uint32Array(size);
+    this.cellOfSlot = new Uint32Array(size);
     this.px = new Float64Array(size);
     this.py = new Float64Array(size);
     this.pz = new Float64Array(size);
@@ -222,16 +259,20 @@ function cells(extent: number, edge: number): number {
   return Math.trunc(extent / edge) + 1;
 }
 
-/**
- * Cell edge for about `wanted` cells: starts from the longest side and halves until there are enough. Halving
- * instead of a root: the same bits everywhere, and scaling by a power of two scales the edge exactly. The last step
- * takes three quarters where that comes nearer.
- */
+/** Cell edge for about `wanted` cells over the extents that are not zero. */
 function cellEdge(extents: readonly number[], wanted: number): number {
-  let edge = 0;
-  for (const extent of extents) if (extent > edge) edge = extent;
-  if (!(edge > 0)) return 1;
-  const total = (size: number) => extents.reduce((product, extent) => product * cells(extent, size), 1);
-  while (total(edge / 2) <= wanted) edge /= 2;
-  return total(edge * 0.75) <= wanted ? edge * 0.75 : edge;
+  let longest = 0;
+  for (const extent of extents) if (extent > longest) longest = extent;
+  if (!(longest > 0)) return 1;
+  let volume = 1;
+  let axes = 0;
+  for (const extent of extents) {
+    // A side shorter than one cell counts as one cell.
+    if (extent * wanted <= longest) continue;
+    volume *= extent / longest;
+    axes++;
+  }
+  const share = wanted > 1 ? volume / wanted : 1;
+  const edge = axes === 1 ? share : axes === 2 ? Math.sqrt(share) : cubeRoot(share);
+  return longest * edge;
 }

@@ -74,11 +74,11 @@ function gatherPair(
   ];
   if (a.dims === 3) columns.push([a.z, b.z]);
   for (let i = 0; i < rows.length; i++) {
-    const found = search.near(i);
+    const found = search.near(search.slotOf[i]!);
     for (const [axis, [from, to]] of columns.entries()) {
       let sum = 0;
       for (let j = 0; j < found; j++) {
-        const r = search.rows[j]!;
+        const r = search.rowOf[search.slots[j]!]!;
         sum += to[partner.get(r)!]! - from[r]!;
       }
       const own = to[partner.get(rows[i]!)!]! - from[rows[i]!]!;

@@ -1,0 +1,83 @@
+import { medianOfFew } from '../math/median.js';
+import type { NearestFew } from '../math/nearest-few.js';
+
+/** Neighbours beyond the number of coefficients that a plane needs for its residuals to mean anything. */
+const LEAST_REDUNDANCY = 3;
+
+/** Pivot of the normal equations, over its value before elimination, below which the neighbours do not span a plane. */
+const FLAT = 1e-6;
+
+/**
+ * Normalised residual against the plane (in a volume: the linear field) through the neighbours of a sample: the
+ * velocity less the plane's value there, over the median residual of the neighbours plus epsilon, the median widened
+ * by sqrt(n / (n - p)) because n residuals of a fit with p coefficients have n - p degrees of freedom. The place of
+ * the published test (`normalisedMedianResidual`) where the flow has a gradient on the scale of the seeding.
+ */
+export class PlaneTest {
+  private readonly search: NearestFew;
+  private readonly design: Float64Array;
+  private readonly sizes: Float64Array;
+  private readonly normal = new Float64Array(20);
+
+  constructor(search: NearestFew, neighbours: number) {
+    this.search = search;
+    this.design = new Float64Array(4 * neighbours);
+    this.sizes = new Float64Array(neighbours);
+  }
+
+  /** `velocity` by slot; the neighbours are those of the search's last query. NaN where they determine no plane. */
+  residual(velocity: Float64Array, own: number, found: number, epsilon: number): number {
+    const { search, design, sizes, normal } = this;
+    const { slots, px, py, pz, dims } = search;
+    const p = dims + 1;
+    if (found < p + LEAST_REDUNDANCY) return Number.NaN;
+    const far = slots[found - 1]!;
+    let reach = Math.abs(px[far]! - px[own]!) + Math.abs(py[far]! - py[own]!);
+    if (dims === 3) reach += Math.abs(pz[far]! - pz[own]!);
+    if (!(reach > 0)) return Number.NaN;
+    const scale = 1 / reach;
+    normal.fill(0);
+    const q = p + 1;
+    for (let i = 0; i < found; i++) {
+      const slot = slots[i]!;
+      const at = 4 * i;
+      design[at] = 1;
+      design[at + 1] = (px[slot]! - px[own]!) * scale;
+      design[at + 2] = (py[slot]! - py[own]!) * scale;
+      if (dims === 3) design[at + 3] = (pz[slot]! - pz[own]!) * scale;
+      const value = velocity[slot]! - velocity[own]!;
+      for (let a = 0; a < p; a++) {
+        for (let b = a; b < p; b++) normal[a * q + b] = normal[a * q + b]! + design[at + a]! * design[at + b]!;
+        normal[a * q + p] = normal[a * q + p]! + design[at + a]! * value;
+      }
+    }
+    if (!eliminate(normal, p)) return Number.NaN;
+    for (let i = 0; i < found; i++) {
+      let value = velocity[slots[i]!]! - velocity[own]!;
+      for (let a = 0; a < p; a++) value -= normal[a * q + p]! * design[4 * i + a]!;
+      sizes[i] = Math.abs(value);
+    }
+    const widened = medianOfFew(sizes, found) * Math.sqrt(found / (found - p));
+    return Math.abs(normal[p]!) / (widened + epsilon);
+  }
+}
+
+/** Solves symmetric positive equations, upper triangle and right-hand side in rows of p + 1; the answer replaces the latter. */
+function eliminate(m: Float64Array, p: number): boolean {
+  const q = p + 1;
+  for (let a = 0; a < p; a++) {
+    const before = m[a * q + a]!;
+    for (let k = 0; k < a; k++) {
+      // Row k is already divided by its pivot, which stands on the diagonal.
+      const factor = m[k * q + a]! * m[k * q + k]!;
+      for (let b = a; b <= p; b++) m[a * q + b] = m[a * q + b]! - factor * m[k * q + b]!;
+    }
+    const pivot = m[a * q + a]!;
+    if (!(pivot > before * FLAT)) return false;
+    for (let b = a + 1; b <= p; b++) m[a * q + b] = m[a * q + b]! / pivot;
+  }
+  for (let a = p - 1; a >= 0; a--) {
+    for (let b = a + 1; b < p; b++) m[a * q + p] = m[a * q + p]! - m[a * q + b]! * m[b * q + p]!;
+  }
+  return true;
+}
