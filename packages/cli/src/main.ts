@@ -1,11 +1,11 @@
-import { WakeloomError } from '@wakeloom/tracker/core/errors';
+import { isWakeloomError, WakeloomError } from '@wakeloom/tracker/core/errors';
 import { nearestWord } from '@wakeloom/tracker/run/nearest';
 import { DEMO } from './commands/demo.js';
 import { EXPORT } from './commands/export.js';
 import { PROCESS } from './commands/process.js';
 import { EXIT, exitCodeOf } from './exit-codes.js';
 import { errorText } from './messages.js';
-import { processTerminal, type Terminal } from './terminal.js';
+import { processTerminal, READER_GONE, type Terminal } from './terminal.js';
 import { helpText, makeParser, parseVerb, type Verb, verbParser } from './verbs.js';
 import { programVersion } from './version.js';
 
@@ -21,6 +21,7 @@ export async function main(argv: readonly string[], terminal: Terminal = process
   try {
     return await dispatch(argv, terminal);
   } catch (error) {
+    if (isWakeloomError(error) && error.code === READER_GONE) return EXIT.done;
     terminal.say(errorText(error, terminal));
     return exitCodeOf(error);
   }

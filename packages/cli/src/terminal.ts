@@ -1,4 +1,5 @@
 import type { ByteSink } from '@wakeloom/tracker/core/bytes';
+import { WakeloomError } from '@wakeloom/tracker/core/errors';
 import picocolors from 'picocolors';
 
 /** Where a command speaks. Results and data go to stdout; progress, warnings and errors to stderr. */
@@ -27,6 +28,9 @@ export function processTerminal(): Terminal {
   const noColour = env['NO_COLOR'] !== undefined && env['NO_COLOR'] !== '';
   const redraws = stderr.isTTY === true && !dumb;
   const colours = picocolors.createColors(redraws && !noColour);
+  // Without a listener a closed pipe (`| head`) would end the process with a stack trace; writes report it anyway.
+  stdout.on('error', () => {});
+  stderr.on('error', () => {});
   return {
     result: (line) => void stdout.write(`${line}\n`),
     say: (line) => void stderr.write(`${line}\n`),
@@ -34,7 +38,7 @@ export function processTerminal(): Terminal {
     dataSink: () => ({
       write: (bytes) =>
         new Promise((resolve, reject) => {
-          stdout.write(bytes, (error) => (error ? reject(error) : resolve()));
+          stdout.write(bytes, (error) => (error ? reject(outputError(error)) : resolve()));
         }),
       close: () => Promise.resolve(),
     }),
@@ -43,4 +47,18 @@ export function processTerminal(): Terminal {
     paint: colours,
     debug: env['WAKELOOM_DEBUG'] === '1',
   };
+}
+
+/** Thrown where whoever read standard output has gone: no failure of ours, the command just ends. */
+export const READER_GONE = 'run/reader-gone';
+
+function outputError(error: NodeJS.ErrnoException): WakeloomError {
+  if (error.code === 'EPIPE') return new WakeloomError(READER_GONE, 'standard output was closed by its reader');
+  const full = error.code === 'ENOSPC';
+  return new WakeloomError(
+    full ? 'store/disk-full' : 'store/not-writable',
+    `standard output: got ${error.code ?? error.message}, expected ${full ? 'room on the disk' : 'to write'}`,
+    {},
+    error,
+  );
 }

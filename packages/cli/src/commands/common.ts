@@ -22,3 +22,8 @@ export async function longWork<T>(terminal: Terminal, quiet: boolean, work: (hoo
     progress.end();
   }
 }
+
+/** A word as it must be typed: quoted where shells would split or change it. */
+export function typedWord(word: string): string {
+  return /^[\w./\\:+@%=,-]+$/.test(word) ? word : `"${word}"`;
+}

@@ -5,7 +5,7 @@ import { formatBytes, formatCount } from '@wakeloom/tracker/figures/number-forma
 import { openFileSink } from '@wakeloom/tracker/node';
 import { EXPORTERS, findExporter } from '@wakeloom/tracker/store/exports/registry';
 import { EXIT } from '../exit-codes.js';
-import { type ExportWish, exportResult, openExport } from '../export-result.js';
+import { type ExportWish, openExport } from '../export-result.js';
 import { lookAt } from '../files.js';
 import { single } from '../options.js';
 import { isOurResult } from '../out-folder.js';
@@ -57,18 +57,18 @@ async function runExport(words: readonly string[], args: Args, terminal: Termina
     );
   }
   if (out !== null) checkOutFile(out);
-  const ready = await openExport(wish);
+  const opened = await openExport(wish);
   const summary = await longWork(terminal, quiet, async (hooks) => {
-    if (out === null) return exportResult(ready, terminal.dataSink(), hooks);
+    if (out === null) return opened.write(terminal.dataSink(), hooks);
     return throughPartial(out, async (partial) => {
       const sink = await openFileSink(partial);
       try {
-        return await exportResult(ready, sink, hooks);
+        return await opened.write(sink, hooks);
       } finally {
         await sink.close();
       }
     });
-  });
+  }).finally(opened.close);
   if (quiet) return EXIT.done;
   const { rows, columns, bytes, remarks } = summary;
   const where = out === null ? '' : ` in ${out}`;

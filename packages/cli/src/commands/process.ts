@@ -12,7 +12,7 @@ import { prepareOutFolder } from '../out-folder.js';
 import { processRun } from '../process-run.js';
 import type { Terminal } from '../terminal.js';
 import type { Args, Verb } from '../verbs.js';
-import { longWork } from './common.js';
+import { longWork, typedWord } from './common.js';
 
 /** Examples stand before the long list of settings, where they are seen. */
 const USAGE = `wakeloom process DUMP.. [options] --out DIR
@@ -24,7 +24,7 @@ Everything below can stand in a run sheet; an option overrules the sheet.
 Examples:
   wakeloom demo --out demo
   wakeloom process demo/cylinder-wake.yaml --out demo/result
-  wakeloom process demo/cylinder-wake.csv --rate "60 Hz" --scale "0.05 mm/px" --bin "2 mm" --out demo/plain`;
+  wakeloom process demo/cylinder-wake.csv.gz --rate "60 Hz" --scale "0.05 mm/px" --bin "2 mm" --out demo/plain`;
 
 /**
  * `process`: everything is checked before the work starts. The summary goes to stdout, since nothing else does and
@@ -63,12 +63,14 @@ async function runProcess(inputs: readonly string[], args: Args, terminal: Termi
 
 /** Where the results lie and what to type next. */
 export function nextSteps(out: string): string[] {
-  const folder = /[\s'"$&()]/.test(out) ? `"${out}"` : out;
+  const folder = typedWord(out);
   return [
     '',
     `Results in ${out}`,
     `  open ${join(out, 'report.html')} in a browser`,
-    `  wakeloom export ${folder} pathlines --format csv --out pathlines.csv`,
+    '',
+    'Next:',
+    `  wakeloom export ${folder} pathlines --out pathlines.csv`,
     `  wakeloom export ${folder} grid --format vtk --out grid.vti`,
   ];
 }
