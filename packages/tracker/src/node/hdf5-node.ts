@@ -20,7 +20,7 @@ export const nodeHdf5: Hdf5Opener = {
     const build = await nodeHdf5Build();
     const path = pathOf(source);
     if (path !== null) return openHdf5Reader(build, path, source.name);
-    const folder = mkdtempSync(join(tmpdir(), 'wakeloom-'));
+    const folder = mkdtempSync(join(tmpdir(), 'wakeloom-hdf5-'));
     const remove = () => rmSync(folder, { recursive: true, force: true });
     try {
       const copy = join(folder, 'dump.h5');
