@@ -367,5 +367,5 @@ function nearest(position: number, count: number): number {
 }
 
 function clamp(position: number, count: number): number {
-  return position < 0 ? 0 : position > count - 1 ? count - 1 : position;
+  return position < 0 ? 0 : Math.min(position, count - 1);
 }

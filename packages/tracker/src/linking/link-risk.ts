@@ -24,5 +24,5 @@ export function decay(q: number): number {
 export function linkRisk(own: number, rowSum: number, columnSum: number, stray: number): number {
   const against = rowSum - own + (columnSum - own) + stray;
   const risk = against / (own + against);
-  return risk > 0 ? (risk < 1 ? risk : 1) : 0;
+  return risk > 0 ? Math.min(risk, 1) : 0;
 }

@@ -316,7 +316,7 @@ export class Linker {
   /** Density of detections that belong to no pathline yet, from the share of late; at least one in a hundred. */
   private strayDensity(): number {
     const share = this.strayWeight > 0 ? this.straySum / this.strayWeight : 0.2;
-    return this.options.density * (share < 0.01 ? 0.01 : share > 0.5 ? 0.5 : share);
+    return this.options.density * (share < 0.01 ? 0.01 : Math.min(share, 0.5));
   }
 
   private fit(columns: number): void {

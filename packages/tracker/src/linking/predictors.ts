@@ -144,7 +144,7 @@ export class Predictors {
   private surpriseOf(cell: number, g: number): number {
     const everywhere = this.globalWeight > 0 ? this.global[g] / this.globalWeight : this.start;
     const square = (this.record[g][cell] + RECORD_PRIOR * everywhere) / (this.recordWeight[cell] + RECORD_PRIOR);
-    return square > this.floor ? square : this.floor;
+    return Math.max(square, this.floor);
   }
 }
 

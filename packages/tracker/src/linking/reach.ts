@@ -90,5 +90,5 @@ export function reachFromRings(counts: Float64Array, dims: 2 | 3): ReachChoice {
   const reach = ALLOWANCE * radius(COUNTED_SHARE);
   // Median of a Rayleigh (Maxwell) distance over its root mean square: sqrt(ln 2) = 0.8326, in space 0.8881.
   const median = radius(0.5) / (dims === 2 ? 0.8326 : 0.8881);
-  return { reach: reach < LEAST ? LEAST : reach > MOST ? MOST : reach, expected: median * median };
+  return { reach: reach < LEAST ? LEAST : Math.min(reach, MOST), expected: median * median };
 }

@@ -12,7 +12,6 @@ const CELLS_PER_POINT = 2;
  */
 export class CellIndex implements NeighbourSearch {
   private dims: Dims = 2;
-  private columns: PointColumns = { x: new Float64Array(0), y: new Float64Array(0), z: new Float64Array(0) };
   private start = new Uint32Array(1);
   private rows = new Int32Array(0);
   /** Copies of the coordinates in cell order: queries read memory in sequence. */
@@ -36,7 +35,6 @@ export class CellIndex implements NeighbourSearch {
   build(points: PointColumns, from: number, to: number, dims: Dims, reach: readonly [number, number, number]): void {
     const n = to - from;
     this.dims = dims;
-    this.columns = points;
     if (this.rows.length < n) this.grow(n);
     this.scaleX = 1 / reach[0];
     this.scaleY = 1 / reach[1];

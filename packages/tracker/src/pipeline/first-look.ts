@@ -9,6 +9,7 @@ import { type FramePair, voteFlow } from '../linking/vote-flow.js';
 import { estimateNoise } from '../noise/position-noise.js';
 import type { RunSettings } from '../run/settings.js';
 import { linkDisplacements } from './displacements.js';
+import { linkBlock } from './link-block.js';
 import type { Prior } from './stages.js';
 
 /** Pairs of frames that vote for the flow: few, because the flow may change meanwhile. */
@@ -170,15 +171,7 @@ async function trialLinking(
 ): Promise<LinkedBlock[]> {
   const linker = createLinker(settings.linking, prior);
   const linked: LinkedBlock[] = [];
-  for (const block of blocks) {
-    const pathline = new Int32Array(block.x.length);
-    const linkRisk = new Float32Array(block.x.length);
-    for (let k = 0; k < block.number.length; k++) {
-      linker.frame(block, k, pathline, linkRisk);
-      await context.breathe();
-    }
-    linked.push({ ...block, pathline, linkRisk });
-  }
+  for (const block of blocks) linked.push(await linkBlock(linker, block, context));
   return linked;
 }
 

@@ -97,7 +97,7 @@ export function runRecord(board: Board, started: string): Omit<RunRecord, 'diges
 
 function countFilled(values: Float32Array | undefined): number {
   let filled = 0;
-  for (const value of values ?? []) if (value === value) filled++;
+  for (const value of values ?? []) if (!Number.isNaN(value)) filled++;
   return filled;
 }
 

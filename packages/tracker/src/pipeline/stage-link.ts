@@ -5,6 +5,7 @@ import { LinkComparison } from '../linking/given-check.js';
 import { GivenPathlines } from '../linking/given-pathlines.js';
 import type { Linker } from '../linking/linker.js';
 import type { LinkCounts, Stage } from './board.js';
+import { linkBlock } from './link-block.js';
 
 /** Turns the stream of detections into a stream of linked ones: our own links, or those the dump came with. */
 export const linkStage: Stage = {
@@ -56,15 +57,4 @@ async function* linkStream(
     message: `the dump came with pathline numbers: ${links} links${agreed}; ${twiceInFrame} detections shared a number within a frame, ${broken} links crossed more than ${bridge} missing frames`,
     details: { links, twiceInFrame, broken, agreed: comparison?.agreed ?? null },
   });
-}
-
-/** Links one block with the run's linker. */
-async function linkBlock(linker: Linker, block: DetectionBlock, context: RunContext): Promise<LinkedBlock> {
-  const pathline = new Int32Array(block.x.length);
-  const linkRisk = new Float32Array(block.x.length);
-  for (let k = 0; k < block.number.length; k++) {
-    linker.frame(block, k, pathline, linkRisk);
-    await context.breathe();
-  }
-  return { ...block, pathline, linkRisk };
 }
