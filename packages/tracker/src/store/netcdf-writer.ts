@@ -1,24 +1,23 @@
-import type * as H5 from 'h5wasm';
 import type { RunContext } from '../core/context.js';
 import { WakeloomError } from '../core/errors.js';
 import type { Hdf5Type, NumericArray } from '../core/hdf5.js';
-import type { Hdf5Build, ResultPlace } from '../core/result-place.js';
+import type { ResultPlace } from '../core/result-place.js';
 import { PARTIAL_PREFIX } from '../core/result-place.js';
 import { type AttributeValue, openLedger, TYPE_SIZE, type VariableDigest } from './digest.js';
 import { checkRoom, diskFull } from './disk-space.js';
+import { type AttributeTarget, createEmpty, WINDOW, writeAttribute, writeRows } from './netcdf-datasets.js';
 import { SIZE_ONLY } from './netcdf-names.js';
 import { readBackDigest } from './read-back.js';
 import { canonicalBytes } from './value-bytes.js';
 
 export type Attributes = Readonly<Record<string, AttributeValue>>;
 
-/** How a variable is made. `chunk`: rows of the first dimension a chunk holds (capped at the dimension). */
+/** How a variable is made. */
 export interface VariableOptions {
   readonly name: string;
   readonly type: Hdf5Type;
   readonly dimensions: readonly string[];
   readonly attributes: Attributes;
-  readonly chunk?: number;
 }
 
 /** A NetCDF-4 file in the making, under its partial name. */
@@ -34,16 +33,6 @@ export interface NetcdfWriter {
   abandon(): void;
 }
 
-/** Rows a chunk holds unless said otherwise: 32 kB of Float64, so that one instant or one pathline costs few bytes over HTTP. */
-export const CHUNK_ROWS = 4096;
-
-/** Values that cross into the HDF5 build's memory at once, bytes. */
-const WINDOW = 1 << 20;
-
-const DTYPE: Readonly<Record<Hdf5Type, string>> = { f32: '<f', f64: '<d', u8: '<B', u16: '<H', i32: '<i', i64: '<q' };
-
-type AttributeTarget = Pick<H5.Dataset, 'create_attribute'>;
-
 interface OpenVariable {
   readonly type: Hdf5Type;
   readonly shape: readonly number[];
@@ -54,9 +43,7 @@ interface OpenVariable {
 }
 
 /**
- * Starts `file` in the folder. Values are little-endian, uncompressed, chunked. Chunked and grown from zero rows
- * rather than contiguous, because this HDF5 build makes a contiguous dataset only from all its values at once.
- * Attribute order and dimension order are tracked, as the NetCDF-4 library needs for writing to the file later.
+ * Starts `file` in the folder. Values are little-endian, uncompressed, in chunks (see netcdf-datasets.ts). Attribute order and dimension order are tracked, as the NetCDF-4 library needs for writing to the file later.
  * Codes: `store/disk-full`, `store/read-back`, `store/not-writable`.
  */
 export function createNetcdf(place: ResultPlace, file: string, attributes: Attributes): NetcdfWriter {
@@ -69,7 +56,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
   place.writeText(partial, '');
   const handle = new hdf5.File(place.hdf5Path(partial), 'w', { track_order: true });
   let open = true;
-  const scratch = hdf5.module._malloc(WINDOW);
+  const window = hdf5.module._malloc(WINDOW);
   let bytesWritten = 0;
 
   const put = (owner: string, values: Attributes) => {
@@ -83,7 +70,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
   const close = () => {
     if (!open) return;
     open = false;
-    hdf5.module._free(scratch);
+    hdf5.module._free(window);
     handle.close();
   };
   put('/', attributes);
@@ -98,8 +85,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
         return dimension.size;
       });
       const scale = options.dimensions.length === 1 && options.dimensions[0] === name;
-      const rows = Math.max(1, Math.min(options.chunk ?? CHUNK_ROWS, shape[0]));
-      createEmpty(hdf5, handle.file_id, name, type, shape, [rows, ...shape.slice(1)]);
+      createEmpty(hdf5, handle.file_id, name, type, shape);
       if (scale) {
         hdf5.module.set_scale(handle.file_id, `/${name}`, name);
         const own = dimensions.get(name);
@@ -133,8 +119,8 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
       for (let row = 0; row < rows; row += step) {
         const count = Math.min(step, rows - row);
         const part = bytes.subarray(row * rowBytes, (row + count) * rowBytes);
-        if (part.length > WINDOW) writeLarge(hdf5, handle.file_id, name, variable, row, count, part);
-        else writeRows(hdf5, handle.file_id, name, variable, variable.written + row, count, part, scratch);
+        const slab = { file: handle.file_id, name, shape: variable.shape, first: variable.written + row, rows: count };
+        writeRows(hdf5, slab, part, window);
       }
       variable.digest.update(bytes);
       variable.written += rows;
@@ -166,14 +152,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
   function makeScale(name: string): void {
     const dimension = dimensions.get(name);
     if (dimension === undefined || dimension.made) return;
-    createEmpty(
-      hdf5,
-      handle.file_id,
-      name,
-      'f32',
-      [dimension.size],
-      [Math.max(1, Math.min(CHUNK_ROWS, dimension.size))],
-    );
+    createEmpty(hdf5, handle.file_id, name, 'f32', [dimension.size]);
     hdf5.module.set_scale(handle.file_id, `/${name}`, SIZE_ONLY + String(dimension.size).padStart(10));
     ledger.dimension(name, dimension.size);
     dimension.made = true;
@@ -205,80 +184,4 @@ function readBackError(
     `result file read back: got content ${found.slice(0, 12)}, expected ${expected.slice(0, 12)} as written (${path}); the disk did not keep what was written, check it and run again`,
     { path, expected, found },
   );
-}
-
-function hdf5Metadata(type: Hdf5Type): { type: number; size: number; signed: boolean } {
-  const float = type === 'f32' || type === 'f64';
-  return { type: float ? 1 : 0, size: TYPE_SIZE[type], signed: type === 'i32' || type === 'i64' };
-}
-
-function createEmpty(
-  hdf5: Hdf5Build,
-  file: bigint,
-  name: string,
-  type: Hdf5Type,
-  shape: readonly number[],
-  chunks: readonly number[],
-): void {
-  const metadata = {
-    ...hdf5Metadata(type),
-    vlen: false,
-    littleEndian: true,
-    total_size: 0,
-    shape: shape.map((size, index) => (index === 0 ? 0n : BigInt(size))),
-    maxshape: shape.map((size) => BigInt(Math.max(size, 1))),
-    chunks: chunks.map((size) => BigInt(Math.max(size, 1))),
-    compression: 0,
-    compression_opts: [],
-    track_order: true,
-  };
-  // An address is needed although no row is written yet.
-  const nothing = hdf5.module._malloc(8);
-  hdf5.module.create_dataset(file, `/${name}`, BigInt(nothing), metadata);
-  hdf5.module._free(nothing);
-  hdf5.module.resize_dataset(file, `/${name}`, shape.map(BigInt));
-}
-
-function writeRows(
-  hdf5: Hdf5Build,
-  file: bigint,
-  name: string,
-  variable: OpenVariable,
-  first: number,
-  rows: number,
-  bytes: Uint8Array,
-  address: number,
-): void {
-  const rest = variable.shape.slice(1).map(BigInt);
-  hdf5.module.HEAPU8.set(bytes, address);
-  const offset = [BigInt(first), ...rest.map(() => 0n)];
-  const stride = [1n, ...rest.map(() => 1n)];
-  hdf5.module.set_dataset_data(file, `/${name}`, [BigInt(rows), ...rest], offset, stride, BigInt(address));
-}
-
-/** One row larger than the window (a plane of a wide grid): memory of its own for the call. */
-function writeLarge(
-  hdf5: Hdf5Build,
-  file: bigint,
-  name: string,
-  variable: OpenVariable,
-  row: number,
-  rows: number,
-  bytes: Uint8Array,
-): void {
-  const address = hdf5.module._malloc(bytes.length);
-  try {
-    writeRows(hdf5, file, name, variable, variable.written + row, rows, bytes, address);
-  } finally {
-    hdf5.module._free(address);
-  }
-}
-
-/** Text as fixed-length characters (what CF calls a char attribute), numbers as a row of their type. */
-function writeAttribute(target: AttributeTarget, name: string, value: AttributeValue): void {
-  if (typeof value === 'string') {
-    target.create_attribute(name, value, [], `S${new TextEncoder().encode(value).length}`);
-  } else {
-    target.create_attribute(name, [...value.values], [value.values.length], DTYPE[value.type]);
-  }
 }

@@ -3,18 +3,13 @@ import type { SampleBlock } from '../core/columns.js';
 import { rowCount } from '../core/columns.js';
 import { WakeloomError } from '../core/errors.js';
 import type { ResultPlace } from '../core/result-place.js';
+import { sortByBucket } from './bucket-sort.js';
 import { checkRoom } from './disk-space.js';
 import { type Growable, growable } from './growable.js';
 import type { SampleColumn, SampleKey } from './sample-columns.js';
 
 /** Rows sorted and written at once: about 13 MB in the plane, and again as much while they are sorted. */
 const BATCH_ROWS = 1 << 17;
-
-/**
- * Pathlines of a bucket. Small, so that a bucket of very long pathlines stays small; a batch holds only the buckets
- * of the particles then in view, so that there are some hundreds of pieces a batch whatever the run's length.
- */
-export const BUCKET_PATHLINES = 64;
 
 export type Column = Float64Array | Float32Array | Int32Array | Uint16Array;
 
@@ -199,35 +194,4 @@ function countPathlines(pathline: Int32Array, rows: number, counts: Growable<Int
   counts.extend(largest + 1);
   const { array } = counts;
   for (let row = 0; row < rows; row++) array[pathline[row]]++;
-}
-
-/** Stable counting sort by bucket: row i goes to slots[i]. */
-function sortByBucket(
-  pathline: Int32Array,
-  rows: number,
-  slots: Int32Array,
-): { buckets: Int32Array; firstRows: Int32Array } {
-  let low = Number.POSITIVE_INFINITY;
-  let high = -1;
-  for (let i = 0; i < rows; i++) {
-    if (pathline[i] < low) low = pathline[i];
-    if (pathline[i] > high) high = pathline[i];
-  }
-  const first = Math.floor(low / BUCKET_PATHLINES);
-  const next = new Int32Array(Math.floor(high / BUCKET_PATHLINES) - first + 1);
-  for (let i = 0; i < rows; i++) next[((pathline[i] / BUCKET_PATHLINES) | 0) - first]++;
-  const buckets: number[] = [];
-  const firstRows: number[] = [];
-  let sum = 0;
-  for (let bucket = 0; bucket < next.length; bucket++) {
-    const count = next[bucket];
-    next[bucket] = sum;
-    if (count > 0) {
-      buckets.push(first + bucket);
-      firstRows.push(sum);
-    }
-    sum += count;
-  }
-  for (let i = 0; i < rows; i++) slots[i] = next[((pathline[i] / BUCKET_PATHLINES) | 0) - first]++;
-  return { buckets: Int32Array.from(buckets), firstRows: Int32Array.from(firstRows) };
 }

@@ -1,8 +1,9 @@
 import type { RunContext } from '../core/context.js';
+import { BUCKET_PATHLINES } from './bucket-sort.js';
 import type { Numbering } from './numbering.js';
 import type { PathlineRows } from './pathline-rows.js';
 import type { SampleColumn } from './sample-columns.js';
-import { type Batch, BUCKET_PATHLINES, type Column, columnOf, readBatch, rowBytes, type Spilled } from './spill.js';
+import { type Batch, type Column, columnOf, readBatch, rowBytes, type Spilled } from './spill.js';
 
 /** Rows of a group in one pass, by size: 16 MB of columns, unless one pathline alone is longer. */
 const GROUP_BYTES = 16 << 20;
