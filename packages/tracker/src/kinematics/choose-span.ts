@@ -21,6 +21,12 @@ const LEAST_SHARE = 0.25;
 const NOISE_ROOM = 3;
 const BEND_ROOM = 4;
 
+/**
+ * Length of the shorter fit over the longer. For degree 1 and 2 the bias grows as m^2 and the noise gain falls as
+ * m^-3, so noise in the measured B^2 goes as (r^-3 - 1) / (1 - r^2)^2, which is least at r = 0.75.
+ */
+const SHORTER = 0.75;
+
 /** What a span is expected to cost. */
 export interface SpanForecast {
   readonly span: number;
@@ -33,8 +39,8 @@ export interface SpanForecast {
 /**
  * Span for the local fit: the one with the least predicted mean square error of velocity among odd spans 5 to 31.
  * Noise part: noise gain of the velocity times sigma^2. Bias part, measured: over m frames on either side a fit of
- * degree 1 or 2 errs by B c(m), c(m) its answer to t^3 (t^5 for degree 3). Velocities from m and from about half of it,
- * over the same samples, differ by B (c(m) - c(m/2)) and by noise of known size: the mean square of their difference
+ * degree 1 or 2 errs by B c(m), c(m) its answer to t^3 (t^5 for degree 3). Velocities from m and from three quarters of it,
+ * over the same samples, differ by B (c(m) - c(0.75 m)) and by noise of known size: the mean square of their difference
  * less the noise gives B^2 on the very time scale of m, without assuming that the motion is a polynomial beyond it.
  * Frames count as even here. With too few full windows even for span 5 the answer is 5.
  *
@@ -111,7 +117,7 @@ function forecast(
 ): SpanForecast {
   // The shorter fit must have more samples than the degree has coefficients.
   const least = order === 3 ? 2 : 1;
-  const shorter = Math.max(least, Math.floor(m / 2));
+  const shorter = Math.max(least, Math.floor(SHORTER * m));
   const long = velocityWeights(m === shorter ? m + 1 : m, order);
   const short = velocityWeights(shorter, order);
   const wide = (long.length - 1) / 2;

@@ -1,11 +1,10 @@
 import type { LinkedBlock, SampleBlock } from '../core/columns.js';
-import { rowCount } from '../core/columns.js';
 import type { StageInput } from '../pipeline/stages.js';
 import type { FitParameters } from './fit-parameters.js';
 import { fitLag, fitParameters } from './fit-parameters.js';
 import type { CoreRange } from './fit-window.js';
 import { fitWindowInSteps } from './fit-window.js';
-import { cutWindows } from './window-cutter.js';
+import { cutWindows, windowBytes } from './window-cutter.js';
 
 /** Rows of a core at least: enough that handing a window over costs little against fitting it. */
 const CORE_ROWS = 60_000;
@@ -15,7 +14,7 @@ export type FitRunner = (window: LinkedBlock, core: CoreRange, parameters: FitPa
 
 /**
  * The fit stage: linked blocks in frame order to samples in frame order. Cuts the stream into windows with overlap
- * and has each fitted by `run`, up to `context.budget.threads` at a time; results come in order and do not depend on
+ * and has each fitted by `run`, up to `context.budget.threads` at a time and within half the budget of bytes; results come in order and do not depend on
  * the cuts or the threads. Without `run` the kernel works here, with a breath every few ms. Memory: the windows in
  * flight, each three to four times the lag long, about 100 bytes a row.
  */
@@ -29,6 +28,8 @@ export async function* fitStage(
   const runner = run ?? runHere;
   const limit = run === undefined ? 1 : Math.max(1, context.budget.threads);
   const flight: Promise<SampleBlock>[] = [];
+  const sizes: number[] = [];
+  let held = 0;
   let frames = 0;
 
   async function runHere(window: LinkedBlock, core: CoreRange, p: FitParameters): Promise<SampleBlock> {
@@ -41,6 +42,7 @@ export async function* fitStage(
   }
   const deliver = async (): Promise<SampleBlock> => {
     const samples = await flight.shift()!;
+    held -= sizes.shift()!;
     frames += samples.number.length;
     context.progress('fit', frames, null, 'frames');
     return samples;
@@ -49,16 +51,18 @@ export async function* fitStage(
   try {
     for await (const { window, core } of cutWindows(blocks, fitLag(parameters), CORE_ROWS)) {
       await context.breathe();
-      while (flight.length >= limit) yield await deliver();
+      const bytes = windowBytes(window);
+      while (flight.length > 0 && (flight.length >= limit || held + bytes > context.budget.bytes / 2)) {
+        yield await deliver();
+      }
       const result = runner(window, core, parameters);
+      sizes.push(bytes);
+      held += bytes;
       // Awaited in its turn; until then a failure must not count as unhandled.
       result.catch(() => {});
       flight.push(result);
     }
-    while (flight.length > 0) {
-      const samples = await deliver();
-      if (rowCount(samples) > 0 || samples.number.length > 0) yield samples;
-    }
+    while (flight.length > 0) yield await deliver();
   } finally {
     await Promise.allSettled(flight);
   }

@@ -151,7 +151,7 @@ export function joinBlocks(blocks: readonly LinkedBlock[]): LinkedBlock {
   );
 }
 
-/** Bytes of a window, for budgets. */
+/** Bytes that a window takes while it is fitted, about: its own columns, sorted rows and velocities, half as many samples. */
 export function windowBytes(window: LinkedBlock): number {
-  return rowCount(window) * (window.dims === 3 ? 40 : 32) + window.number.length * 20;
+  return rowCount(window) * (window.dims === 3 ? 150 : 120);
 }

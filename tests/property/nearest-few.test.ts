@@ -1,0 +1,88 @@
+import { cubeRoot } from '@wakeloom/tracker/math/cube-root';
+import { medianInPlace, medianOfFew, selectRank } from '@wakeloom/tracker/math/median';
+import { NearestFew } from '@wakeloom/tracker/math/nearest-few';
+import { randomStream } from '@wakeloom/tracker/synthesis/random-stream';
+import { median as peerMedian } from 'simple-statistics';
+import { describe, expect, it } from 'vitest';
+
+/** Clouds of different shape: even, on a lattice with ties, in a thin strip, in clusters with a far stray point. */
+function cloud(kind: number, n: number, seed: string): { x: Float64Array; y: Float64Array; z: Float64Array } {
+  const random = randomStream(23, seed);
+  const coordinate = (axis: number, i: number): number => {
+    if (kind === 0) return 100 * random.uniform();
+    if (kind === 1) return axis === 0 ? i % 7 : axis === 1 ? Math.floor(i / 7) % 7 : Math.floor(i / 49);
+    if (kind === 2) return (axis === 0 ? 1000 : 0.001) * random.uniform() - 500;
+    return i === 0 ? 1e6 : (i % 5) * 10 + random.normal();
+  };
+  const column = (axis: number) => Float64Array.from({ length: n }, (_, i) => coordinate(axis, i));
+  return { x: column(0), y: column(1), z: column(2) };
+}
+
+describe('nearest few', () => {
+  it('distances agree with looking at every point', () => {
+    for (const dims of [2, 3] as const) {
+      for (let kind = 0; kind < 4; kind++) {
+        for (const n of [1, 5, 9, 60, 400]) {
+          const points = cloud(kind, n, `${dims} ${kind} ${n}`);
+          const search = new NearestFew(8);
+          search.build(
+            points,
+            Uint32Array.from({ length: n }, (_, i) => i),
+            n,
+            dims,
+          );
+          for (let i = 0; i < n; i++) {
+            const square = (j: number) => {
+              const d2 = (points.x[j]! - points.x[i]!) ** 2 + (points.y[j]! - points.y[i]!) ** 2;
+              return dims === 3 ? d2 + (points.z[j]! - points.z[i]!) ** 2 : d2;
+            };
+            const all = Array.from({ length: n }, (_, j) => j).filter((j) => j !== i);
+            const want = all.map(square).sort((a, b) => a - b);
+            const found = search.near(search.slotOf[i]!);
+            const rows = Array.from(search.slots.subarray(0, found), (slot) => search.rowOf[slot]!);
+            expect(new Set(rows).size).toBe(rows.length);
+            expect(rows).not.toContain(i);
+            expect(rows.map(square)).toEqual(want.slice(0, 8));
+          }
+        }
+      }
+    }
+  });
+
+  it('can be built again for fewer and for more points', () => {
+    const search = new NearestFew(3);
+    for (const n of [50, 4, 300]) {
+      const points = cloud(0, n, `again ${n}`);
+      const rows = Uint32Array.from({ length: n }, (_, i) => i);
+      search.build(points, rows, n, 2);
+      expect(search.near(search.slotOf[n - 1]!)).toBe(3);
+      const nearest = search.rowOf[search.slots[0]!]!;
+      const distance = (j: number) => Math.hypot(points.x[j]! - points.x[n - 1]!, points.y[j]! - points.y[n - 1]!);
+      const best = Math.min(...Array.from(rows.subarray(0, n - 1), distance));
+      expect(distance(nearest)).toBeCloseTo(best, 12);
+    }
+  });
+});
+
+describe('medians and roots', () => {
+  it('agree with simple-statistics, ties and all', () => {
+    const random = randomStream(24, 'medians');
+    for (let n = 1; n < 60; n++) {
+      const values = Float64Array.from(
+        { length: n },
+        () => (Math.round(8 * random.normal()) + 0) / (n % 2 === 0 ? 1 : 7),
+      );
+      const want = peerMedian(Array.from(values));
+      expect(medianInPlace(values.slice(), n)).toBe(want);
+      expect(medianOfFew(values.slice(), n)).toBe(want);
+      const sorted = values.slice().sort();
+      for (let rank = 0; rank < n; rank++) expect(selectRank(values.slice(), 0, n, rank)).toBe(sorted[rank]);
+    }
+    expect(medianInPlace(new Float64Array(4), 0)).toBeNaN();
+  });
+
+  it('cube root of cubes', () => {
+    for (const root of [1e-4, 0.1, 0.5, 1, 3, 7.25, 1e5])
+      expect(Math.abs(cubeRoot(root ** 3) / root - 1)).toBeLessThan(1e-15);
+  });
+});
