@@ -27,8 +27,11 @@ export function eventText(event: RunEvent, terminal: Pick<Terminal, 'paint'>): s
   return plainText(`${word} ${event.message}`);
 }
 
-/** What a person wants to know after a run: counts at each step, key figures with units, what was assumed. */
-export function summaryLines(record: RunRecord): string[] {
+/**
+ * What a person wants to know after a run: counts at each step, key figures with units, what was assumed. Warnings
+ * that were said while the work went on are not said again; all of them stand in run.json and the report.
+ */
+export function summaryLines(record: RunRecord, alreadySaid: ReadonlySet<string> = new Set()): string[] {
   const { counts, figures } = record;
   const lines = [record.run, ''];
   for (const { name, count, share, of, inner } of countLines(counts)) {
@@ -48,7 +51,8 @@ export function summaryLines(record: RunRecord): string[] {
     `${'Pathline length, median'.padEnd(34)}${formatNumber(figures.medianPathlineSamples).padStart(13)}  samples`,
   );
   if (record.assumptions.length > 0) lines.push('', ...record.assumptions.map((line) => `assumed: ${line}`));
-  if (record.warnings.length > 0) lines.push('', ...record.warnings.map((line) => `warning: ${line}`));
+  const warnings = record.warnings.filter((line) => !alreadySaid.has(line));
+  if (warnings.length > 0) lines.push('', ...warnings.map((line) => `warning: ${line}`));
   return lines.map(plainText);
 }
 

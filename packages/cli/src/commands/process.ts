@@ -55,9 +55,16 @@ async function runProcess(inputs: readonly string[], args: Args, terminal: Termi
   }
   const out = single('out', args['out'], 'a folder');
   prepareOutFolder(out, args['replace'] === true);
-  const record = await longWork(terminal, quiet, (hooks) => processRun({ run, files, out }, hooks));
+  const said = new Set<string>();
+  const record = await longWork(terminal, quiet, (hooks) => {
+    const onEvent: typeof hooks.onEvent = (event) => {
+      said.add(event.message);
+      hooks.onEvent(event);
+    };
+    return processRun({ run, files, out }, { ...hooks, onEvent });
+  });
   if (quiet) return EXIT.done;
-  for (const line of [...summaryLines(record), ...nextSteps(out)]) terminal.result(line);
+  for (const line of [...summaryLines(record, said), ...nextSteps(out)]) terminal.result(line);
   return EXIT.done;
 }
 

@@ -96,11 +96,17 @@ export function setAsideTable(counts: RunCounts): string {
 
 /** Every setting with unit and origin; those not at their default stand out. */
 export function settingsTable(record: RunRecord): string {
-  const rows = record.settings.map(({ key, value, unit, origin }) => ({
-    cells: [key, settingText(value), unit === null ? '' : formatUnit(unit), origin],
-    look: origin === 'default' ? undefined : 'changed',
-  }));
-  return table(['setting', 'value', 'unit', 'from'], rows);
+  // What nobody set and has no default of its own would fill half the table with "none".
+  const unset = record.settings.filter(({ value, origin }) => value === null && origin === 'default');
+  const rows = record.settings
+    .filter((setting) => !unset.includes(setting))
+    .map(({ key, value, unit, origin }) => ({
+      cells: [key, settingText(value), unit === null ? '' : formatUnit(unit), origin],
+      look: origin === 'default' ? undefined : 'changed',
+    }));
+  const rest =
+    unset.length === 0 ? '' : `<p class="quiet">Not set: ${escapeText(unset.map(({ key }) => key).join(', '))}.</p>`;
+  return table(['setting', 'value', 'unit', 'from'], rows) + rest;
 }
 
 function settingText(value: RunRecord['settings'][number]['value']): string {
