@@ -13,7 +13,8 @@ export type FaultOperations = {
   'crash-in-promise': { args: null; value: never };
   exit: { args: { exitCode: number }; value: never };
   'exhaust-heap': { args: null; value: never };
-  'exhaust-buffers': { args: null; value: number };
+  'exhaust-buffers': { args: { typed: boolean }; value: number };
+  'wrong-length': { args: null; value: number };
   'return-function': { args: null; value: () => number };
 };
 

@@ -65,7 +65,11 @@ const bodies = {
     const kept = [];
     for (;;) kept.push(new Array(1000).fill(kept.length));
   },
-  'exhaust-buffers': () => ({ value: new ArrayBuffer(2 ** 46).byteLength, transfer: [] }),
+  'exhaust-buffers': ({ typed }) => {
+    const bytes = typed ? new Float64Array(2 ** 33).byteLength : new ArrayBuffer(2 ** 46).byteLength;
+    return { value: bytes, transfer: [] };
+  },
+  'wrong-length': () => ({ value: new Float64Array(-1).byteLength, transfer: [] }),
   'return-function': () => ({ value: () => 1, transfer: [] }),
 };
 

@@ -48,7 +48,12 @@ describe('a worker that fails', () => {
 
   it('gets no memory for an array, and lives on', async () => {
     const client = start();
-    await expect(client.run('exhaust-buffers', null)).rejects.toMatchObject({ code: 'worker/out-of-memory' });
+    for (const typed of [false, true]) {
+      const call = client.run('exhaust-buffers', { typed });
+      await expect(call).rejects.toMatchObject({ code: 'worker/out-of-memory' });
+    }
+    // A wrong length is no lack of memory.
+    await expect(client.run('wrong-length', null)).rejects.toMatchObject({ code: 'run/unexpected' });
     await expect(client.run('spin', { milliseconds: 1, breathes: true })).resolves.toBeGreaterThan(0);
   });
 

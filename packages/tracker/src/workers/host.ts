@@ -85,10 +85,16 @@ function throttledProgress(post: (notice: Notice) => void, call: number): RunCon
   };
 }
 
-/** An array that the engine could not allocate is lack of memory, though the worker lives on. Wording of V8, SpiderMonkey and WebKit. */
+/**
+ * What engines say of an array they could not allocate (V8, SpiderMonkey, WebKit). A typed array of 2^30 or more
+ * elements that V8 calls invalid is one too long for it; a short or negative length would be a mistake of ours.
+ */
+const NO_ROOM = /allocation (failed|size overflow)|out of memory|invalid typed array length: \d{10,}/i;
+
+/** Lack of memory for an array as a coded error; the worker lives on. Other errors as they are. */
 function asOutOfMemory(error: unknown): unknown {
   const text = error instanceof RangeError ? error.message : '';
-  if (!/allocation (failed|size overflow)|out of memory/i.test(text)) return error;
+  if (!NO_ROOM.test(text)) return error;
   return new WakeloomError(
     'worker/out-of-memory',
     `memory of a worker: got none for an array (${text}), expected room; use larger bins, a lower --ram-limit or a computer with more memory`,

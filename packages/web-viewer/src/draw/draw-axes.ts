@@ -24,7 +24,7 @@ export function drawAxes(canvas: CanvasRenderingContext2D, frame: PlotFrame, uni
 
   canvas.textAlign = 'center';
   canvas.textBaseline = 'top';
-  const xTicks = niceTicks(bounds.left, bounds.right, Math.max(2, Math.round(width / 90)));
+  const xTicks = niceTicks(bounds.left, bounds.right, Math.max(4, Math.round(width / 90)));
   for (const value of xTicks.values) {
     const x = Math.round(toCanvasX(frame, value)) + 0.5;
     canvas.beginPath();
@@ -35,7 +35,7 @@ export function drawAxes(canvas: CanvasRenderingContext2D, frame: PlotFrame, uni
   }
   canvas.textAlign = 'right';
   canvas.textBaseline = 'middle';
-  const yTicks = niceTicks(bounds.bottom, bounds.top, Math.max(2, Math.round(height / 60)));
+  const yTicks = niceTicks(bounds.bottom, bounds.top, Math.max(3, Math.round(height / 60)));
   for (const value of yTicks.values) {
     const y = Math.round(toCanvasY(frame, value)) + 0.5;
     canvas.beginPath();

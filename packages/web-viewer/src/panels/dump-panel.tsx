@@ -34,8 +34,8 @@ export function DumpPanel({ state }: { state: AppState }) {
             event.currentTarget.value = '';
           }}
         />
-        <strong>Choose the dump, or drop it here</strong>
-        <span>Particle positions of one run: text, gzip, zstd, NPY, HDF5 or Parquet</span>
+        <strong>Choose or drop the dump</strong>
+        <span>Positions of one run: text (also gzip, zstd), NPY, HDF5 or Parquet</span>
       </label>
       {chosen.length > 0 && (
         <ul class="chosen" aria-label="Files of the dump">

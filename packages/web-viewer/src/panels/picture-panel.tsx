@@ -25,8 +25,11 @@ export function PicturePanel({ preview, lengthUnit, velocityUnit }: PictureProps
     if (canvas !== null && width > 0) paint(canvas, preview, width, lengthUnit, scale);
   }, [preview, width, dark]);
 
-  const shown = preview.rowSize.length;
-  const part = preview.stride === 1 ? 'All' : `Every ${preview.stride}th of`;
+  const all = formatCount(preview.pathlines);
+  const share =
+    preview.stride === 1
+      ? `All ${all} pathlines`
+      : `One in ${preview.stride} of ${all} pathlines (${formatCount(preview.rowSize.length)})`;
   return (
     <figure ref={holderRef}>
       <canvas
@@ -44,10 +47,7 @@ export function PicturePanel({ preview, lengthUnit, velocityUnit }: PictureProps
           />
           <span>{formatQuantity(scale.high, velocityUnit)}</span>
         </span>
-        <span>
-          {part} {formatCount(preview.pathlines)} pathlines{preview.stride === 1 ? '' : ` (${formatCount(shown)})`},
-          coloured by speed; faster ones take the last colour
-        </span>
+        <span>{share}, coloured by speed; faster ones take the last colour</span>
       </figcaption>
     </figure>
   );

@@ -6,27 +6,29 @@ export function SettingsPanel({ state }: { state: AppState }) {
   return (
     <section aria-labelledby="settings-title">
       <h2 id="settings-title">Settings</h2>
-      {SETTING_FIELDS.map((field) => (
-        <Field key={field.option} field={field} state={state} />
-      ))}
-      <div class="field">
-        <label for="field-threads">Worker threads</label>
-        <input
-          id="field-threads"
-          type="number"
-          min={1}
-          max={64}
-          aria-describedby="hint-threads"
-          disabled={state.busy.value}
-          value={state.threads.value}
-          onInput={(event) => {
-            const count = Math.round(event.currentTarget.valueAsNumber);
-            if (count >= 1) state.threads.value = Math.min(64, count);
-          }}
-        />
-        <p id="hint-threads" class="hint">
-          the result does not depend on it
-        </p>
+      <div class="fields">
+        {SETTING_FIELDS.map((field) => (
+          <Field key={field.option} field={field} state={state} />
+        ))}
+        <div class="field">
+          <label for="field-threads">Worker threads</label>
+          <input
+            id="field-threads"
+            type="number"
+            min={1}
+            max={64}
+            aria-describedby="hint-threads"
+            disabled={state.busy.value}
+            value={state.threads.value}
+            onInput={(event) => {
+              const count = Math.round(event.currentTarget.valueAsNumber);
+              if (count >= 1) state.threads.value = Math.min(64, count);
+            }}
+          />
+          <p id="hint-threads" class="hint">
+            the result does not depend on it
+          </p>
+        </div>
       </div>
     </section>
   );

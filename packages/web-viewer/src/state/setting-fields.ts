@@ -11,21 +11,16 @@ export interface SettingField {
 
 /** Fields in the order of the form. */
 export const SETTING_FIELDS: readonly SettingField[] = [
-  { option: 'rate', label: 'Frame rate', hint: 'such as 500 Hz; empty: times in frames', start: '' },
-  { option: 'scale', label: 'Scale', hint: 'length per px, such as 0.05 mm/px; empty: lengths in px', start: '' },
-  {
-    option: 'bin',
-    label: 'Bin of the grid',
-    hint: 'edge length, such as 2 mm; empty: chosen from the data',
-    start: '',
-  },
+  { option: 'rate', label: 'Frame rate', hint: 'such as 500 Hz; empty: time in frames', start: '' },
+  { option: 'scale', label: 'Scale', hint: 'such as 0.05 mm/px; empty: lengths in px', start: '' },
+  { option: 'bin', label: 'Bin of the grid', hint: 'such as 2 mm; empty: chosen from the data', start: '' },
   {
     option: 'y-axis',
-    label: 'The y axis of the dump points',
-    hint: 'image coordinates mostly point down; results have y up',
+    label: 'Dump’s y axis',
+    hint: 'images: mostly down',
     choices: [
-      { value: 'up', words: 'up' },
-      { value: 'down', words: 'down' },
+      { value: 'up', words: 'points up' },
+      { value: 'down', words: 'points down' },
     ],
     start: 'up',
   },
