@@ -46,13 +46,14 @@ export interface WakeData {
 }
 
 const MAGIC = 'wakeloom wake 1\n';
-/** One count of the stored whole numbers, over the stream's speed: 2^-13 spans +-4 speeds. */
-const COUNT = 2 ** -13;
+/** One count of the stored whole numbers, over the stream's speed: 2^-14 spans +-2 speeds. */
+const COUNT = 2 ** -14;
 
 /**
  * File bytes before compression: 16 bytes of magic, the length of the metadata (uint32, little-endian), the metadata
  * as UTF-8 JSON padded with blanks to an even length, then int16 little-endian, field after field, y slowest, in
- * counts of 2^-13 of the stream's speed (rounding error at most 6.1e-5 of it).
+ * counts of 2^-14 of the stream's speed (rounding error at most 3.1e-5 of it). Throws `usage/wake-field` for values
+ * beyond +-2.
  */
 export function encodeWake(meta: WakeMeta, fields: readonly ArrayLike<number>[]): Uint8Array {
   let json = JSON.stringify(meta);
@@ -67,7 +68,15 @@ export function encodeWake(meta: WakeMeta, fields: readonly ArrayLike<number>[])
   bytes.set(head, MAGIC.length + 4);
   let at = start;
   for (const field of fields) {
-    for (let k = 0; k < values; k++, at += 2) view.setInt16(at, Math.round(field[k] / COUNT), true);
+    for (let k = 0; k < values; k++, at += 2) {
+      if (!(Math.abs(field[k]) < 2 - COUNT)) {
+        throw new WakeloomError(
+          'usage/wake-field',
+          `wake field: got ${field[k]}, expected at most 2 speeds of the stream`,
+        );
+      }
+      view.setInt16(at, Math.round(field[k] / COUNT), true);
+    }
   }
   return bytes;
 }

@@ -122,11 +122,13 @@ function splineField(
       for (let j = 0; j < meta.rows; j++) {
         for (let i = 0; i < across; i++) {
           whole[(middle + j) * across + i] = half[j * across + i];
-          if (j > 0) whole[(middle - j) * across + i] = sign * half[j * across + i];
+        }
+        prefilter(whole, (middle + j) * across, 1, 1, across);
+        for (let i = 0; j > 0 && i < across; i++) {
+          whole[(middle - j) * across + i] = sign * whole[(middle + j) * across + i];
         }
       }
-      for (let j = 0; j < rows; j++) prefilter(whole, j * across, 1, across);
-      for (let i = 0; i < across; i++) prefilter(whole, i, across, rows);
+      prefilter(whole, 0, across, across, rows);
       // Sampled over a period, a spline through a harmonic has that harmonic's coefficients over (2 + cos) / 3.
       const response = (2 + Math.cos((2 * Math.PI * harmonic) / PHASES)) / 3;
       for (let k = 0; k < PHASES; k++) {
@@ -135,11 +137,23 @@ function splineField(
         if (factor === 0) continue;
         // Phase k stands at k + 1, since the spline at phase k reaches from k - 1 to k + 2.
         const plane = (k + 1) * planeLength;
-        for (let j = 0; j < rows; j++) {
+        for (let j = middle; j < rows; j++) {
           let to = 2 * (plane + (j + 1) * lineLength + 1) + component;
           const line = j * across;
           for (let i = 0; i < across; i++, to += 2) spline[to] += factor * whole[line + i];
         }
+      }
+    }
+  }
+  for (let k = 0; k < PHASES; k++) {
+    // The lower half of the plane is the upper one half a period on, v with the other sign.
+    const other = ((k + PHASES / 2) % PHASES) + 1;
+    for (let j = 1; j <= middle; j++) {
+      let to = 2 * ((k + 1) * planeLength + (middle - j + 1) * lineLength + 1);
+      let from = 2 * (other * planeLength + (middle + j + 1) * lineLength + 1);
+      for (let i = 0; i < across; i++, to += 2, from += 2) {
+        spline[to] = spline[from];
+        spline[to + 1] = -spline[from + 1];
       }
     }
   }
@@ -165,15 +179,28 @@ function mirrorBorder(plane: Float32Array, across: number, rows: number): void {
 /** Pole of the cubic spline's inverse filter, sqrt(3) - 2 (Unser 1999). */
 const POLE = Math.sqrt(3) - 2;
 
-/** Turns samples into cubic spline coefficients in place, mirrored at both ends (Unser 1999). */
-function prefilter(values: Float64Array, start: number, stride: number, length: number): void {
+/**
+ * Turns samples into cubic spline coefficients in place, mirrored at both ends (Unser 1999): `lanes` neighbouring
+ * sequences at once, each of `length` values `stride` apart, the first beginning at `start`.
+ */
+function prefilter(values: Float64Array, start: number, stride: number, lanes: number, length: number): void {
   const last = start + (length - 1) * stride;
-  let sum = 0;
-  let power = 1;
-  for (let k = 0; k < Math.min(length, 40); k++, power *= POLE) sum += power * values[start + k * stride];
-  values[start] = sum;
-  for (let at = start + stride; at <= last; at += stride) values[at] += POLE * values[at - stride];
-  values[last] = (POLE / (POLE * POLE - 1)) * (values[last] + POLE * values[last - stride]);
-  for (let at = last - stride; at >= start; at -= stride) values[at] = POLE * (values[at + stride] - values[at]);
-  for (let at = start; at <= last; at += stride) values[at] *= 6;
+  for (let lane = 0; lane < lanes; lane++) {
+    let sum = 0;
+    let power = 1;
+    for (let k = 0; k < Math.min(length, 40); k++, power *= POLE) sum += power * values[start + lane + k * stride];
+    values[start + lane] = sum;
+  }
+  for (let row = start + stride; row <= last; row += stride) {
+    for (let at = row; at < row + lanes; at++) values[at] += POLE * values[at - stride];
+  }
+  for (let at = last; at < last + lanes; at++) {
+    values[at] = (POLE / (POLE * POLE - 1)) * (values[at] + POLE * values[at - stride]);
+  }
+  for (let row = last - stride; row >= start; row -= stride) {
+    for (let at = row; at < row + lanes; at++) values[at] = POLE * (values[at + stride] - values[at]);
+  }
+  for (let row = start; row <= last; row += stride) {
+    for (let at = row; at < row + lanes; at++) values[at] *= 6;
+  }
 }
