@@ -5,6 +5,7 @@ import { createContext, FLAG } from '@wakeloom/tracker';
 import type { Dims } from '@wakeloom/tracker/core/columns';
 import type { ResultPlace } from '@wakeloom/tracker/core/result-place';
 import { openNodeResultPlace } from '@wakeloom/tracker/node/result-place-node';
+import { type PathlineSource, pathlineTable } from '@wakeloom/tracker/store/exports/pathline-table';
 import type { PathlineRows } from '@wakeloom/tracker/store/pathline-rows';
 import { isCompleteResult, openResult } from '@wakeloom/tracker/store/read-result';
 import { openResultWriter } from '@wakeloom/tracker/store/result-writer';
@@ -154,8 +155,11 @@ it('writes neither file when none are kept, and leaves no scratch behind', async
   result.close();
 });
 
-it('leaves the acceleration of image pairs out', async () => {
-  const { finished } = await makeResult(place, MADE, { pairs: true });
+it('leaves the acceleration of image pairs out, and calls no single sample stuck', async () => {
+  const single = { frames: 4, particles: 20, life: 1 };
+  const { finished } = await makeResult(place, single, { pairs: true, shortest: 1 });
+  expect(finished.samples).toBe(80);
+  expect(finished.flagged.stuck).toBe(0);
   const result = await openResult(place);
   expect(result.pathlines?.variables.filter((name) => /^a[xyz]/.test(name))).toEqual([]);
   expect(finished.links).toBe(finished.samples);
@@ -239,6 +243,20 @@ it('hands out flags as they end up in the file', async () => {
   };
   const { finished } = await makeResult(place, MADE, { working: SMALL }, count);
   expect(stuck).toBe(finished.flagged.stuck);
+});
+
+it('is read by the exporters as it stands', async () => {
+  await makeResult(place, MADE);
+  const result = await openResult(place);
+  const source: PathlineSource | null = result.pathlines;
+  const table = source === null ? null : pathlineTable(source, null);
+  expect(table?.rows).toBe(result.pathlines?.samples);
+  const column = table?.columns.findIndex(({ name }) => name === 'pathline') ?? -1;
+  const last = result.pathlines?.number.at(-1);
+  const rows = result.pathlines?.rowSize.at(-1) ?? 0;
+  const numbers = await table?.read(column, (table?.rows ?? 0) - rows, table?.rows ?? 0);
+  expect([...(numbers ?? [])]).toEqual(new Array(rows).fill(last));
+  result.close();
 });
 
 it('refuses blocks out of frame order and rows without a pathline', async () => {

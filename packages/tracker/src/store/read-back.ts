@@ -16,7 +16,8 @@ export async function readBackDigest(place: ResultPlace, file: string, context: 
   const { hdf5 } = place;
   const handle = new hdf5.File(place.hdf5Path(file), 'r');
   if (handle.file_id < 0n) return 'unreadable';
-  const window = hdf5.module._malloc(WINDOW);
+  let windowBytes = WINDOW;
+  let window = hdf5.module._malloc(windowBytes);
   try {
     const ledger = openLedger(place.hasher);
     readAttributes(handle, '/', ledger);
@@ -34,21 +35,23 @@ export async function readBackDigest(place: ResultPlace, file: string, context: 
       const digest = ledger.variable(name, type, shape, dimensions);
       const rest = shape.slice(1);
       const rowBytes = size * rest.reduce((product, each) => product * each, 1);
-      const step = Math.max(1, Math.floor(WINDOW / rowBytes));
-      const big = rowBytes > WINDOW ? hdf5.module._malloc(rowBytes) : 0;
-      const address = big === 0 ? window : big;
+      const step = Math.max(1, Math.floor(windowBytes / rowBytes));
+      if (rowBytes > windowBytes) {
+        hdf5.module._free(window);
+        windowBytes = rowBytes;
+        window = hdf5.module._malloc(windowBytes);
+      }
       for (let row = 0; row < shape[0]; row += step) {
         const rows = Math.min(step, shape[0] - row);
         const count = [rows, ...rest].map(BigInt);
         const offset = count.map((_, i) => BigInt(i === 0 ? row : 0));
         const stride = count.map(() => 1n);
         // A read that fails must not leave the bytes of the window before it in place.
-        hdf5.module.HEAPU8[address] ^= 0xff;
-        hdf5.module.get_dataset_data(handle.file_id, `/${name}`, count, offset, stride, BigInt(address));
-        digest.update(hdf5.module.HEAPU8.subarray(address, address + rows * rowBytes));
+        hdf5.module.HEAPU8[window] ^= 0xff;
+        hdf5.module.get_dataset_data(handle.file_id, `/${name}`, count, offset, stride, BigInt(window));
+        digest.update(hdf5.module.HEAPU8.subarray(window, window + rows * rowBytes));
         await context.breathe();
       }
-      if (big !== 0) hdf5.module._free(big);
       digest.end();
       readAttributes(dataset, name, ledger);
     }

@@ -159,10 +159,16 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     }
     open.discard();
     spill = null;
-    const { medianSamples, next, final, ...counted } = numbering;
-    void [next, final];
-    const links = pairs ? numbering.samples : numbering.samples - numbering.pathlines;
-    return { ...counted, links, medianPathlineSamples: medianSamples, ...statistics.figures() };
+    const { samples, pathlines, shortFragments, shortFragmentDetections } = numbering;
+    return {
+      samples,
+      pathlines,
+      shortFragments,
+      shortFragmentDetections,
+      links: pairs ? samples : samples - pathlines,
+      medianPathlineSamples: numbering.medianSamples,
+      ...statistics.figures(),
+    };
   };
 
   const complete = async (record: Omit<RunRecord, 'digest'>, report: ReportText, logLines: readonly string[]) => {

@@ -7,6 +7,7 @@ export interface StuckRule {
   readonly factor: number;
   /** Standard deviation of the position noise per axis, length unit; NaN: unknown, nothing is stuck. */
   readonly noise: readonly [number, number, number];
+  /** Fewest samples that can tell; one sample never does. */
   readonly shortest: number;
 }
 
@@ -20,7 +21,7 @@ export function flagStuck(rows: PathlineRows, rule: StuckRule, stuck: Uint8Array
   for (let k = 0; k + 1 < rows.offsets.length; k++) {
     const first = rows.offsets[k];
     const end = rows.offsets[k + 1];
-    if (end - first < rule.shortest) continue;
+    if (end - first < Math.max(2, rule.shortest)) continue;
     if (!axes.every((axis, index) => extent(axis, first, end) <= rule.factor * rule.noise[index])) continue;
     stuck[rows.firstPathline + k] = 1;
     for (let i = first; i < end; i++) rows.flags[i] |= FLAG.stuck;
