@@ -46,6 +46,20 @@ describe('reportHtml', () => {
     expect(text).not.toContain('facility:');
   });
 
+  it('names what nobody set in one line, and marks what is not at its default', () => {
+    const record = sampleRecord({
+      settings: [
+        { key: 'dump.dataset', value: null, unit: null, origin: 'default' },
+        { key: 'linking.bridge', value: 2, unit: null, origin: 'default' },
+        { key: 'dump.columns.z', value: null, unit: null, origin: 'option' },
+      ],
+    });
+    const page = reportHtml(record, sampleReportData());
+    expect(readable(page)).toContain('Not set: dump.dataset.');
+    expect(page).toContain('<tr><th scope="row">linking.bridge</th><td>2</td>');
+    expect(page).toContain('<tr class="changed"><th scope="row">dump.columns.z</th><td>none</td>');
+  });
+
   it('says what it is not, and warns of lasers', () => {
     expect(text).toContain(NO_CERTIFICATION);
     expect(text).toContain(LASER_CAUTION);

@@ -77,7 +77,7 @@ export function countsTable(counts: RunCounts): string {
     cells: [name, { number: formatCount(count) }, { number: share === null ? '' : formatShare(share) }, of],
     look: inner ? 'step' : undefined,
   }));
-  return table(['step', 'count', 'share', ''], rows);
+  return table(['step', 'count', 'share', 'of what'], rows);
 }
 
 /** Rows set aside by reason with the first few of each, or a sentence that there were none. */

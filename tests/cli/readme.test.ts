@@ -1,0 +1,68 @@
+import { existsSync, readFileSync } from 'node:fs';
+import { fileURLToPath } from 'node:url';
+import { parseRunSheet } from '@wakeloom/tracker/run/run-sheet';
+import { describe, expect, it } from 'vitest';
+import { DEMO } from '../../packages/cli/src/commands/demo.js';
+import { EXPORT } from '../../packages/cli/src/commands/export.js';
+import { PROCESS } from '../../packages/cli/src/commands/process.js';
+import { givenSettings } from '../../packages/cli/src/options.js';
+import { parseVerb, verbParser } from '../../packages/cli/src/verbs.js';
+
+const root = fileURLToPath(new URL('../../', import.meta.url));
+const readme = readFileSync(`${root}README.md`, 'utf8');
+const verbs = [PROCESS, EXPORT, DEMO];
+
+/** Words of a line as a shell splits them: blanks, double quotes. */
+function shellWords(line: string): string[] {
+  return (line.match(/"[^"]*"|[^\s"]+/g) ?? []).map((word) => word.replace(/^"|"$/g, ''));
+}
+
+/** Command lines of the README and of the verbs' own help, without redirections. */
+const commands = [readme, ...verbs.map(({ usage }) => usage)]
+  .flatMap((text) => [...text.matchAll(/^\s*(?:npx )?wakeloom ([a-z]+ .*)$/gm)].map(([, words]) => words!))
+  .filter((words) => !/\[|\bDIR\b|\bVERB\b/.test(words))
+  .map((words) => words.replace(/ > \S+$/, ''));
+
+describe('the README', () => {
+  it('holds commands to look at', () => {
+    expect(commands.length).toBeGreaterThanOrEqual(12);
+  });
+
+  it.each(commands)('wakeloom %s: is understood', (line) => {
+    const [name, ...words] = shellWords(line);
+    const verb = verbs.find((candidate) => candidate.name === name);
+    expect(verb, name).toBeDefined();
+    const parsed = parseVerb(verbParser(verb!, { columns: 80 }), words);
+    if (verb === PROCESS) {
+      expect(parsed.words).toHaveLength(1);
+      expect(Object.keys(givenSettings(parsed.args)).length).toBe(
+        words.filter((word) => word.startsWith('--') && !/^--(out|replace|quiet)$/.test(word)).length,
+      );
+      expect(parsed.args['out']).toBeTypeOf('string');
+    }
+    if (verb === EXPORT) expect(parsed.words[1]).toMatch(/^(pathlines|grid)$/);
+  });
+
+  it('shows a run sheet that is valid', () => {
+    const sheet = /```yaml\n([\s\S]*?)```/.exec(readme)![1]!;
+    expect(parseRunSheet(sheet, 'README.md').values['run']).toBe('cylinder, 30 mm/s');
+  });
+
+  it('links to files that are there', () => {
+    const links = [...readme.matchAll(/\]\((?!https?:)([^)#]+)\)/g)].map(([, path]) => path!);
+    expect(links.length).toBeGreaterThan(0);
+    for (const path of links) expect([path, existsSync(`${root}${path}`)]).toEqual([path, true]);
+  });
+
+  it('names every runtime package of the workspace with its version and licence', () => {
+    for (const name of ['tracker', 'cli', 'web-viewer']) {
+      const { dependencies } = JSON.parse(readFileSync(`${root}packages/${name}/package.json`, 'utf8')) as {
+        dependencies: Record<string, string>;
+      };
+      for (const [dependency, version] of Object.entries(dependencies)) {
+        if (version.startsWith('workspace:')) continue;
+        expect(readme).toContain(`${dependency} ${version}`);
+      }
+    }
+  });
+});
