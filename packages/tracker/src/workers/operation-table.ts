@@ -45,7 +45,10 @@ export interface PathlinePreview {
   readonly samples: number;
 }
 
-/** What a worker of a page answers besides: its result folder lies in the worker's memory. */
+/**
+ * What a worker of a page answers besides: its result folder lies in the worker's memory, one at a time, and a run
+ * that needs more than it may hold ends with `store/memory-full` or `store/scratch-full`.
+ */
 export type PageOperations = RunOperations & {
   /** Settings from options by their names on the command line. Code `usage/settings`. */
   resolve: {

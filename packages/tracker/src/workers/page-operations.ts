@@ -1,4 +1,4 @@
-import { WakeloomError } from '../core/errors.js';
+import { isWakeloomError, WakeloomError } from '../core/errors.js';
 import type { OperationBodies } from './host.js';
 import type { PageOperations, PathlinePreview } from './operation-table.js';
 import { type Platform, runBodies } from './operations.js';
@@ -20,9 +20,29 @@ function finished(platform: PagePlatform): MemoryResultPlace {
   throw new WakeloomError('store/not-a-result', 'result: got none, expected a finished run; process a dump first');
 }
 
+/** A full folder in memory is no full disk: other words and another way out. Code `store/memory-full`. */
+function asMemoryFull(error: unknown): unknown {
+  if (!isWakeloomError(error) || error.code !== 'store/disk-full') return error;
+  const { needBytes = null, freeBytes = null } = error.details;
+  return new WakeloomError(
+    'store/memory-full',
+    `result in the memory of the page: got ${freeBytes} bytes free, expected at least ${needBytes}; keep fewer pathlines or frames, or process this run with the wakeloom command, which writes to the disk`,
+    { needBytes, freeBytes },
+    error,
+  );
+}
+
 /** Bodies of what a page's worker answers. */
 export const pageBodies: OperationBodies<PageOperations, PagePlatform> = {
   ...runBodies,
+
+  async process(args, context, platform) {
+    try {
+      return await runBodies.process(args, context, platform);
+    } catch (error) {
+      throw asMemoryFull(error);
+    }
+  },
 
   async resolve({ options, dumpFiles }) {
     const { resolveRun } = await import('../run/resolve.js');
