@@ -28,6 +28,24 @@ it('reads columns by name, one row group or many, compressed or not', async () =
   }
 });
 
+it('reads dictionary and byte-stream-split pages, and refuses an encoding it does not know by a code', async () => {
+  const encoded = (
+    encoding: 'PLAIN' | 'RLE_DICTIONARY' | 'BYTE_STREAM_SPLIT' | 'DELTA_BINARY_PACKED',
+    at: readonly number[],
+  ) => parquet(TABLE.map((c, i) => (at.includes(i) ? { ...c, encoding } : c)));
+  for (const bytes of [
+    encoded('RLE_DICTIONARY', [0, 4]),
+    encoded('BYTE_STREAM_SPLIT', [2, 3]),
+    encoded('PLAIN', [0, 2, 3, 4]),
+  ]) {
+    expect(flatRows((await readDump([memorySource('run.parquet', bytes)])).blocks).every(whole)).toBe(true);
+  }
+  await expect(readDump([memorySource('run.parquet', encoded('DELTA_BINARY_PACKED', [0]))])).rejects.toMatchObject({
+    code: 'dump/parquet-encoding',
+    message: expect.stringContaining('"frame"'),
+  });
+});
+
 it('takes a missing value for NaN', async () => {
   const bytes = parquet([
     { name: 'frame', data: [0, 0, 1], type: 'INT32' },

@@ -1,10 +1,10 @@
-import { decompress } from 'fzstd';
-import { type FileMetaData, parquetMetadataAsync, parquetRead, parquetSchema } from 'hyparquet';
+import { type FileMetaData, parquetMetadataAsync, parquetSchema, type SchemaTree } from 'hyparquet';
 import type { ByteSource } from '../core/bytes.js';
 import { isWakeloomError, WakeloomError } from '../core/errors.js';
 import { readFrom } from './byte-stream.js';
 import { planColumns } from './column-plan.js';
 import type { DumpPass } from './dump-pass.js';
+import { decodeParquetColumn, isParquetNumber, type ParquetChunk, UnknownEncoding } from './parquet-column.js';
 import { BATCH_ROWS } from './row-batch.js';
 
 /** Rows of one group held at a time; larger groups would need more memory than a reading should take. */
@@ -12,91 +12,112 @@ const GROUP_ROWS = 1 << 24;
 
 const CODECS = new Set(['UNCOMPRESSED', 'SNAPPY', 'ZSTD']);
 
+/** Meanings that are numbers as they stand; a date, a decimal or an enumeration is none. */
+const PLAIN_MEANING = /^(U?INT_(8|16|32|64))$/;
+
 /**
  * Reads a Parquet file with flat numeric columns, row group by row group; a missing value is NaN. Compression: none,
- * snappy, zstd. Yields whenever `pass.batch` holds rows. Memory: the wanted columns of one row group.
+ * snappy, zstd; encodings as in parquet-column.ts. Yields whenever `pass.batch` holds rows. Memory: the wanted
+ * columns of one row group. The footer is read by hyparquet, the pages by our own decoder: that of the library loops
+ * or fills memory without bound on damaged pages.
  *
- * Throws `dump/corrupt-parquet`, `dump/parquet-codec`, `dump/parquet-group`, `dump/column-not-numeric`.
+ * Throws `dump/corrupt-parquet`, `dump/parquet-codec`, `dump/parquet-encoding`, `dump/parquet-group`,
+ * `dump/column-not-numeric`.
  */
 export async function* readParquet(source: ByteSource, pass: DumpPass): AsyncGenerator<void> {
-  const name = source.name;
-  const file = {
-    byteLength: source.size,
-    slice: async (start: number, end: number = source.size) => {
-      if (!(start >= 0 && end >= start && end <= source.size)) throw new Error(`bytes ${start} to ${end} do not exist`);
-      const bytes = new Uint8Array(end - start);
-      if ((await readFrom(source, start, bytes)) !== bytes.length) throw new Error(`the file ends before byte ${end}`);
-      return bytes.buffer;
-    },
+  const file = source.name;
+  const slice = async (start: number, end: number = source.size) => {
+    if (!(start >= 0 && end >= start && end <= source.size)) throw new Error(`bytes ${start} to ${end} do not exist`);
+    const bytes = new Uint8Array(end - start);
+    if ((await readFrom(source, start, bytes)) !== bytes.length) throw new Error(`the file ends before byte ${end}`);
+    return bytes;
   };
-  const metadata = await guard(name, async () => parquetMetadataAsync(file, { geoparquet: false }));
-  const names = await guard(name, async () => parquetSchema(metadata).children.map((child) => child.element.name));
+  const buffer = {
+    byteLength: source.size,
+    slice: async (start: number, end?: number) => (await slice(start, end)).buffer,
+  };
+  const metadata = await guard(file, () => parquetMetadataAsync(buffer, { geoparquet: false }));
+  const schema = await guard(file, async () => parquetSchema(metadata).children);
+  const names = schema.map((child) => String(child.element.name));
   const plan = planColumns(
-    {
-      file: name,
-      names,
-      count: names.length,
-      firstIsWhole: false,
-      needsFrame: pass.settings.layout === 'one-file-a-run',
-    },
+    { file, names, count: names.length, firstIsWhole: false, needsFrame: pass.settings.layout === 'one-file-a-run' },
     pass.settings.columns,
   );
-  pass.agreeColumns(name, plan);
-  const wanted = [...plan.index].flatMap((at, role) => (at < 0 ? [] : [{ role, name: names[at] }]));
-  const columns = wanted.map((column) => column.name);
-  await guard(name, async () => refuse(metadata, columns, name));
+  pass.agreeColumns(file, plan);
+  const wanted = [...plan.index].flatMap((at, role) => (at < 0 ? [] : [{ role, name: names[at], tree: schema[at] }]));
+  await guard(file, async () => {
+    refuseGroups(metadata, file);
+    for (const { name, tree } of wanted) refuseColumn(name, tree, file);
+  });
   const total = Number(metadata.num_rows);
-  const { batch, ledger } = pass;
-  let groupStart = 0;
+  const { batch, ledger, context } = pass;
   for (const group of metadata.row_groups) {
     const rows = Number(group.num_rows);
-    const held = new Map(columns.map((column) => [column, new Float64Array(rows)]));
-    const got = new Map(columns.map((column) => [column, 0]));
-    await guard(name, async () => {
-      let fault: unknown = null;
-      const range = { rowStart: groupStart, rowEnd: groupStart + rows };
-      await parquetRead({
-        file,
-        metadata,
-        columns,
-        ...range,
-        compressors: { ZSTD: (input) => decompress(input) },
-        onChunk: ({ columnName, columnData, rowStart }) => {
-          // What is thrown here would get lost in the library's own promise.
-          try {
-            const into = held.get(columnName);
-            if (into === undefined) return;
-            got.set(
-              columnName,
-              (got.get(columnName) ?? 0) + copy(columnData, rowStart - groupStart, into, columnName, name),
-            );
-          } catch (error) {
-            fault ??= error;
-          }
-        },
-      });
-      if (fault !== null) throw fault;
-      for (const [column, count] of got) {
-        if (count !== rows) throw new Error(`${count} values of ${column} instead of ${rows}`);
-      }
-    });
+    const columns: Float64Array[] = [];
+    for (const { name, tree } of wanted) {
+      await context.breathe();
+      columns.push(await guard(file, () => readColumn(group, name, tree, rows, slice, file)));
+    }
     for (let row = 0; row < rows; row += BATCH_ROWS) {
       const part = Math.min(BATCH_ROWS, rows - row);
-      for (const { role, name: column } of wanted) {
-        batch.columns[role].set((held.get(column) as Float64Array).subarray(row, row + part));
-      }
+      for (const [at, { role }] of wanted.entries()) batch.columns[role].set(columns[at].subarray(row, row + part));
       for (let i = 0; i < part; i++) batch.row[i] = ledger.rowsPresent++;
       batch.line.fill(0, 0, part);
       batch.rows = part;
       pass.advance(Math.round((part / total) * source.size));
       yield;
-      await pass.context.breathe();
+      await context.breathe();
     }
-    groupStart += rows;
   }
 }
 
-function refuse(metadata: FileMetaData, columns: readonly string[], file: string): void {
+async function readColumn(
+  group: FileMetaData['row_groups'][number],
+  name: string,
+  tree: SchemaTree,
+  rows: number,
+  slice: (start: number, end: number) => Promise<Uint8Array>,
+  file: string,
+): Promise<Float64Array> {
+  const meta = group.columns.find((column) => column.meta_data?.path_in_schema[0] === name)?.meta_data;
+  const type = tree.element.type;
+  if (meta === undefined || type === undefined || !isParquetNumber(type) || meta.type !== type) {
+    throw new Error(`a row group without numbers for ${name}`);
+  }
+  if (!CODECS.has(meta.codec)) {
+    throw new WakeloomError(
+      'dump/parquet-codec',
+      `Parquet compression: got ${meta.codec}, expected none, snappy or zstd; write the file with one of these (${file})`,
+      { file, codec: String(meta.codec) },
+    );
+  }
+  const data = Number(meta.data_page_offset);
+  const dictionary = Number(meta.dictionary_page_offset ?? data);
+  // Some writers state an offset of 0 where there is no dictionary.
+  const start = dictionary > 0 ? Math.min(dictionary, data) : data;
+  const bytes = await slice(start, start + Number(meta.total_compressed_size));
+  const values = new Float64Array(rows);
+  const chunk: ParquetChunk = {
+    type,
+    unsigned: String(tree.element.converted_type ?? '').startsWith('UINT'),
+    codec: meta.codec,
+    optional: tree.element.repetition_type === 'OPTIONAL',
+  };
+  try {
+    decodeParquetColumn(bytes, chunk, values);
+  } catch (error) {
+    if (!(error instanceof UnknownEncoding)) throw error;
+    throw new WakeloomError(
+      'dump/parquet-encoding',
+      `Parquet encoding: got encoding ${error.encoding} of "${name}", expected plain, dictionary or byte stream split; write the file with version 1 data pages (${file})`,
+      { file, column: name, encoding: error.encoding },
+      error,
+    );
+  }
+  return values;
+}
+
+function refuseGroups(metadata: FileMetaData, file: string): void {
   let sum = 0;
   for (const group of metadata.row_groups) {
     const rows = Number(group.num_rows);
@@ -109,41 +130,23 @@ function refuse(metadata: FileMetaData, columns: readonly string[], file: string
         { file, rows },
       );
     }
-    for (const { meta_data: column } of group.columns) {
-      if (column === undefined || !columns.includes(column.path_in_schema[0])) continue;
-      if (!CODECS.has(column.codec)) {
-        throw new WakeloomError(
-          'dump/parquet-codec',
-          `Parquet compression: got ${column.codec}, expected none, snappy or zstd; write the file with one of these (${file})`,
-          { file, codec: column.codec },
-        );
-      }
-    }
   }
   if (sum !== Number(metadata.num_rows)) throw new Error(`${sum} rows in groups instead of ${metadata.num_rows}`);
 }
 
-/** Copies what lies within the group; returns how many values. */
-function copy(data: ArrayLike<unknown>, start: number, into: Float64Array, column: string, file: string): number {
-  let copied = 0;
-  for (let i = Math.max(0, -start); i < data.length && start + i < into.length; i++) {
-    const value = data[i];
-    if (typeof value === 'number') into[start + i] = value;
-    else if (typeof value === 'bigint') into[start + i] = Number(value);
-    else if (value === null || value === undefined) into[start + i] = Number.NaN;
-    else {
-      throw new WakeloomError(
-        'dump/column-not-numeric',
-        `column not numeric: got ${typeof value === 'object' ? 'a nested or dated value' : typeof value} in "${column}", expected numbers (${file})`,
-        { file, column },
-      );
-    }
-    copied++;
-  }
-  return copied;
+function refuseColumn(name: string, tree: SchemaTree, file: string): void {
+  const { type, converted_type: meaning, repetition_type: repetition } = tree.element;
+  const flat = tree.children.length === 0 && repetition !== 'REPEATED';
+  const numeric = type !== undefined && isParquetNumber(type) && (meaning === undefined || PLAIN_MEANING.test(meaning));
+  if (flat && numeric) return;
+  throw new WakeloomError(
+    'dump/column-not-numeric',
+    `column not numeric: got ${flat ? [type, meaning].filter((part) => part !== undefined).join(' ') : 'a nested value'} in "${name}", expected whole or real numbers (${file})`,
+    { file, column: name },
+  );
 }
 
-/** The library throws plain errors on damaged files: they get a code and the file's name. */
+/** Damaged files make the library and the decoder throw plain errors: they get a code and the file's name. */
 async function guard<T>(file: string, call: () => Promise<T>): Promise<T> {
   try {
     return await call();
