@@ -1,6 +1,7 @@
 import { FLAG } from '@wakeloom/tracker/core/columns';
 import { MedianScreen, normalisedMedianResidual } from '@wakeloom/tracker/screening/normalised-median';
 import { randomStream } from '@wakeloom/tracker/synthesis/random-stream';
+import { median } from 'simple-statistics';
 import { describe, expect, it } from 'vitest';
 
 // Westerweel & Scarano (2005), Exp. Fluids 39, 1096-1100: |u0 - um| / (rm + epsilon), epsilon about 0.1 px, threshold 2.
@@ -9,7 +10,7 @@ const EPSILON = 0.1;
 
 function residual(centre: number, neighbours: readonly number[]): number {
   const values = Float64Array.from(neighbours);
-  return normalisedMedianResidual(centre, values, values.length, EPSILON, new Float64Array(values.length));
+  return normalisedMedianResidual(centre, values, values.length, EPSILON);
 }
 
 /** One sample at the origin with velocity `centre` along x, eight round it on a ring; true where it is rejected. */
@@ -38,6 +39,19 @@ describe('normalised median test', () => {
     expect(residual(1.3, NEIGHBOURS)).toBeCloseTo(1.714286, 6);
     // um + rm + epsilon gives 1.
     expect(residual(1.0 + 0.075 + 0.1, NEIGHBOURS)).toBeCloseTo(1, 12);
+  });
+
+  it('agrees with sorting the deviations, for odd and even numbers of neighbours', () => {
+    const random = randomStream(30, 'deviations');
+    for (let n = 4; n < 20; n++) {
+      for (let trial = 0; trial < 20; trial++) {
+        const neighbours = Array.from({ length: n }, () => Math.round(4 * random.normal()) / 2);
+        const middle = median(neighbours);
+        const spread = median(neighbours.map((value) => Math.abs(value - middle)));
+        const want = Math.abs(3 - middle) / (spread + EPSILON);
+        expect(residual(3, neighbours)).toBeCloseTo(want, 12);
+      }
+    }
   });
 
   it('neighbours all equal: epsilon decides, deviations above 0.2 px are rejected', () => {

@@ -9,7 +9,7 @@ export interface FitTask {
 }
 
 /** A core of this many times the least rows is long enough with one lag of frames. */
-const MANY_CORES = 4;
+const MANY_CORES = 8;
 
 /**
  * Cuts a stream of linked blocks into windows: a core of at least `coreRows` rows and one to two `lag`s of

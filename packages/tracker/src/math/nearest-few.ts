@@ -2,7 +2,7 @@ import type { Dims } from '../core/columns.js';
 import { cubeRoot } from './cube-root.js';
 import type { PointColumns } from './neighbour-search.js';
 
-/** Points a cell should hold on average: measured best between 2 and 5 for eight neighbours in the plane. */
+/** Points a cell should hold on average: measured best near 2 for eight neighbours in the plane. */
 const POINTS_PER_CELL = 2;
 
 /** A hair below 1: squared distances to borders of cells are shrunk by it, so that rounding can hide no point. */
@@ -10,7 +10,7 @@ const ROUNDING = 1 - 1e-9;
 
 /**
  * The k nearest other points of each point, among scattered points without a given reach. Square (cubic) cells with
- * about three points each; cells are looked at in growing rings until no closer point can lie outside, so the answer is
+ * one or two points each; cells are looked at in growing rings until no closer point can lie outside, so the answer is
  * exact. Cells follow from the points alone. At equal distance the point met first in cell order counts as nearer.
  * Cost for k = 8: about 0.15 us a query in the plane. Mutable: one a user; buffers are kept between builds.
  */

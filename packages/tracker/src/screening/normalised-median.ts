@@ -15,22 +15,34 @@ const ROUNDING_SHARE = 1e-6;
 /**
  * Normalised residual of the median test, J. Westerweel & F. Scarano, Exp. Fluids 39 (2005) 1096-1100:
  * |u0 - um| / (rm + epsilon), um the median of the neighbours (centre left out), rm the median of |ui - um|.
- * Neighbours `values[0 .. count - 1]` are reordered; `scratch` has at least `count` entries.
+ * Neighbours `values[0 .. count - 1]` are put in order.
  *
  * @example
  * // 1.0 1.1 0.9 1.05 0.95 1.0 1.2 0.8 px round a vector of 2.0 px: 1 / (0.075 + 0.1) = 5.714
- * normalisedMedianResidual(2, Float64Array.of(1, 1.1, 0.9, 1.05, 0.95, 1, 1.2, 0.8), 8, 0.1, new Float64Array(8));
+ * normalisedMedianResidual(2, Float64Array.of(1, 1.1, 0.9, 1.05, 0.95, 1, 1.2, 0.8), 8, 0.1);
  */
-export function normalisedMedianResidual(
-  centre: number,
-  values: Float64Array,
-  count: number,
-  epsilon: number,
-  scratch: Float64Array,
-): number {
+export function normalisedMedianResidual(centre: number, values: Float64Array, count: number, epsilon: number): number {
   const middle = medianOfFew(values, count);
-  for (let i = 0; i < count; i++) scratch[i] = Math.abs(values[i]! - middle);
-  return Math.abs(centre - middle) / (medianOfFew(scratch, count) + epsilon);
+  // The values are in order now: their distances from the middle come in order too, from the middle outwards.
+  const half = count >>> 1;
+  let low = half - 1;
+  let high = half;
+  let before = 0;
+  let distance = 0;
+  for (let rank = 0; rank <= half; rank++) {
+    before = distance;
+    const below = low >= 0 ? middle - values[low]! : Number.POSITIVE_INFINITY;
+    const above = high < count ? values[high]! - middle : Number.POSITIVE_INFINITY;
+    if (below < above) {
+      distance = below;
+      low--;
+    } else {
+      distance = above;
+      high++;
+    }
+  }
+  const spread = count % 2 === 1 ? distance : (before + distance) / 2;
+  return Math.abs(centre - middle) / (spread + epsilon);
 }
 
 /** Samples of a window as columns by row; borrowed. */
@@ -74,7 +86,6 @@ export class MedianScreen {
   private readonly search: NearestFew;
   private readonly plane: PlaneTest;
   private readonly values: Float64Array;
-  private readonly scratch: Float64Array;
   /** By slot of the search: velocity, and what its standard error is a multiple of. */
   private velocity: [Float64Array, Float64Array, Float64Array];
   private root = new Float64Array(0);
@@ -85,7 +96,6 @@ export class MedianScreen {
     this.search = new NearestFew(test.neighbours);
     this.plane = new PlaneTest(this.search, test.neighbours);
     this.values = new Float64Array(test.neighbours);
-    this.scratch = new Float64Array(test.neighbours);
     this.velocity = [this.root, this.root, this.root];
   }
 
@@ -165,7 +175,7 @@ export class MedianScreen {
       if (Math.abs(value - centre) <= close) within++;
     }
     if (within > found >>> 1) return false;
-    if (normalisedMedianResidual(centre, values, found, epsilon, this.scratch) <= threshold) return false;
+    if (normalisedMedianResidual(centre, values, found, epsilon) <= threshold) return false;
     return !(this.plane.residual(velocity, slot, found, epsilon) <= threshold);
   }
 }
