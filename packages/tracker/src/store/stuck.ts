@@ -13,8 +13,10 @@ export interface StuckRule {
 
 /**
  * Sets the flag `stuck` on all samples of pathlines with at least `shortest` samples whose fitted positions stay
- * within factor times noise along every axis (largest less smallest). Changes `rows.flags`; writes 1 for stuck
- * pathlines into `stuck` at their final number.
+ * within factor times noise along every axis (largest less smallest). Fitted rather than measured, because the range of
+ * measured positions grows with their number even for a particle at rest. A slow particle on a short pathline cannot
+ * be told from one that is stuck, and is flagged too. Changes `rows.flags`; writes 1 for stuck pathlines into `stuck`
+ * at their final number.
  */
 export function flagStuck(rows: PathlineRows, rule: StuckRule, stuck: Uint8Array): void {
   const axes = [rows.x, rows.y, rows.z].slice(0, rows.dims);
