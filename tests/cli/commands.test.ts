@@ -211,6 +211,17 @@ describe('process without a run sheet, then export', () => {
     expect(readdirSync(folder).filter((name) => name.includes('partial'))).toEqual([]);
   });
 
+  it('ends quietly when whoever reads it has seen enough', async () => {
+    const { code, stdout, stderr } = await runCli(['export', 'result', 'pathlines'], {
+      cwd: folder,
+      stopReading: true,
+    });
+    expect([code, stderr]).toEqual([0, '']);
+    expect(stdout.startsWith('pathline,')).toBe(true);
+    // Far less than the whole: 7200 rows of at least 100 characters.
+    expect(stdout.length).toBeLessThan(7200 * 100);
+  });
+
   it('refuses to send anything but CSV to stdout', async () => {
     const { code, stdout, stderr } = await runCli(['export', 'result', 'grid', '--format', 'vtk'], { cwd: folder });
     expect([code, stdout]).toEqual([2, '']);
@@ -251,6 +262,13 @@ describe('the demo', () => {
     expect(processed.code).toBe(0);
     expect(processed.stdout).toMatch(/^swirl in a through-flow$/m);
     expect(processed.stdout).toMatch(/Position noise .* mm .*x, y, z/);
+  });
+
+  it('finds the computed wake that comes with the program', async () => {
+    const { code, stdout } = await runCli(['demo', '--out', 'wake', '--frames', '3'], { cwd: folder });
+    expect(code).toBe(0);
+    expect(stdout).toMatch(/cylinder-wake\.csv\.gz: [56]\d{3} detections in 3 frames/);
+    expect(readdirSync(at('wake')).sort()).toEqual(['cylinder-wake.csv.gz', 'cylinder-wake.yaml']);
   });
 
   it('does not write over a run sheet unasked', async () => {

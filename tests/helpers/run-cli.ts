@@ -14,6 +14,8 @@ export interface CliResult {
 export interface CliOptions {
   readonly cwd?: string;
   readonly env?: Readonly<Record<string, string>>;
+  /** Close our end of its standard output after the first data, as `head` does. */
+  readonly stopReading?: boolean;
   readonly onStderr?: (text: string, kill: (signal: NodeJS.Signals) => void) => void;
 }
 
@@ -30,6 +32,7 @@ export function runCli(words: readonly string[], options: CliOptions = {}): Prom
     let stderr = '';
     child.stdout.setEncoding('utf8').on('data', (text: string) => {
       stdout += text;
+      if (options.stopReading) child.stdout.destroy();
     });
     child.stderr.setEncoding('utf8').on('data', (text: string) => {
       stderr += text;
