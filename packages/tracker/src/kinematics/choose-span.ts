@@ -1,8 +1,9 @@
 import type { LinkedBlock } from '../core/columns.js';
 import { medianOfFew } from '../math/median.js';
+import { FitSpace } from './fit-space.js';
 import { FitWeights, localWeights } from './local-fit.js';
 import { pathlineOrder } from './pathline-order.js';
-import { joinBlocks } from './window-cutter.js';
+import { joinBlocks } from './rolling-frames.js';
 
 /**
  * Spans that are tried: below 5 a fit smooths nothing; at 21 the noise of the velocity is down to 0.036 sigma a frame,
@@ -94,7 +95,7 @@ interface Runs {
 }
 
 function gaplessRuns(window: LinkedBlock): Runs {
-  const order = pathlineOrder(window);
+  const order = pathlineOrder(window, new FitSpace());
   const frame = new Int32Array(window.pathline.length);
   for (let k = 0; k < window.number.length; k++) {
     frame.fill(window.number[k]!, window.offsets[k]!, window.offsets[k + 1]!);

@@ -1,9 +1,13 @@
 import type { LinkedBlock, SampleBlock } from '../core/columns.js';
+import type { RunContext } from '../core/context.js';
 import type { StageInput } from '../pipeline/stages.js';
 import type { FitParameters } from './fit-parameters.js';
 import { fitLag, fitParameters } from './fit-parameters.js';
+import { FitSpace } from './fit-space.js';
 import type { CoreRange } from './fit-window.js';
 import { fitWindowInSteps } from './fit-window.js';
+import { copyBlock } from './rolling-frames.js';
+import type { FitTask } from './window-cutter.js';
 import { cutWindows, windowBytes } from './window-cutter.js';
 
 /** Rows of a core at least: enough that handing a window over costs little against fitting it. */
@@ -16,7 +20,7 @@ export type FitRunner = (window: LinkedBlock, core: CoreRange, parameters: FitPa
  * The fit stage: linked blocks in frame order to samples in frame order. Cuts the stream into windows with overlap
  * and has each fitted by `run`, up to `context.budget.threads` at a time and within half the budget of bytes; results come in order and do not depend on
  * the cuts or the threads. Without `run` the kernel works here, with a breath every few ms. Memory: the windows in
- * flight, each three to four times the lag long, about 100 bytes a row.
+ * flight, each three to four times the lag long, about 120 bytes a row.
  */
 export async function* fitStage(
   input: StageInput,
@@ -25,45 +29,68 @@ export async function* fitStage(
 ): AsyncGenerator<SampleBlock> {
   const { context } = input;
   const parameters = fitParameters(input.settings, input.prior);
-  const runner = run ?? runHere;
-  const limit = run === undefined ? 1 : Math.max(1, context.budget.threads);
-  const flight: Promise<SampleBlock>[] = [];
-  const sizes: number[] = [];
-  let held = 0;
+  const windows = cutWindows(blocks, fitLag(parameters), CORE_ROWS);
+  const fitted = run === undefined ? fitHere(windows, parameters, context) : farmOut(windows, parameters, context, run);
   let frames = 0;
+  for await (const samples of fitted) {
+    frames += samples.number.length;
+    context.progress('fit', frames, null, 'frames');
+    yield samples;
+  }
+}
 
-  async function runHere(window: LinkedBlock, core: CoreRange, p: FitParameters): Promise<SampleBlock> {
-    const steps = fitWindowInSteps(window, core, p);
+/** One window after the other, on views of the held frames. */
+async function* fitHere(
+  windows: AsyncIterable<FitTask>,
+  parameters: FitParameters,
+  context: RunContext,
+): AsyncGenerator<SampleBlock> {
+  const space = new FitSpace();
+  for await (const { window, core } of windows) {
+    const steps = fitWindowInSteps(window, core, parameters, space);
     for (;;) {
       await context.breathe();
       const step = steps.next();
-      if (step.done) return step.value;
+      if (step.done) {
+        yield step.value;
+        break;
+      }
     }
   }
-  const deliver = async (): Promise<SampleBlock> => {
-    const samples = await flight.shift()!;
-    held -= sizes.shift()!;
-    frames += samples.number.length;
-    context.progress('fit', frames, null, 'frames');
-    return samples;
-  };
+}
 
+/** Copies of windows to `run`, results in order. */
+async function* farmOut(
+  windows: AsyncIterable<FitTask>,
+  parameters: FitParameters,
+  context: RunContext,
+  run: FitRunner,
+): AsyncGenerator<SampleBlock> {
+  const flight: { readonly result: Promise<SampleBlock>; readonly bytes: number }[] = [];
+  let held = 0;
+  const deliver = async (): Promise<SampleBlock> => {
+    const { result, bytes } = flight.shift()!;
+    held -= bytes;
+    return result;
+  };
   try {
-    for await (const { window, core } of cutWindows(blocks, fitLag(parameters), CORE_ROWS)) {
+    for await (const { window, core } of windows) {
       await context.breathe();
       const bytes = windowBytes(window);
-      while (flight.length > 0 && (flight.length >= limit || held + bytes > context.budget.bytes / 2)) {
+      while (
+        flight.length > 0 &&
+        (flight.length >= context.budget.threads || held + bytes > context.budget.bytes / 2)
+      ) {
         yield await deliver();
       }
-      const result = runner(window, core, parameters);
-      sizes.push(bytes);
-      held += bytes;
+      const result = run(copyBlock(window), core, parameters);
       // Awaited in its turn; until then a failure must not count as unhandled.
       result.catch(() => {});
-      flight.push(result);
+      flight.push({ result, bytes });
+      held += bytes;
     }
     while (flight.length > 0) yield await deliver();
   } finally {
-    await Promise.allSettled(flight);
+    await Promise.allSettled(flight.map(({ result }) => result));
   }
 }

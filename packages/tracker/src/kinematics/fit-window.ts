@@ -7,6 +7,7 @@ import { markOffFit } from '../screening/off-fit.js';
 import { fitPairs } from './fit-pairs.js';
 import type { FitParameters } from './fit-parameters.js';
 import { fitReach } from './fit-parameters.js';
+import { FitSpace } from './fit-space.js';
 import { MARK, neighboursOfFrame } from './neighbours-of-frame.js';
 import { PathlineFitter } from './pathline-fitter.js';
 import { frameOfRows, pathlineOrder } from './pathline-order.js';
@@ -45,14 +46,15 @@ export function fitWindow(window: LinkedBlock, core: CoreRange, parameters: FitP
   }
 }
 
-/** `fitWindow` in steps of a few ms each, for callers that must look at messages in between. */
+/** `fitWindow` in steps of a few ms each, for callers that must look at messages in between; `space` may be kept for the next window. */
 export function* fitWindowInSteps(
   window: LinkedBlock,
   core: CoreRange,
   parameters: FitParameters,
+  space: FitSpace = new FitSpace(),
 ): Generator<void, SampleBlock> {
   if (parameters.pairs) return yield* fitPairs(window, core, parameters);
-  const work = new WindowWork(window, core, parameters);
+  const work = new WindowWork(window, core, parameters, space);
   yield* work.fitAll();
   if ((yield* work.screen()) > 0) yield* work.fitAgain();
   return work.out.samples;
@@ -76,23 +78,23 @@ class WindowWork {
   private readonly root: Float32Array;
   private readonly marks: Uint8Array;
 
-  constructor(window: LinkedBlock, core: CoreRange, parameters: FitParameters) {
+  constructor(window: LinkedBlock, core: CoreRange, parameters: FitParameters, space: FitSpace) {
     this.window = window;
     this.core = core;
     this.parameters = parameters;
     this.deep = window.dims === 3;
     const rows = rowCount(window);
     this.out = coreRows(window, core.from, core.to);
-    this.frameOf = frameOfRows(window);
-    this.order = pathlineOrder(window);
+    this.frameOf = frameOfRows(window, space);
+    this.order = pathlineOrder(window, space);
     this.fitter = new PathlineFitter(parameters, this.deep, this.order.longest);
     this.off = new Uint8Array(this.order.longest);
     this.scratch = new Float64Array(2 * parameters.span);
-    this.u = new Float32Array(rows);
-    this.v = new Float32Array(rows);
-    this.w = new Float32Array(this.deep ? rows : 0);
-    this.root = new Float32Array(rows);
-    this.marks = new Uint8Array(rows);
+    this.u = space.float32('u', rows);
+    this.v = space.float32('v', rows);
+    this.w = space.float32('w', this.deep ? rows : 0);
+    this.root = space.float32('root', rows);
+    this.marks = space.uint8('marks', rows);
   }
 
   /** First round: fits, marks positions off their fit, fits again without them; writes velocities and the core's samples. */

@@ -1,5 +1,6 @@
 import type { LinkedBlock } from '../core/columns.js';
 import { rowCount } from '../core/columns.js';
+import type { FitSpace } from './fit-space.js';
 
 /** Rows of a window sorted by pathline, each pathline in frame order. */
 export interface PathlineOrder {
@@ -16,12 +17,12 @@ export interface PathlineOrder {
 /**
  * Sorts the linked rows of a window by pathline: a counting sort, with the pathline numbers made small through an
  * open-addressing table (they may be far apart in a long run, so a table by number would grow with the run).
- * Cost O(rows), 16 bytes a row while it works, 4 after it.
+ * Cost O(rows); 8 bytes a row of `space`, to which `row` belongs.
  */
-export function pathlineOrder(window: LinkedBlock): PathlineOrder {
+export function pathlineOrder(window: LinkedBlock, space: FitSpace): PathlineOrder {
   const rows = rowCount(window);
   const { pathline } = window;
-  const slotOf = new Int32Array(rows);
+  const slotOf = space.int32('slot', rows);
   let size = 1024;
   while (size < 2 * rows) size *= 2;
   // At most as many pathlines as rows, but usually a few per cent of them: grow when half full.
@@ -76,7 +77,7 @@ export function pathlineOrder(window: LinkedBlock): PathlineOrder {
     start[slot + 1] = start[slot]! + n;
   }
   const next = start.slice();
-  const row = new Uint32Array(start[count]!);
+  const row = space.uint32('row', start[count]!);
   for (let r = 0; r < rows; r++) {
     const slot = slotOf[r]!;
     if (slot < 0) continue;
@@ -93,10 +94,10 @@ function hash(id: number): number {
   return mixed ^ (mixed >>> 15);
 }
 
-/** Frame index of every row of a window. [rows], new */
-export function frameOfRows(window: LinkedBlock): Uint32Array {
+/** Frame index of every row of a window. [rows], a column of `space` */
+export function frameOfRows(window: LinkedBlock, space: FitSpace): Uint32Array {
   const frames = window.number.length;
-  const of = new Uint32Array(rowCount(window));
+  const of = space.uint32('frame', rowCount(window));
   for (let k = 0; k < frames; k++) of.fill(k, window.offsets[k]!, window.offsets[k + 1]!);
   return of;
 }
