@@ -25,6 +25,9 @@ export interface StreamWatcher {
  * Opens a file for one reading from start to end; gzip (of several members too, where the platform's decompressor
  * takes them: Node does) and zstd are recognised by their first bytes.
  *
+ * gzip's checksum is checked, zstd's is not (fzstd does not look at it): a zstd file with flipped bytes may give wrong
+ * digits without an error, so keep the SHA-256 of the scan beside it.
+ *
  * Reading throws `dump/truncated-gzip`, `dump/corrupt-gzip`, `dump/truncated-zstd`, `dump/corrupt-zstd`,
  * `dump/read-failed`. Memory: one chunk, for zstd its window too.
  */
