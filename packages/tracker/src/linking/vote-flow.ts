@@ -9,6 +9,11 @@ const VOTE_REACH = 2;
 const KERNEL_COARSE = 0.3;
 const KERNEL_FINE = 0.18;
 const REFINEMENTS = 3;
+/**
+ * Discount of the longest votes: where particles stand nearly on a lattice, shifts by a lattice step gather as many
+ * votes as the true one, and the shortest is by far the likeliest.
+ */
+const LONG_VOTE_DISCOUNT = 0.25;
 /** A window whose best displacement gathers fewer than this many votes is left to its neighbours. */
 const FEWEST_VOTES = 4;
 
@@ -204,6 +209,8 @@ class VoteTable {
     const depth = this.options.dims === 3 ? 1 / this.options.depthNoise : 1;
     const width = this.kernelSpeed();
     const per = 1 / (width * width);
+    const longest = (width * VOTE_REACH * this.options.spacing) / this.kernel;
+    const perLongest = 1 / (longest * longest);
     // With very many votes every n-th centre is tried: the peak holds many votes, so one of them is near its top.
     const stride = Math.max(1, Math.trunc(count / 400));
     let best = -1;
@@ -219,6 +226,8 @@ class VoteTable {
         const r = (du * du + dv * dv + dw * dw) * per;
         if (r < 1) sum += (1 - r) * (1 - r);
       }
+      const length = u[centre] * u[centre] + v[centre] * v[centre] + w[centre] * depth * (w[centre] * depth);
+      sum *= 1 - LONG_VOTE_DISCOUNT * length * perLongest;
       if (sum > most) {
         most = sum;
         best = centre;

@@ -20,7 +20,8 @@ export const linkStage: Stage = {
     const linker = mode === 'keep' ? null : createLinker(settings.linking, board.look!.link);
     const given = mode === 'ignore' ? null : new GivenPathlines(settings.linking.bridge);
     board.linkCounts = counts;
-    board.linked = linkStream(board.detections!, linker, given, settings.linking.bridge, counts, context);
+    const total = board.scan!.frameNumbers.length;
+    board.linked = linkStream(board.detections!, linker, given, settings.linking.bridge, counts, total, context);
   },
 };
 
@@ -30,6 +31,7 @@ async function* linkStream(
   given: GivenPathlines | null,
   bridge: number,
   counts: LinkCounts,
+  total: number,
   context: RunContext,
 ): AsyncGenerator<LinkedBlock> {
   const comparison = linker !== null && given !== null ? new LinkComparison(bridge) : null;
@@ -39,7 +41,7 @@ async function* linkStream(
     const theirs = given === null ? null : given.link(block);
     if (comparison !== null) comparison.add(theirs!, own!);
     frames += block.number.length;
-    context.progress('link', frames, null, 'frames');
+    context.progress('link', frames, total, 'frames');
     yield (own ?? theirs)!;
   }
   if (linker !== null) Object.assign(counts, linker.tally);

@@ -26,13 +26,11 @@ export const scanStage: Stage = {
     for (const remark of board.scan.remarks) {
       context.event({ code: 'dump/remark', level: 'note', message: remark, details: {} });
     }
-    for (const aside of board.scan.setAside) {
-      context.event({
-        code: 'dump/rows-set-aside',
-        level: 'warning',
-        message: `${aside.count} rows set aside: ${aside.reason}`,
-        details: { reason: aside.reason, count: aside.count, examples: aside.examples },
-      });
+    if (settings.dump.given !== 'ignore' && !board.scan.has.pathline) {
+      throw new WakeloomError(
+        'dump/no-pathline-column',
+        `dump: got no column of pathline numbers, expected one because they are to be used ("${settings.dump.given}"); name it (run sheet: dump.columns.pathline) or link anew`,
+      );
     }
     if (board.scan.rowsRead === 0) {
       throw new WakeloomError(
