@@ -103,7 +103,7 @@ beforeEach(async () => {
   faults = [];
   context = await browser.newContext({ viewport: { width: 1280, height: 800 } });
   page = await context.newPage();
-  page.setDefaultTimeout(60_000);
+  page.setDefaultTimeout(120_000);
   context.on('request', (request) => asked.push(request.url()));
   page.on('pageerror', (error) => faults.push(error.message));
   page.on('console', (message) => {
@@ -119,7 +119,8 @@ afterEach(async () => {
   expect(server.missing).toEqual([]);
 });
 
-describe.skipIf(!here)('the page', () => {
+// Whole runs in the page and in Node: on a machine that does other work besides they take their time.
+describe.skipIf(!here)('the page', { timeout: 240_000 }, () => {
   it('works a dropped dump to the same bits as Node does, and asks nobody else', async () => {
     await drop('vortex.csv', readFileSync(small));
     await page.getByText('vortex.csv').waitFor();

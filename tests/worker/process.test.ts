@@ -20,20 +20,21 @@ function request(files = [dump]) {
 }
 
 beforeAll(async () => {
-  // 180 000 detections: three windows of 60 000 rows, so that helpers really share the work.
-  writeFileSync(dump, await vortexDump(180, 1000));
+  // 130 000 detections: more than two windows of 60 000 rows, so that helpers really share the work.
+  writeFileSync(dump, await vortexDump(130, 1000));
 });
 
 afterAll(() => rmSync(folder, { recursive: true, force: true }));
 
-describe('a whole run in worker threads', () => {
+// Whole runs, several a test: on a machine that does other work besides they take their time.
+describe('a whole run in worker threads', { timeout: 240_000 }, () => {
   it('has the same content digest in this thread and with 1, 2 and 4 workers', async () => {
     const digests: string[] = [];
     for (const threads of [1, 2, 4]) {
       const out = join(folder, `threads-${threads}`);
       const record = await processInWorker(request(), [dump], out, { threads, ramLimit: 256 * MB });
       expect(record.host.threads).toBe(threads);
-      expect(record.counts.samples).toBeGreaterThan(160_000);
+      expect(record.counts.samples).toBeGreaterThan(120_000);
       digests.push(record.digest.content);
     }
     const place = await openNodeResultPlace(join(folder, 'here'), { create: true });

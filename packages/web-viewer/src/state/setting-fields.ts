@@ -11,9 +11,9 @@ export interface SettingField {
 
 /** Fields in the order of the form. */
 export const SETTING_FIELDS: readonly SettingField[] = [
-  { option: 'rate', label: 'Frame rate', hint: 'such as 500 Hz; empty: time in frames', start: '' },
-  { option: 'scale', label: 'Scale', hint: 'such as 0.05 mm/px; empty: lengths in px', start: '' },
-  { option: 'bin', label: 'Bin of the grid', hint: 'such as 2 mm; empty: chosen from the data', start: '' },
+  { option: 'rate', label: 'Frame rate', hint: 'such as 500 Hz, or empty: frames', start: '' },
+  { option: 'scale', label: 'Scale', hint: 'such as 0.05 mm/px, or empty: px', start: '' },
+  { option: 'bin', label: 'Bin of the grid', hint: 'such as 2 mm, or empty: automatic', start: '' },
   {
     option: 'y-axis',
     label: 'Dump’s y axis',
