@@ -12,6 +12,7 @@ import { madeTracks } from '../helpers/made-tracks.js';
 const prior: Prior = {
   noise: [0.02, 0.02, Number.NaN],
   noiseMeasured: true,
+  frameStep: 1,
   span: 5,
   reach: [1, 1, 1],
   spacing: 1,
@@ -35,11 +36,11 @@ async function gather(samples: AsyncIterable<SampleBlock>): Promise<SampleBlock[
   return all;
 }
 
-// 2200 particles over 80 frames: more than two cores of 60 000 rows.
+// 1700 particles over 80 frames: more than two cores of 60 000 rows.
 const block = madeTracks({
   seed: 'stage',
   frames: 80,
-  particles: 2200,
+  particles: 1700,
   outliers: 0.005,
   timeOf: (frame) => (frame - 100) / 100,
 });

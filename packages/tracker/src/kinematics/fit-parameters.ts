@@ -41,12 +41,12 @@ export const RIM_NOISE = 3;
 /** Parameters of the fit from the settings of a run and what the first look at its data gave. */
 export function fitParameters(settings: RunSettings, prior: Prior): FitParameters {
   const { clock, screening } = settings;
-  const even = clock.kind === 'rate' || clock.kind === 'bursts' ? 1 / clock.rate.value : null;
+  const even = clock.kind === 'rate' || clock.kind === 'bursts' ? prior.frameStep / clock.rate.value : null;
   return {
     noise: prior.noise,
     span: prior.span,
     order: settings.smoothing.order,
-    interval: clock.kind === 'none' ? 1 : even,
+    interval: clock.kind === 'none' ? prior.frameStep : even,
     pairs: clock.kind === 'pairs',
     riskLimit: settings.linking.riskLimit,
     medianThreshold: screening.medianThreshold,

@@ -12,7 +12,7 @@ const ROUNDING = 1 - 1e-9;
  * The k nearest other points of each point, among scattered points without a given reach. Square (cubic) cells with
  * one or two points each; cells are looked at in growing rings until no closer point can lie outside, so the answer is
  * exact. Cells follow from the points alone. At equal distance the point met first in cell order counts as nearer.
- * Cost for k = 8: about 0.15 us a query in the plane. Mutable: one a user; buffers are kept between builds.
+ * Cost for k = 8: about 0.3 us a query in the plane. Mutable: one a user; buffers are kept between builds.
  */
 export class NearestFew {
   /** Slots of the neighbours of the last query, nearest first; see `rowOf`. [k] */

@@ -79,7 +79,7 @@ export interface MedianTest {
  *
  * Where more than half the neighbours lie within threshold times epsilon of the sample their median does too, and the
  * sample passes without any median being taken. Exact and the same whatever the cuts: neighbours follow from the
- * candidates of the frame alone. Mutable scratch: one screen a user. Cost about 0.3 us a sample in the plane.
+ * candidates of the frame alone. Mutable scratch: one screen a user. Cost about 0.5 us a sample in the plane, more than half of it the search for neighbours.
  */
 export class MedianScreen {
   private readonly test: MedianTest;
