@@ -15,7 +15,7 @@ export async function linkBlock(
   const { settings } = resolveRun({ options: { rate: '60 Hz', scale: '1 mm/px', ...options }, dumpFiles: ['x.csv'] });
   const linking = { ...settings.linking, ...change };
   const sorted = sortedCopy(block);
-  const look = await firstLook([sorted], { ...settings, linking }, createContext());
+  const look = await firstLook([sorted], { ...settings, linking }, 1, createContext());
   const linker = createLinker(linking, look.link);
   const pathline = new Int32Array(sorted.x.length);
   const risk = new Float32Array(sorted.x.length);

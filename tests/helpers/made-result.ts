@@ -71,6 +71,7 @@ export function madeRecord(finished: FinishedSamples): Omit<RunRecord, 'digest'>
     prior: {
       noise: [0, 0, 0],
       noiseMeasured: true,
+      frameStep: 1,
       span: 7,
       reach: [1, 1, 1],
       spacing: 1,

@@ -50,6 +50,7 @@ export function sampleRecord(overrides: Partial<RunRecord> = {}): RunRecord {
     prior: {
       noise: [0.005, 0.005, Number.NaN],
       noiseMeasured: true,
+      frameStep: 1,
       span: 7,
       reach: [0.4, 0.4, 0.4],
       spacing: 1.28,

@@ -40,13 +40,14 @@ export const FIRST_LOOK = { frames: 240, rows: TRIAL_ROWS } as const;
 /**
  * First look at the data: density and spacing, the flow by votes, the reach, then a trial linking of the first
  * frames that gives position noise, span and displacement ratio. Bounded work whatever the length of the run.
- * `blocks`: the first calibrated frames; borrowed.
+ * `blocks`: the first calibrated frames, counted in steps of `frameStep`; borrowed.
  *
  * Throws `linking/no-detections` where there is nothing to look at.
  */
 export async function firstLook(
   blocks: readonly DetectionBlock[],
   settings: RunSettings,
+  frameStep: number,
   context: RunContext,
 ): Promise<FirstLook> {
   const dims: Dims = blocks[0]?.dims ?? 2;
@@ -96,6 +97,7 @@ export async function firstLook(
   return {
     prior: {
       noise,
+      frameStep,
       span,
       reach: [reach, reach, reach * depthNoise],
       spacing,

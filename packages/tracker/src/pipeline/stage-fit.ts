@@ -2,6 +2,7 @@ import type { SampleBlock } from '../core/columns.js';
 import { addFrameVelocity } from '../detections/frame-velocity.js';
 import { fitStage } from '../kinematics/fit-stage.js';
 import type { SampleExtent, Stage } from './board.js';
+import { restoreNumbers } from './frame-step.js';
 
 /** Turns linked detections into samples: fit, screening, velocity of a towed frame; notes their extent. */
 export const samplesStage: Stage = {
@@ -18,16 +19,20 @@ export const samplesStage: Stage = {
     };
     board.extent = extent;
     const fitted = fitStage(input, board.linked!, board.tools.fit);
-    board.samples = finishSamples(fitted, settings.geometry.frame.velocity, extent);
+    const { frameNumbers } = board.scan!;
+    const restore = (block: SampleBlock) => restoreNumbers(block.number, frameNumbers[0], board.look!.prior.frameStep);
+    board.samples = finishSamples(fitted, settings.geometry.frame.velocity, restore, extent);
   },
 };
 
 async function* finishSamples(
   blocks: AsyncIterable<SampleBlock>,
   frameVelocity: readonly [number, number, number] | null,
+  restore: (block: SampleBlock) => void,
   extent: SampleExtent,
 ): AsyncGenerator<SampleBlock> {
   for await (const block of blocks) {
+    restore(block);
     if (frameVelocity !== null) addFrameVelocity(block, frameVelocity);
     extent.samples += block.flags.length;
     for (const [axis, column] of [block.x, block.y, block.z].entries()) {

@@ -1,10 +1,11 @@
 import type { DetectionBlock } from '../core/columns.js';
 import { createContext } from '../core/context.js';
 import { WakeloomError } from '../core/errors.js';
-import { calibrate, newTally } from '../detections/calibrate.js';
+import { type CalibrationTally, calibrate, newTally } from '../detections/calibrate.js';
 import { openDump } from '../detections/open-dump.js';
 import type { Board, Stage } from './board.js';
 import { FIRST_LOOK, firstLook } from './first-look.js';
+import { countInSteps, frameStep } from './frame-step.js';
 
 /** Rows a block holds: small enough to live in the cache's neighbourhood, large enough to cost nothing. */
 const BLOCK_ROWS = 40_000;
@@ -59,7 +60,17 @@ export const lookStage: Stage = {
       frames += block.number.length;
       if (frames >= FIRST_LOOK.frames || rows >= FIRST_LOOK.rows) break;
     }
-    board.look = await firstLook(first, request.resolved.settings, context);
+    const { settings } = request.resolved;
+    const step = frameStep(board.scan!.frameNumbers, settings.clock);
+    if (step > 1) {
+      context.event({
+        code: 'dump/frame-step',
+        level: 'note',
+        message: `frame numbers go in steps of ${step}: the frames between are taken as not recorded, not as missing`,
+        details: { step },
+      });
+    }
+    board.look = await firstLook(first, settings, step, context);
   },
 };
 
@@ -74,8 +85,16 @@ export const detectionsStage: Stage = {
   },
 };
 
-function calibrated(board: Board, context: Board['context'], tally: ReturnType<typeof newTally>) {
+async function* calibrated(
+  board: Board,
+  context: Board['context'],
+  tally: CalibrationTally,
+): AsyncGenerator<DetectionBlock> {
   const { settings } = board.request.resolved;
   const scan = board.scan!;
-  return calibrate({ settings, scan, context, tally }, board.dump!.blocks(context, BLOCK_ROWS));
+  const step = frameStep(scan.frameNumbers, settings.clock);
+  for await (const block of calibrate({ settings, scan, context, tally }, board.dump!.blocks(context, BLOCK_ROWS))) {
+    countInSteps(block, scan.frameNumbers[0], step);
+    yield block;
+  }
 }

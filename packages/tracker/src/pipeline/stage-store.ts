@@ -10,6 +10,12 @@ import { runRecord } from './run-record.js';
 const LONGEST_BAR = 100_000;
 
 /**
+ * Fewest samples of a pathline that is called stuck: with fewer, slow particles of a recirculation would be taken for
+ * dirt on a window and bias its mean (dirt stays for the whole recording; common practice, no source).
+ */
+const FEWEST_STUCK = 20;
+
+/**
  * Draws the samples through the stages before, spills them, turns them into pathline order, bins them on the way,
  * and completes the result folder. Whatever fails leaves a folder that is no result.
  */
@@ -33,7 +39,9 @@ export const storeStage: Stage = {
       keepPathlines: settings.results.keepPathlines,
       keepFrames: settings.results.keepFrames,
       stuckFactor: settings.screening.stuckFactor,
+      stuckFewest: Math.max(settings.linking.shortest, FEWEST_STUCK),
       noise: prior.noise,
+      frameStep: prior.frameStep,
       ramLimit: settings.results.ramLimit,
       context,
       title: settings.run,

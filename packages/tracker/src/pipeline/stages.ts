@@ -10,6 +10,8 @@ export interface Prior {
   readonly noise: readonly [number, number, number];
   /** Whether the noise was measured from trial pathlines or assumed from the spacing. */
   readonly noiseMeasured: boolean;
+  /** Step of the frame numbers where the dump counts in steps (every second frame kept: 2), else 1. */
+  readonly frameStep: number;
   /** Frames in the window of the local fit, odd. */
   readonly span: number;
   /** Reach for linking, length unit, per axis. */

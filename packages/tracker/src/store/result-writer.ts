@@ -32,6 +32,10 @@ export interface ResultWriterOptions {
   /** A pathline that stays within this many standard deviations of `noise` along every axis is stuck. */
   readonly stuckFactor: number;
   readonly noise: readonly [number, number, number];
+  /** Fewest samples of a pathline that can be called stuck; default `shortest`. */
+  readonly stuckFewest?: number;
+  /** Step of the frame numbers of frames that follow one another; default 1. */
+  readonly frameStep?: number;
   /** Working memory of the run, bytes. The writer takes about 75 MB whatever the limit (measured, in the plane). */
   readonly ramLimit: number;
   readonly context: RunContext;
@@ -145,8 +149,12 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     const kept = keepPathlines === 'none' ? null : keptRows(keepPathlines, numbering, spilled);
     if (kept !== null) pathlinesFile = openPathlinesFile(place, columns, kept, units, title, options.bridge);
     const stuck = new Uint8Array(numbering.pathlines);
-    const rule = { factor: options.stuckFactor, noise: options.noise, shortest: options.shortest };
-    const statistics = sampleStatistics();
+    const rule = {
+      factor: options.stuckFactor,
+      noise: options.noise,
+      shortest: options.stuckFewest ?? options.shortest,
+    };
+    const statistics = sampleStatistics(options.frameStep);
     for await (const rows of transpose(spilled, numbering, columns, context, options.working?.groupBytes)) {
       flagStuck(rows, rule, stuck);
       statistics.add(rows);

@@ -21,7 +21,7 @@ export interface SampleStatistics {
 /** Bits of a Float32 left out of the histogram: sign, exponent and 12 bits of the fraction stay. */
 const DROPPED_BITS = 11;
 
-export function sampleStatistics(): SampleStatistics {
+export function sampleStatistics(frameStep = 1): SampleStatistics {
   const byFlags = new Float64Array(1 << 16);
   const histogram = new Uint32Array(0x7f800000 >>> DROPPED_BITS);
   const bits = new Uint32Array(1);
@@ -37,7 +37,7 @@ export function sampleStatistics(): SampleStatistics {
       const { u, v, w, uSe, flags, frame, pathline } = rows;
       for (let i = 0; i < flags.length; i++) {
         byFlags[flags[i]]++;
-        if (i > 0 && pathline[i] === pathline[i - 1] && frame[i] - frame[i - 1] > 1) linksBridging++;
+        if (i > 0 && pathline[i] === pathline[i - 1] && frame[i] - frame[i - 1] > frameStep) linksBridging++;
         if ((flags[i] & EXCLUDED_FROM_GRID) !== 0) continue;
         unflagged++;
         const depth = w.length > 0 ? w[i] : 0;
