@@ -14,6 +14,8 @@ const REFINEMENTS = 3;
  * votes as the true one, and the shortest is by far the likeliest.
  */
 const LONG_VOTE_DISCOUNT = 0.25;
+/** Votes of a cell beyond which only every n-th is tried as a centre: a peak holds many, one of them is near its top. */
+const MOST_CENTRES = 5000;
 /** A window whose best displacement gathers fewer than this many votes is left to its neighbours. */
 const FEWEST_VOTES = 4;
 
@@ -211,14 +213,19 @@ class VoteTable {
     const per = 1 / (width * width);
     const longest = (width * VOTE_REACH * this.options.spacing) / this.kernel;
     const perLongest = 1 / (longest * longest);
-    // With very many votes every n-th centre is tried: the peak holds many votes, so one of them is near its top.
-    const stride = Math.max(1, Math.trunc(count / 400));
+    // Votes in order of u: only those within one kernel width along u need to be looked at.
+    votes.sort((a, b) => u[a] - u[b]);
+    const stride = Math.max(1, Math.trunc(count / MOST_CENTRES));
     let best = -1;
     let most = 0;
+    let low = 0;
+    let high = 0;
     for (let a = 0; a < count; a += stride) {
       const centre = votes[a];
+      while (u[votes[low]] < u[centre] - width) low++;
+      while (high < count && u[votes[high]] <= u[centre] + width) high++;
       let sum = 0;
-      for (let b = 0; b < count; b++) {
+      for (let b = low; b < high; b++) {
         const vote = votes[b];
         const du = u[vote] - u[centre];
         const dv = v[vote] - v[centre];
