@@ -22,7 +22,15 @@ export interface CliOptions {
 /** Runs the built command (`npm run compile` first) without a terminal and without what a user's environment sets. */
 export function runCli(words: readonly string[], options: CliOptions = {}): Promise<CliResult> {
   return new Promise((resolve, reject) => {
-    const { NO_COLOR: _n, FORCE_COLOR: _f, WAKELOOM_DEBUG: _d, NODE_OPTIONS: _o, ...clean } = process.env;
+    const {
+      npm_command: _c,
+      npm_lifecycle_event: _e,
+      NO_COLOR: _n,
+      FORCE_COLOR: _f,
+      WAKELOOM_DEBUG: _d,
+      NODE_OPTIONS: _o,
+      ...clean
+    } = process.env;
     const child = spawn(process.execPath, [BIN, ...words], {
       cwd: options.cwd,
       env: { ...clean, ...options.env },

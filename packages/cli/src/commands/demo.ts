@@ -4,6 +4,7 @@ import { abortedError, WakeloomError } from '@wakeloom/tracker/core/errors';
 import { formatCount, formatNumber } from '@wakeloom/tracker/figures/number-format';
 import { openFileSink } from '@wakeloom/tracker/node';
 import { DEMO_NAMES, type DemoName, type DemoSummary, writeDemo } from '@wakeloom/tracker/synthesis/demo';
+import { calledAs } from '../called-as.js';
 import { EXIT } from '../exit-codes.js';
 import { lookAt } from '../files.js';
 import { single } from '../options.js';
@@ -69,7 +70,7 @@ function demoLines(out: string, made: DemoSummary): string[] {
     `${sheet}: its run sheet`,
     '',
     'Next:',
-    `  wakeloom process ${typedWord(sheet)} --out ${typedWord(join(out, 'result'))}`,
+    `  ${calledAs()} process ${typedWord(sheet)} --out ${typedWord(join(out, 'result'))}`,
   ];
 }
 

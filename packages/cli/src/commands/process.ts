@@ -4,6 +4,7 @@ import { WakeloomError } from '@wakeloom/tracker/core/errors';
 import { resolveRun } from '@wakeloom/tracker/run/resolve';
 import { parseRunSheet } from '@wakeloom/tracker/run/run-sheet';
 import type { ResolvedRun } from '@wakeloom/tracker/run/settings';
+import { calledAs } from '../called-as.js';
 import { EXIT } from '../exit-codes.js';
 import { expandFiles } from '../files.js';
 import { summaryLines } from '../messages.js';
@@ -77,8 +78,8 @@ export function nextSteps(out: string): string[] {
     `  open ${join(out, 'report.html')} in a browser`,
     '',
     'Next:',
-    `  wakeloom export ${folder} pathlines --out pathlines.csv`,
-    `  wakeloom export ${folder} grid --format vtk --out grid.vti`,
+    `  ${calledAs()} export ${folder} pathlines --out pathlines.csv`,
+    `  ${calledAs()} export ${folder} grid --format vtk --out grid.vti`,
   ];
 }
 
