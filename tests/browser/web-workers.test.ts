@@ -115,15 +115,16 @@ describe.skipIf(!here)('web workers', () => {
   });
 
   it('are ended when they do not look at messages', async () => {
-    const code = await page.evaluate(async () => {
+    const codes = await page.evaluate(async () => {
       const client = faultPage.start(150);
       await client.run('spin', { milliseconds: 1, breathes: true });
       const controller = new AbortController();
       const options = { signal: controller.signal };
       const call = faultPage.codeOf(client.run('spin', { milliseconds: 60_000, breathes: false }, options));
+      const other = faultPage.codeOf(client.run('spin', { milliseconds: 1, breathes: true }));
       controller.abort();
-      return [await call, client.death?.code];
+      return [await call, await other, client.death?.code];
     });
-    expect(code).toEqual(['run/aborted', 'worker/exited']);
+    expect(codes).toEqual(['run/aborted', 'worker/exited', 'worker/exited']);
   });
 });

@@ -208,6 +208,22 @@ describe('abort', () => {
     expect(client.death?.code).toBe('worker/exited');
   });
 
+  it('does not wait for a worker that is still starting', async () => {
+    const client = start();
+    const controller = new AbortController();
+    const call = client.run('spin', { milliseconds: 60_000, breathes: true }, { signal: controller.signal });
+    controller.abort();
+    // Nothing but this turn of the event loop: the worker cannot have answered.
+    const first = await Promise.race([
+      call.catch((error: { code: string }) => error.code),
+      new Promise((resolve) => setImmediate(() => resolve('still waiting'))),
+    ]);
+    expect(first).toBe('run/aborted');
+    // The call it got all the same ends at its first breath.
+    await expect(client.run('spin', { milliseconds: 1, breathes: true })).resolves.toBeGreaterThan(0);
+    expect(client.pending).toBe(0);
+  });
+
   it('does not start what is aborted already', async () => {
     const call = start().run('spin', { milliseconds: 60_000, breathes: true }, { signal: AbortSignal.abort() });
     await expect(call).rejects.toMatchObject({ code: 'run/aborted' });

@@ -50,6 +50,8 @@ export interface WorkerClient<Table extends OperationTable> {
 const GRACE_MS = 2000;
 
 interface Pending {
+  /** The worker has started on it; what is aborted before has nothing to clear up and need not be waited for. */
+  begun: boolean;
   readonly reject: (error: WakeloomError) => void;
   readonly options: RunOptions;
 }
@@ -70,9 +72,11 @@ export function createWorkerClient<Table extends OperationTable>(
   handle.endpoint.addEventListener('message', (event) => {
     const data = (event as MessageEvent<unknown>).data;
     if (!isNotice(data)) return;
-    const options = pending.get(data.call)?.options;
-    if (data.wakeloom === 'progress') options?.onProgress?.(data.stage, data.done, data.total, data.unit);
-    else options?.onEvent?.(data.event);
+    const call = pending.get(data.call);
+    if (call === undefined) return;
+    if (data.wakeloom === 'begun') call.begun = true;
+    else if (data.wakeloom === 'progress') call.options.onProgress?.(data.stage, data.done, data.total, data.unit);
+    else call.options.onEvent?.(data.event);
   });
 
   handle.onDeath((cause) => {
@@ -95,7 +99,6 @@ export function createWorkerClient<Table extends OperationTable>(
       /** True for the first to settle the call; whoever comes later is ignored. */
       function settle(): boolean {
         if (!pending.delete(id)) return false;
-        clearTimeout(grace);
         signal?.removeEventListener('abort', abort);
         if (pending.size === 0) handle.hold(false);
         return true;
@@ -107,20 +110,27 @@ export function createWorkerClient<Table extends OperationTable>(
         handle.endpoint.postMessage({ wakeloom: 'abort', call: id } satisfies AbortMessage);
         grace = setTimeout(() => {
           fail(abortedError());
-          void handle.terminate();
+          if (death === null) void handle.terminate();
         }, graceMs);
+        // A held worker keeps a Node process up; this clock alone shall not.
+        (grace as { unref?: () => void }).unref?.();
+        if (pending.get(id)?.begun === false) fail(abortedError());
       }
 
-      pending.set(id, { reject: fail, options });
+      pending.set(id, { begun: false, reject: fail, options });
       handle.hold(true);
       signal?.addEventListener('abort', abort);
       const call: Call = { id, operation, args, limits: { bytes, threads, seed } };
       send(remote, call, transfer).then(
         (outcome) => {
+          clearTimeout(grace);
           if (!outcome.ok) fail(fromPlainError(outcome.error));
           else if (settle()) resolve(outcome.value as Table[Name]['value']);
         },
-        (error) => fail(notSerialisable(handle.name, operation, error)),
+        (error) => {
+          clearTimeout(grace);
+          fail(notSerialisable(handle.name, operation, error));
+        },
       );
     });
   }

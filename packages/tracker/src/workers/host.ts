@@ -42,6 +42,7 @@ export function serveOperations<Table extends OperationTable, Platform>(
   async function call(request: Call): Promise<Outcome> {
     const controller = new AbortController();
     running.set(request.id, controller);
+    endpoint.postMessage({ wakeloom: 'begun', call: request.id } satisfies Notice);
     try {
       if (!Object.hasOwn(bodies, request.operation)) {
         throw new WakeloomError(

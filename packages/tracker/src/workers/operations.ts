@@ -1,5 +1,6 @@
 import type { ByteSource, HasherFactory } from '../core/bytes.js';
 import type { RunContext } from '../core/context.js';
+import { abortedError } from '../core/errors.js';
 import type { Hdf5Opener } from '../core/hdf5.js';
 import type { ResultPlace } from '../core/result-place.js';
 import type { FitRunner } from '../kinematics/fit-stage.js';
@@ -39,8 +40,9 @@ export const runBodies: OperationBodies<RunOperations, Platform> = {
   ...kernelBodies,
   async process({ request, sources, out }, context, platform) {
     // Loaded here, so that a worker that only runs kernels stays small.
-    const { processRun } = await import('../pipeline/process-run.js');
-    const [hasher, hdf5, place] = await Promise.all([platform.hasher(), platform.hdf5(), platform.openPlace(out)]);
+    const loaded = Promise.all([import('../pipeline/process-run.js'), platform.hasher(), platform.hdf5()]);
+    const [{ processRun }, hasher, hdf5] = await unlessAborted(loaded, context.signal);
+    const place = await platform.openPlace(out);
     const helpers = startHelpers(platform.startHelper, context.budget.threads - 1);
     const opened: ByteSource[] = [];
     try {
@@ -60,6 +62,16 @@ export const runBodies: OperationBodies<RunOperations, Platform> = {
     }
   },
 };
+
+/** The value when it comes, or `run/aborted` as soon as the signal fires: for waits that have nothing to clear up. */
+function unlessAborted<Value>(value: Promise<Value>, signal: AbortSignal): Promise<Value> {
+  return new Promise((resolve, reject) => {
+    const abort = (): void => reject(abortedError());
+    if (signal.aborted) return abort();
+    signal.addEventListener('abort', abort);
+    value.then(resolve, reject).finally(() => signal.removeEventListener('abort', abort));
+  });
+}
 
 /** A pool of further workers; null where there is to be none, and the coordinator runs the kernels itself. */
 function startHelpers(start: StartWorker, count: number): KernelRunner<KernelOperations> | null {

@@ -56,8 +56,12 @@ export interface AbortMessage {
   readonly call: number;
 }
 
-/** Worker to caller, outside comlink. Progress is throttled in the worker, events are not. */
+/**
+ * Worker to caller, outside comlink. `begun` comes first of each call: before it the worker may still be loading its
+ * script. Progress is throttled in the worker, events are not.
+ */
 export type Notice =
+  | { readonly wakeloom: 'begun'; readonly call: number }
   | {
       readonly wakeloom: 'progress';
       readonly call: number;
@@ -80,7 +84,7 @@ export type Notice =
 /** True for a notice of a worker, false for comlink's own messages. */
 export function isNotice(data: unknown): data is Notice {
   const kind = (data as { wakeloom?: unknown } | null)?.wakeloom;
-  return kind === 'progress' || kind === 'event';
+  return kind === 'begun' || kind === 'progress' || kind === 'event';
 }
 
 /** True for an abort message, false for comlink's own messages. */
