@@ -55,7 +55,7 @@ export async function voteFlow(
     coarse.add(pair, null);
     await context.breathe();
   }
-  coarse.teach(field);
+  await coarse.teach(field, context);
   for (let round = 0; round < REFINEMENTS; round++) {
     const fine = new VoteTable(field, options, round === 0 ? KERNEL_COARSE : KERNEL_FINE);
     for (const pair of pairs) {
@@ -63,7 +63,7 @@ export async function voteFlow(
       await context.breathe();
     }
     const next = FlowGrid.empty(options.dims, options.box, edge);
-    fine.teach(next);
+    await fine.teach(next, context);
     field = next;
   }
   return field;
@@ -153,13 +153,15 @@ class VoteTable {
    * Writes to `field` what the votes say: in every cell the votes near the densest velocity (left-over velocity in
    * a refinement), with their places, so that the cell's fit has a gradient.
    */
-  teach(field: FlowGrid): void {
+  async teach(field: FlowGrid, context: RunContext): Promise<void> {
     const depth = this.options.dims === 3 ? 1 / this.options.depthNoise : 1;
     const width = this.kernelSpeed();
     const per = 1 / (width * width);
-    this.eachCell((cell, votes, count) => {
+    for (const { cell, votes } of this.byCell()) {
+      await context.breathe();
+      const count = votes.length;
       const best = this.densest(votes, count);
-      if (best === null) return;
+      if (best === null) continue;
       for (let b = 0; b < count; b++) {
         const vote = votes[b];
         const du = this.u[vote] - best[0];
@@ -178,7 +180,7 @@ class VoteTable {
           this.flowW[vote],
         );
       }
-    });
+    }
     field.fit();
   }
 
@@ -187,8 +189,8 @@ class VoteTable {
     return this.kernel / (this.steps > 0 ? this.stepSum / this.steps : 1);
   }
 
-  /** Calls `visit` with the votes of each cell (numbers into the vote columns). */
-  private eachCell(visit: (cell: number, votes: Int32Array, count: number) => void): void {
+  /** The votes of each cell that has any (numbers into the vote columns). */
+  private *byCell(): Generator<{ cell: number; votes: Int32Array }> {
     const { cells } = this.grid;
     const start = new Int32Array(cells + 1);
     for (let n = 0; n < this.votes; n++) start[this.cell[n] + 1]++;
@@ -198,7 +200,7 @@ class VoteTable {
     for (let n = 0; n < this.votes; n++) order[fill[this.cell[n]]++] = n;
     for (let cell = 0; cell < cells; cell++) {
       const count = start[cell + 1] - start[cell];
-      if (count > 0) visit(cell, order.subarray(start[cell], start[cell + 1]), count);
+      if (count > 0) yield { cell, votes: order.subarray(start[cell], start[cell + 1]) };
     }
   }
 

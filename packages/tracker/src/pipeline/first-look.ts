@@ -19,6 +19,8 @@ const VOTING_IMAGE_PAIRS = 40;
 /** Detections that vote at most, and detections that are linked on trial for noise and span at most. */
 const VOTING_ROWS = 120_000;
 const TRIAL_ROWS = 400_000;
+/** Detections that tell the noise at most: a robust estimate from so many is good to a few parts in a thousand. */
+const NOISE_ROWS = 120_000;
 /** Detections that choose the span at most: the mean square over so many is good to a few per cent. */
 const SPAN_ROWS = 60_000;
 /** Position noise to assume where it cannot be measured, in mean spacings (about 0.1 px at usual seeding; common practice, no source). */
@@ -78,7 +80,9 @@ export async function firstLook(
     pairs: pairsClock,
   });
   const trial = await trialLinking(blocks, settings, start(ASSUMED_NOISE * spacing), context);
-  const measured = estimateNoise(trial);
+  await context.breathe();
+  const measured = estimateNoise(leading(trial, NOISE_ROWS));
+  await context.breathe();
   const noise: [number, number, number] = [0, 0, 0];
   for (let axis = 0; axis < dims; axis++) {
     const sigma = measured.sigma[axis];
@@ -87,6 +91,7 @@ export async function firstLook(
   const { span: wanted, order } = settings.smoothing;
   const span =
     wanted === 'auto' ? (pairsClock ? DEFAULT_SPAN : chooseSpan(leading(trial, SPAN_ROWS), noise, order)) : wanted;
+  await context.breathe();
   const moved = linkDisplacements(trial, spacing);
   context.event({
     code: 'linking/first-look',
