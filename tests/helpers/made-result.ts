@@ -54,6 +54,7 @@ export function madeRecord(finished: FinishedSamples): Omit<RunRecord, 'digest'>
       detections: finished.samples,
       outsideRegion: 0,
       insideBody: 0,
+      farAway: 0,
       detectionsForLinking: finished.samples,
       links: finished.links,
       linksBridging: finished.linksBridging,

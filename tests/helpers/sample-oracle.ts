@@ -33,7 +33,7 @@ export function sampleOracle(
   }
   const sorted = [...byPathline.entries()].sort((a, b) => a[0] - b[0]).map(([, rows]) => rows);
   const kept = sorted.filter((rows) => rows.length >= rule.shortest);
-  const short = sorted.filter((rows) => rows.length < rule.shortest);
+  const short = sorted.filter((rows) => rows.length > 1 && rows.length < rule.shortest);
   const axes = (['x', 'y', 'z'] as const).slice(0, made.dims ?? 2);
   for (const rows of kept) {
     const extents = axes.map((axis) => {

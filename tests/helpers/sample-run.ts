@@ -33,6 +33,7 @@ export function sampleRecord(overrides: Partial<RunRecord> = {}): RunRecord {
       detections: 1_200_007,
       outsideRegion: 7,
       insideBody: 1000,
+      farAway: 0,
       detectionsForLinking: 1_199_000,
       links: 1_050_000,
       linksBridging: 50_000,

@@ -43,6 +43,7 @@ export function countLines(
     line('Detections', counts.detections),
     line('outside the region', counts.outsideRegion, counts.detections, 'of detections', true),
     line('inside a body', counts.insideBody, counts.detections, 'of detections', true),
+    line('far away from the field', counts.farAway, counts.detections, 'of detections', true),
     line('Detections for linking', counts.detectionsForLinking),
     line(
       'in fragments shorter than the shortest pathline',

@@ -1,8 +1,8 @@
 import type { Dims } from '../core/columns.js';
 import type { NeighbourSearch, PointColumns } from './neighbour-search.js';
 
-/** Cells an axis may have beyond the square (cube) root of the number of points; keeps sparse or huge fields cheap. */
-const CELLS_PER_POINT = 2;
+/** Cells an axis may have beyond the square (cube) root of that many a point; keeps sparse or huge fields cheap. */
+const CELLS_PER_POINT = 16;
 
 /**
  * Cell index: points sorted by cell with a counting sort, cell edge = reach (or larger where the field is

@@ -5,6 +5,7 @@ import type { Hdf5Opener } from '../core/hdf5.js';
 import type { ResultPlace } from '../core/result-place.js';
 import type { CalibrationTally } from '../detections/calibrate.js';
 import type { Dump, DumpScan } from '../detections/dump.js';
+import type { FarAwayTally, FieldLimits } from '../detections/far-away.js';
 import type { GridResult } from '../eulerian/grid.js';
 import type { FitRunner } from '../kinematics/fit-stage.js';
 import type { GivenTally } from '../linking/given-pathlines.js';
@@ -60,6 +61,9 @@ export interface Board {
   dump?: Dump;
   scan?: DumpScan;
   look?: FirstLook;
+  /** Limits of the field; what lies beyond is no particle. */
+  limits?: FieldLimits;
+  farAway?: FarAwayTally;
   /** Streams: each may be consumed once. */
   detections?: AsyncIterable<DetectionBlock>;
   calibration?: CalibrationTally;

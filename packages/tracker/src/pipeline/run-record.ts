@@ -14,13 +14,14 @@ export function runRecord(board: Board, started: string): Omit<RunRecord, 'diges
   const scan = board.scan!;
   const finished = board.finished!;
   const calibration = board.calibration!;
+  const { farAway } = board.farAway!;
   const links = board.linkCounts!;
   const grid = board.grid!;
   const { prior } = board.look!;
   const { frameNumbers } = scan;
   const summary = calibrationSummary(settings);
   const { length, time } = settings.units;
-  const forLinking = calibration.detections - calibration.outsideRegion - calibration.insideBody;
+  const forLinking = calibration.detections - calibration.outsideRegion - calibration.insideBody - farAway;
   const pairs = settings.clock.kind === 'pairs';
   const inPathlines = pairs ? 2 * finished.samples : finished.samples;
   const filled = countFilled(grid.fields.get('u')?.values);
@@ -60,6 +61,7 @@ export function runRecord(board: Board, started: string): Omit<RunRecord, 'diges
       detections: calibration.detections,
       outsideRegion: calibration.outsideRegion,
       insideBody: calibration.insideBody,
+      farAway,
       detectionsForLinking: forLinking,
       links: finished.links,
       linksBridging: finished.linksBridging,

@@ -1,7 +1,14 @@
 import type { DetectionBlock } from '../core/columns.js';
-import { createContext } from '../core/context.js';
+import { createContext, type RunContext } from '../core/context.js';
 import { WakeloomError } from '../core/errors.js';
 import { type CalibrationTally, calibrate, newTally } from '../detections/calibrate.js';
+import {
+  dropFarAway,
+  type FarAwayTally,
+  type FieldLimits,
+  fieldLimits,
+  newFarAwayTally,
+} from '../detections/far-away.js';
 import { openDump } from '../detections/open-dump.js';
 import type { Board, Stage } from './board.js';
 import { FIRST_LOOK, firstLook } from './first-look.js';
@@ -46,7 +53,7 @@ export const scanStage: Stage = {
 export const lookStage: Stage = {
   name: 'look',
   needs: ['dump', 'scan'],
-  gives: ['look'],
+  gives: ['look', 'limits'],
   async run(board) {
     const { request, context } = board;
     const first: DetectionBlock[] = [];
@@ -60,6 +67,9 @@ export const lookStage: Stage = {
       frames += block.number.length;
       if (frames >= FIRST_LOOK.frames || rows >= FIRST_LOOK.rows) break;
     }
+    board.limits = fieldLimits(first);
+    const tally = newFarAwayTally();
+    for (const [k, block] of first.entries()) first[k] = dropFarAway(block, board.limits, tally);
     const { settings } = request.resolved;
     const step = frameStep(board.scan!.frameNumbers, settings.clock);
     if (step > 1) {
@@ -77,11 +87,13 @@ export const lookStage: Stage = {
 /** Opens the stream of calibrated detections. */
 export const detectionsStage: Stage = {
   name: 'detections',
-  needs: ['dump', 'scan'],
-  gives: ['detections', 'calibration'],
+  needs: ['dump', 'scan', 'limits'],
+  gives: ['detections', 'calibration', 'farAway'],
   run(board) {
     board.calibration = newTally();
-    board.detections = calibrated(board, board.context, board.calibration);
+    board.farAway = newFarAwayTally();
+    const blocks = calibrated(board, board.context, board.calibration);
+    board.detections = withinField(blocks, board.limits!, board.farAway, board.context);
   },
 };
 
@@ -97,4 +109,22 @@ async function* calibrated(
     countInSteps(block, scan.frameNumbers[0], step);
     yield block;
   }
+}
+
+/** Leaves out what lies far from the field, and says so at the end. */
+async function* withinField(
+  blocks: AsyncIterable<DetectionBlock>,
+  limits: FieldLimits,
+  tally: FarAwayTally,
+  context: RunContext,
+): AsyncGenerator<DetectionBlock> {
+  for await (const block of blocks) yield dropFarAway(block, limits, tally);
+  if (tally.farAway === 0) return;
+  const places = tally.examples.map(({ row, x, y }) => `row ${row} at ${x}, ${y}`).join('; ');
+  context.event({
+    code: 'dump/far-away',
+    level: 'warning',
+    message: `${tally.farAway} detections lie more than ten fields away and were left out (data ${places}${tally.farAway > tally.examples.length ? '; ...' : ''})`,
+    details: { count: tally.farAway, examples: tally.examples },
+  });
 }

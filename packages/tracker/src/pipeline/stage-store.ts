@@ -21,7 +21,7 @@ const FEWEST_STUCK = 20;
  */
 export const storeStage: Stage = {
   name: 'store',
-  needs: ['scan', 'look', 'calibration', 'linkCounts', 'samples', 'extent'],
+  needs: ['scan', 'look', 'calibration', 'farAway', 'linkCounts', 'samples', 'extent'],
   gives: ['finished', 'grid', 'pathlinesBySamples', 'record'],
   async run(board) {
     const { context, tools, request, seconds } = board;

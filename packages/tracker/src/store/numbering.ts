@@ -9,7 +9,7 @@ export interface Numbering {
   readonly next: Int32Array;
   readonly pathlines: number;
   readonly samples: number;
-  /** Pathlines shorter than `shortest` and the detections in them. */
+  /** Pathlines of two or more samples, but fewer than `shortest`, and the detections in them. */
   readonly shortFragments: number;
   readonly shortFragmentDetections: number;
   readonly medianSamples: number;
@@ -34,6 +34,8 @@ export function numberPathlines(counts: Growable<Int32Array>, shortest: number):
     final[p] = -1;
     if (count === 0) continue;
     if (count < shortest) {
+      // A detection that nothing was linked to is no fragment.
+      if (count === 1) continue;
       shortFragments++;
       shortFragmentDetections += count;
       continue;

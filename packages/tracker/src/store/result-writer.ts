@@ -51,7 +51,7 @@ export interface ResultWriterOptions {
 export interface FinishedSamples {
   readonly samples: number;
   readonly pathlines: number;
-  /** Pathlines with fewer than `shortest` samples, and the detections in them: dropped. */
+  /** Pathlines of two or more but fewer than `shortest` samples, and the detections in them: dropped. */
   readonly shortFragments: number;
   readonly shortFragmentDetections: number;
   readonly links: number;

@@ -17,6 +17,8 @@ export interface RunCounts {
   /** Left out by geometry: outside the region, inside a body. */
   readonly outsideRegion: number;
   readonly insideBody: number;
+  /** Left out because they lie more than ten fields away from the field (a slip of a digit). */
+  readonly farAway: number;
   readonly detectionsForLinking: number;
   /** Links made (pairs of successive detections of one kept pathline), links across missing frames. */
   readonly links: number;
