@@ -2,7 +2,7 @@
 // bench/results/DATE-COMMIT.json and the table in bench/results/README.md is made anew from them. Each case checks
 // its answers before it is timed and compares within one run: absolute figures of a shared machine drift.
 import { execFileSync } from 'node:child_process';
-import { writeFileSync } from 'node:fs';
+import { mkdirSync, writeFileSync } from 'node:fs';
 import { availableParallelism, cpus, loadavg, totalmem } from 'node:os';
 import { fileURLToPath, pathToFileURL } from 'node:url';
 import { print } from './lib/timed.mjs';
@@ -75,6 +75,7 @@ async function main(named) {
   }
   if (named.length > 0) return;
   const file = `${result.date}-${result.commit}.json`;
+  mkdirSync(here('results'), { recursive: true });
   writeFileSync(here(`results/${file}`), `${JSON.stringify(result, null, 2)}\n`);
   writeFileSync(here('results/README.md'), table(file, result));
   console.log(`\nwritten to bench/results/${file}`);

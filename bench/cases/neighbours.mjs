@@ -34,7 +34,7 @@ export async function run() {
     for (const [name, make] of Object.entries(searches)) {
       const search = make();
       const time = await timed(RUNS, async () => all(search, block, count, 1).seconds);
-      const each = `${((time.medianSeconds / count) * 1e9).toPrecision(3)} ns a particle`;
+      const each = `${Math.round((time.medianSeconds / count) * 1e9)} ns a particle`;
       rows.push({ name: `neighbours in ${dims}-D, ${name}, 50 000 particles`, ...time, rate: each });
     }
   }

@@ -110,11 +110,4 @@ export async function run() {
   }
 }
 
-if (process.argv[1] === fileURLToPath(import.meta.url)) {
-  const rows = await run();
-  print(rows);
-  for (const { name, peakMegabytes, note } of rows) {
-    if (peakMegabytes !== undefined)
-      console.log(`${name}: ${peakMegabytes} MB resident at most${note ? `; ${note}` : ''}`);
-  }
-}
+if (process.argv[1] === fileURLToPath(import.meta.url)) print(await run());

@@ -18,12 +18,10 @@ export async function seconds(work) {
   return (performance.now() - start) / 1000;
 }
 
-/** `1.2 million samples/s` and the like. */
+/** `1.20 million samples/s` and the like. */
 export function rate(count, medianSeconds, unit) {
   const perSecond = count / medianSeconds;
-  return perSecond >= 1e5
-    ? `${(perSecond / 1e6).toPrecision(3)} million ${unit}/s`
-    : `${perSecond.toPrecision(3)} ${unit}/s`;
+  return `${(perSecond / 1e6).toPrecision(3)} million ${unit}/s`;
 }
 
 /** Throws unless the answer is right: nothing is timed that is wrong. */
@@ -34,9 +32,10 @@ export function check(right, what) {
 /** Prints the rows of a case that is run alone. */
 export function print(rows) {
   for (const row of rows) {
+    const peak = row.peakMegabytes === undefined ? '' : `  ${row.peakMegabytes} MB resident at most`;
     const spread = row.spread === null ? 'once' : `spread ${Math.round(row.spread * 100)} %`;
     console.log(
-      `${row.name.padEnd(64)} ${row.medianSeconds.toFixed(3).padStart(8)} s  ${spread.padStart(12)}  ${row.rate}`,
+      `${row.name.padEnd(64)} ${row.medianSeconds.toFixed(3).padStart(8)} s  ${spread.padStart(12)}  ${row.rate}${peak}`,
     );
   }
 }
