@@ -100,8 +100,9 @@ class OpenDump implements Dump {
       const { numbers, values } = table.sorted();
       const rows = pass.ledger.rowsPresent - pass.ledger.count();
       refuseOverLimit(rows, numbers.length, shape, this.#tools.ramLimit, this.#files[0].name);
-      const again = this.#pass(context, false);
+      const again = this.#pass(context, true);
       this.#ordered = await OrderedRows.collect(again, numbers, values, shape, finisher, notes.seen);
+      if (!sameBytes(again, pass.hashes)) throw changed(again);
     }
     refuseBadRows(pass);
     refuseTimes(pass, finisher);
@@ -149,7 +150,7 @@ class OpenDump implements Dump {
       }
       return;
     }
-    const pass = this.#pass(context, false);
+    const pass = this.#pass(context, true);
     const gatherer = new FrameGatherer(shape, rows, new FrameFinisher(pass.ledger, pass.fileOf));
     for await (const _ of readBatches(pass)) {
       for (let i = 0; i < pass.batch.rows; ) {
@@ -162,6 +163,9 @@ class OpenDump implements Dump {
     gatherer.endFrame();
     const { rowsPresent } = pass.ledger;
     if (rowsPresent !== scan.rowsPresent || rowsPresent - pass.ledger.count() !== scan.rowsRead) throw changed(pass);
+    // What run.json says the run was made from must be what it was made from: rows alone may keep their number.
+    const noted = scan.files.map((file) => file.sha256);
+    if (!sameBytes(pass, noted)) throw changed(pass);
     const block = gatherer.take();
     if (block !== null) yield block;
   }
@@ -187,6 +191,10 @@ class OpenDump implements Dump {
       `${repeated.length} files repeat a frame number, first ${name} and ${seen.get(frame)} (frame ${frame}): taken as one frame`,
     ];
   }
+}
+
+function sameBytes(pass: DumpPass, hashes: readonly string[]): boolean {
+  return pass.hashes.every((hash, i) => hash === hashes[i]);
 }
 
 function countFrames(batch: RowBatch, table: FrameTable): void {

@@ -108,7 +108,7 @@ export class OrderedRows {
 export function changed(pass: DumpPass): WakeloomError {
   return new WakeloomError(
     'dump/changed',
-    `dump changed while it was read: got other rows in the second reading, expected those of the first; start again when nothing writes to it (${pass.files[0].name})`,
+    `dump changed while it was read: got other content in the second reading, expected that of the first; start again when nothing writes to it (${pass.files[0].name})`,
     { file: pass.files[0].name },
   );
 }

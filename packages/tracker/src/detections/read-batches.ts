@@ -54,12 +54,13 @@ async function* readFile(file: ByteSource, buffer: Uint8Array, pass: DumpPass): 
     return;
   }
   pass.agreeFormat(file.name, format);
-  if (pass.hashing) await hashFile(file, buffer, pass);
   const rowsBefore = pass.ledger.rowsPresent;
   if (format === 'npy') yield* readNpy(file, pass);
   else if (format === 'hdf5') yield* readHdf5(file, pass);
   else yield* readParquet(file, pass);
   if (pass.ledger.rowsPresent === rowsBefore) pass.headerOnlyFiles.push(file.name);
+  // Last, so that whoever wants the first frames only does not wait for it.
+  if (pass.hashing) await hashFile(file, buffer, pass);
 }
 
 async function hashFile(file: ByteSource, buffer: Uint8Array, pass: DumpPass): Promise<void> {
