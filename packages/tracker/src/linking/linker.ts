@@ -18,6 +18,8 @@ const RECORD_KEEP = 0.95;
 /** Weight of the newest link in a pathline's own deviation from the flow picture. */
 const DEVIATION_GAIN = 0.5;
 const AGE_CAP = 200;
+/** Mark of a pathline whose link was left out for its risk: it ends. */
+const ENDED = -2;
 
 export interface LinkerOptions {
   readonly dims: Dims;
@@ -217,7 +219,8 @@ export class Linker {
         wrong = linkRisk(candidates.density[e], rowSum, columnDensity[column], stray);
         if (wrong > riskLimit) {
           tally.leftOutForRisk++;
-          edgeOfRow[i] = -1;
+          // The detection starts a pathline of its own; the old one must not contend with it for the next ones.
+          edgeOfRow[i] = ENDED;
         }
       }
       const j = spare.count++;
@@ -300,7 +303,7 @@ export class Linker {
     const fewest = this.pairsOnly ? 2 : 3;
     for (let j = 0; j < columns; j++) {
       const i = rowOfColumn[j];
-      if (i === -1 || edgeOfRow[i] === -1 || spare.age[j] < fewest) continue;
+      if (i === -1 || edgeOfRow[i] < 0 || spare.age[j] < fewest) continue;
       const half = 0.5 * (time - active.time[i]);
       const u = spare.u[j];
       const v = spare.v[j];

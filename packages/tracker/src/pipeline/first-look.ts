@@ -115,25 +115,31 @@ export async function firstLook(
   };
 }
 
-/** Bounding box of all detections and their mean number a frame. */
+/** Share of detections at either end of each axis that do not count for the box: strays of the detection software. */
+const STRAY_SHARE = 0.001;
+/** Positions that the box is taken from. */
+const BOX_ROWS = 100_000;
+
+/** Box that holds all but a few in a thousand of the detections, and their mean number a frame. */
 function extent(blocks: readonly DetectionBlock[]): { box: Box; perFrame: number } {
-  const min: [number, number, number] = [Number.POSITIVE_INFINITY, Number.POSITIVE_INFINITY, Number.POSITIVE_INFINITY];
-  const max: [number, number, number] = [Number.NEGATIVE_INFINITY, Number.NEGATIVE_INFINITY, Number.NEGATIVE_INFINITY];
+  const min: [number, number, number] = [0, 0, 0];
+  const max: [number, number, number] = [0, 0, 0];
   let rows = 0;
   let frames = 0;
   for (const block of blocks) {
     rows += block.x.length;
     frames += block.number.length;
-    for (const [axis, column] of [block.x, block.y, block.z].entries()) {
-      for (let row = 0; row < column.length; row++) {
-        if (column[row] < min[axis]) min[axis] = column[row];
-        if (column[row] > max[axis]) max[axis] = column[row];
-      }
-    }
   }
-  if (!Number.isFinite(min[2])) {
-    min[2] = 0;
-    max[2] = 0;
+  const stride = Math.max(1, Math.floor(rows / BOX_ROWS));
+  for (const [axis, name] of (['x', 'y', 'z'] as const).entries()) {
+    const values: number[] = [];
+    for (const block of blocks) for (let i = 0; i < block[name].length; i += stride) values.push(block[name][i]);
+    if (values.length === 0) continue;
+    const sorted = Float64Array.from(values).sort();
+    // From few detections the very ends are taken: a thousandth of them is none.
+    const cut = Math.floor(STRAY_SHARE * sorted.length);
+    min[axis] = sorted[cut];
+    max[axis] = sorted[sorted.length - 1 - cut];
   }
   return { box: { min, max }, perFrame: frames > 0 ? rows / frames : 0 };
 }
