@@ -117,9 +117,6 @@ export async function firstLook(
 
 /** Share of detections at either end of each axis that do not count for the box: strays of the detection software. */
 const STRAY_SHARE = 0.001;
-/** Positions that the box is taken from. */
-const BOX_ROWS = 100_000;
-
 /** Box that holds all but a few in a thousand of the detections, and their mean number a frame. */
 function extent(blocks: readonly DetectionBlock[]): { box: Box; perFrame: number } {
   const min: [number, number, number] = [0, 0, 0];
@@ -130,12 +127,16 @@ function extent(blocks: readonly DetectionBlock[]): { box: Box; perFrame: number
     rows += block.x.length;
     frames += block.number.length;
   }
-  const stride = Math.max(1, Math.floor(rows / BOX_ROWS));
   for (const [axis, name] of (['x', 'y', 'z'] as const).entries()) {
-    const values: number[] = [];
-    for (const block of blocks) for (let i = 0; i < block[name].length; i += stride) values.push(block[name][i]);
-    if (values.length === 0) continue;
-    const sorted = Float64Array.from(values).sort();
+    // All of them: a selection by row would not be the same for a mirrored field.
+    const sorted = new Float64Array(blocks.reduce((sum, block) => sum + block[name].length, 0));
+    let at = 0;
+    for (const block of blocks) {
+      sorted.set(block[name], at);
+      at += block[name].length;
+    }
+    if (sorted.length === 0) continue;
+    sorted.sort();
     // From few detections the very ends are taken: a thousandth of them is none.
     const cut = Math.floor(STRAY_SHARE * sorted.length);
     min[axis] = sorted[cut];
