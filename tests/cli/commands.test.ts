@@ -1,4 +1,4 @@
-import { existsSync, mkdtempSync, readdirSync, readFileSync, rmSync, writeFileSync } from 'node:fs';
+import { cpSync, existsSync, mkdtempSync, readdirSync, readFileSync, rmSync, writeFileSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { afterAll, beforeAll, describe, expect, it } from 'vitest';
@@ -197,12 +197,12 @@ describe('process without a run sheet, then export', () => {
   });
 
   it.each([
-    ['pathlines', 'parquet', 'PAR1'],
-    ['pathlines', 'npy', '\u0093NUMPY'],
-    ['pathlines', 'vtk', '<?xml'],
-    ['grid', 'vtk', '<?xml'],
-  ])('exports %s as %s into a file, and leaves no part of one behind', async (what, format, magic) => {
-    const out = `out-${what}.${format}`;
+    ['pathlines', 'parquet', '.parquet', 'PAR1'],
+    ['pathlines', 'npy', '.npy', '\u0093NUMPY'],
+    ['pathlines', 'vtk', '.vtp', '<?xml'],
+    ['grid', 'vtk', '.vti', '<?xml'],
+  ])('exports %s as %s into a file, and leaves no part of one behind', async (what, format, extension, magic) => {
+    const out = `out-${what}${extension}`;
     const { code, stdout } = await runCli(['export', 'result', what, '--format', format, '--out', out], {
       cwd: folder,
     });
@@ -220,6 +220,55 @@ describe('process without a run sheet, then export', () => {
     expect(stdout.startsWith('pathline,')).toBe(true);
     // Far less than the whole: 7200 rows of at least 100 characters.
     expect(stdout.length).toBeLessThan(7200 * 100);
+  });
+
+  it.each<[string, string[], RegExp]>([
+    ['a file of the result itself', ['--out', join('result', 'grid.nc')], /lies in the result folder/],
+    [
+      'the same, whatever --replace says',
+      ['--out', join('result', 'run.json'), '--replace'],
+      /lies in the result folder/,
+    ],
+    ['a new file in the result folder', ['--out', join('result', 'grid.csv')], /lies in the result folder/],
+    ['an existing file', ['--out', 'kept.txt'], /"kept\.txt", which exists.*--replace/],
+    ['the legacy VTK ending', ['--format', 'vtk', '--out', 'grid.vtk'], /"grid\.vtk", expected \.vti/],
+    ['the ending of polylines for a grid', ['--format', 'vtk', '--out', 'grid.vtp'], /expected \.vti/],
+    ['a VTK ending for CSV', ['--out', 'grid.vti'], /expected \.csv for csv; or add --format vtk/],
+  ])('does not write %s', async (_, more, message) => {
+    writeFileSync(at('kept.txt'), 'years of work');
+    const before = ['grid.nc', 'run.json'].map((name) => readFileSync(at('result', name), 'latin1'));
+    const { code, stdout, stderr } = await runCli(['export', 'result', 'grid', ...more], { cwd: folder });
+    expect([code, stdout]).toEqual([2, '']);
+    expect(stderr).toMatch(message);
+    expect(['grid.nc', 'run.json'].map((name) => readFileSync(at('result', name), 'latin1'))).toEqual(before);
+    expect(readFileSync(at('kept.txt'), 'utf8')).toBe('years of work');
+    expect(readdirSync(at('result'))).toHaveLength(6);
+    expect(existsSync(at('grid.vtk'))).toBe(false);
+  });
+
+  it('writes over an existing file with --replace', async () => {
+    writeFileSync(at('kept.txt'), 'old');
+    const words = ['export', 'result', 'grid', '--out', 'kept.txt', '--replace', '--quiet'];
+    expect((await runCli(words, { cwd: folder })).code).toBe(0);
+    expect(readFileSync(at('kept.txt'), 'utf8')).toMatch(/^x,y,samples/);
+  });
+
+  it('--verify passes a whole result and finds one flipped bit', async () => {
+    const words = ['export', 'damaged', 'grid', '--verify', '--out', 'verified.csv'];
+    cpSync(at('result'), at('damaged'), { recursive: true });
+    const whole = await runCli(words, { cwd: folder });
+    expect(whole.code).toBe(0);
+    rmSync(at('verified.csv'));
+    const bytes = readFileSync(at('damaged', 'pathlines.nc'));
+    // The time of a sample: a multiple of 1/500 s that stands in the raw data as it is.
+    const place = bytes.lastIndexOf(Buffer.from(Float64Array.of(7 / 500).buffer));
+    expect(place).toBeGreaterThan(0);
+    bytes[place]! ^= 1;
+    writeFileSync(at('damaged', 'pathlines.nc'), bytes);
+    const broken = await runCli(words, { cwd: folder });
+    expect([broken.code, broken.stdout]).toEqual([1, '']);
+    expect(broken.stderr).toMatch(/got content .*, expected .* as run\.json says \(damaged\/pathlines\.nc\)/);
+    expect(existsSync(at('verified.csv'))).toBe(false);
   });
 
   it('refuses to send anything but CSV to stdout', async () => {

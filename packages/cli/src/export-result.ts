@@ -5,8 +5,15 @@ import { openNodeResultPlace } from '@wakeloom/tracker/node';
 import { type ExportOptions, exportGrid, exportPathlines } from '@wakeloom/tracker/store/exports/registry';
 import type { ExportSummary } from '@wakeloom/tracker/store/exports/table';
 import { openResult, type ResultReader } from '@wakeloom/tracker/store/read-result';
+import { verifyResult } from '@wakeloom/tracker/store/verify-result';
 import type { Hooks } from './hooks.js';
 import { readNormalisation } from './normalise.js';
+
+/** Reads the whole result back against its digest. Codes: those of `verifyResult`. */
+export async function verifyFolder(folder: string, hooks: Hooks): Promise<void> {
+  const context = createContext({ signal: hooks.signal, onProgress: hooks.onProgress, onEvent: hooks.onEvent });
+  await verifyResult(await openNodeResultPlace(folder, { create: false }), context);
+}
 
 /** What to export, checked as far as it goes without opening the result. */
 export interface ExportWish {

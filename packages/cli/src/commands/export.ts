@@ -1,11 +1,11 @@
-import { renameSync, rmSync } from 'node:fs';
-import { dirname } from 'node:path';
+import { realpathSync, renameSync, rmSync } from 'node:fs';
+import { basename, dirname, extname, isAbsolute, join, relative, sep } from 'node:path';
 import { WakeloomError } from '@wakeloom/tracker/core/errors';
 import { formatBytes, formatCount } from '@wakeloom/tracker/figures/number-format';
 import { openFileSink } from '@wakeloom/tracker/node';
 import { EXPORTERS, findExporter } from '@wakeloom/tracker/store/exports/registry';
 import { EXIT } from '../exit-codes.js';
-import { type ExportWish, openExport } from '../export-result.js';
+import { type ExportWish, openExport, verifyFolder } from '../export-result.js';
 import { lookAt } from '../files.js';
 import { single } from '../options.js';
 import { isOurResult } from '../out-folder.js';
@@ -36,7 +36,12 @@ export const EXPORT: Verb = {
         type: 'string',
         description: `${EXPORTERS.map(({ format, help }) => `${format} (${help})`).join('; ')} [csv]`,
       })
-      .option('out', { type: 'string', description: 'File to write; replaced when it exists' })
+      .option('out', { type: 'string', description: 'File to write, outside the result folder' })
+      .option('replace', { type: 'boolean', description: 'Write over an existing file' })
+      .option('verify', {
+        type: 'boolean',
+        description: 'First read the whole result back and hold it against the digest in run.json',
+      })
       .option('normalise', {
         type: 'string',
         description: 'Divide by a length and a speed, such as "5 mm, 30 mm/s": x/L, u/U, t U/L, stresses/U2',
@@ -56,7 +61,8 @@ async function runExport(words: readonly string[], args: Args, terminal: Termina
       `--out: got nothing, expected a file for ${wish.format}, such as --out ${wish.what}${extension[wish.what]} (only csv goes to standard output)`,
     );
   }
-  if (out !== null) checkOutFile(out);
+  if (out !== null) checkOutFile(out, wish, args['replace'] === true);
+  if (args['verify'] === true) await longWork(terminal, quiet, (hooks) => verifyFolder(wish.folder, hooks));
   const opened = await openExport(wish);
   const summary = await longWork(terminal, quiet, async (hooks) => {
     if (out === null) return opened.write(terminal.dataSink(), hooks);
@@ -112,8 +118,10 @@ function readWish(words: readonly string[], args: Args): ExportWish {
   return { folder, what, format, normalise };
 }
 
-function checkOutFile(out: string): void {
-  if (lookAt(out)?.isDirectory() === true) {
+/** Refuses, before any work, what cannot be written or must not be written over. */
+function checkOutFile(out: string, wish: ExportWish, replace: boolean): void {
+  const found = lookAt(out);
+  if (found?.isDirectory() === true) {
     throw new WakeloomError('usage/out-not-a-file', `--out: got "${out}", which is a folder, expected a file`, {
       path: out,
     });
@@ -125,6 +133,39 @@ function checkOutFile(out: string): void {
       { path: out },
     );
   }
+  checkExtension(out, wish);
+  if (isWithin(out, wish.folder)) {
+    throw new WakeloomError(
+      'usage/out-in-result',
+      `--out: got "${out}", which lies in the result folder "${wish.folder}", expected a file outside it; a result keeps only its own files`,
+      { path: out },
+    );
+  }
+  if (found !== undefined && !replace) {
+    throw new WakeloomError(
+      'usage/out-exists',
+      `--out: got "${out}", which exists, expected a new file; choose another name, or add --replace to write over it`,
+      { path: out },
+    );
+  }
+}
+
+/** Whether a file lies, or would lie, in the folder or below it; links are followed. */
+function isWithin(file: string, folder: string): boolean {
+  const way = relative(realpathSync(folder), join(realpathSync(dirname(file)), basename(file)));
+  return way !== '..' && !way.startsWith(`..${sep}`) && !isAbsolute(way);
+}
+
+/** VTK software tells its formats by the ending alone: XML under another one is not opened, or taken for something else. */
+function checkExtension(out: string, { format, what }: ExportWish): void {
+  const ending = extname(out).toLowerCase();
+  const own = findExporter(format).extension[what];
+  if (!/^\.(vtk|vt[a-z])$/.test(ending) || ending === own) return;
+  const why =
+    format !== 'vtk'
+      ? `expected ${own} for ${format}; or add --format vtk`
+      : `expected ${own}: ${what} are written as VTK XML, not in the legacy format or as another kind of data`;
+  throw new WakeloomError('usage/out-extension', `--out: got "${out}", ${why}`, { path: out });
 }
 
 /** Writes beside the file and renames at the end, so that a broken export never passes for a whole one. */
