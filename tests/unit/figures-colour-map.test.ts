@@ -1,3 +1,4 @@
+import { readFileSync } from 'node:fs';
 import {
   COLOURS,
   type ColourMap,
@@ -29,20 +30,65 @@ function cielab([r, g, b]: readonly [number, number, number]): [number, number, 
   return [116 * f(y) - 16, 500 * (f(x) - f(y)), 200 * (f(y) - f(z))];
 }
 
+type Eyes = 'all cones' | 'protan' | 'deutan' | 'tritan';
+
 /**
- * What someone without red or green cones sees: Vienot, Brettel & Mollon 1999 (Color Res. Appl. 24, 243), matrices
- * from memory, applied to linear light.
+ * What eyes without red, green or blue cones see of linear sRGB: Machado, Oliveira & Fernandes 2009 (IEEE Trans. Vis.
+ * Comput. Graph. 15, 1291, doi:10.1109/TVCG.2009.113), matrices of severity 1.0, from memory. Rows sum to 1: greys stay.
  */
-function deficient(kind: 'protan' | 'deutan', [r, g, b]: readonly [number, number, number]): [number, number, number] {
-  const l = 17.8824 * r + 43.5161 * g + 4.11935 * b;
-  const m = 3.45565 * r + 27.1554 * g + 3.86714 * b;
-  const s = 0.0299566 * r + 0.184309 * g + 1.46709 * b;
-  const [l2, m2] = kind === 'protan' ? [2.02344 * m - 2.52581 * s, m] : [l, 0.494207 * l + 1.24827 * s];
+const SEEN: Readonly<Record<Eyes, readonly (readonly [number, number, number])[]>> = {
+  'all cones': [
+    [1, 0, 0],
+    [0, 1, 0],
+    [0, 0, 1],
+  ],
+  protan: [
+    [0.152286, 1.052583, -0.204868],
+    [0.114503, 0.786281, 0.099216],
+    [-0.003882, -0.048116, 1.051998],
+  ],
+  deutan: [
+    [0.367322, 0.860646, -0.227968],
+    [0.280085, 0.672501, 0.047413],
+    [-0.01182, 0.04294, 0.968881],
+  ],
+  tritan: [
+    [1.255528, -0.076749, -0.178779],
+    [-0.078411, 0.930809, 0.147602],
+    [0.004733, 0.691367, 0.3039],
+  ],
+};
+const ALL_EYES = ['all cones', 'protan', 'deutan', 'tritan'] as const;
+
+function seenBy(eyes: Eyes, [r, g, b]: readonly [number, number, number]): [number, number, number] {
+  const see = ([x, y, z]: readonly [number, number, number]) => Math.min(1, Math.max(0, x * r + y * g + z * b));
+  const [first, second, third] = SEEN[eyes];
+  return [see(first!), see(second!), see(third!)];
+}
+
+/** Linear sRGB to OKLab (Ottosson 2020): the inverse of what the maps are built with, in its published digits. */
+function oklab([r, g, b]: readonly [number, number, number]): [number, number, number] {
+  const l = Math.cbrt(0.4122214708 * r + 0.5363325363 * g + 0.0514459929 * b);
+  const m = Math.cbrt(0.2119034982 * r + 0.6806995451 * g + 0.1073969566 * b);
+  const s = Math.cbrt(0.0883024619 * r + 0.2817188376 * g + 0.6299787005 * b);
   return [
-    0.0809444479 * l2 - 0.130504409 * m2 + 0.116721066 * s,
-    -0.0102485335 * l2 + 0.0540193266 * m2 - 0.113614708 * s,
-    -0.000365296938 * l2 - 0.00412161469 * m2 + 0.693511405 * s,
+    0.2104542553 * l + 0.793617785 * m - 0.0040720468 * s,
+    1.9779984951 * l - 2.428592205 * m + 0.4505937099 * s,
+    0.0259040371 * l + 0.7827717662 * m - 0.808675766 * s,
   ];
+}
+
+/** Nine colours of each published map of a kind, in OKLab. */
+function published(kind: 'sequential' | 'diverging'): { name: string; colours: [number, number, number][] }[] {
+  const table = readFileSync(new URL('../../data/reference/published-colour-maps.csv', import.meta.url), 'utf8');
+  return table
+    .split('\n')
+    .map((line) => line.split(','))
+    .filter(([first]) => first === kind)
+    .map(([, name, ...hex]) => ({
+      name: name!,
+      colours: hex.map((text) => oklab(linearOf(Uint8Array.from(Buffer.from(text, 'hex')), 0))),
+    }));
 }
 
 const distance = (a: readonly number[], b: readonly number[]) => Math.hypot(...a.map((value, i) => value - b[i]!));
@@ -72,17 +118,11 @@ describe.each([
 });
 
 describe('sequential map in CIELAB, from its bytes', () => {
-  it('rises in lightness from entry to entry, also for protan and deutan eyes', () => {
-    for (const seen of [
-      (c: [number, number, number]) => c,
-      (c: [number, number, number]) => deficient('protan', c),
-      (c: [number, number, number]) => deficient('deutan', c),
-    ]) {
-      const lightness = all.map((i) => cielab(seen(linearOf(SEQUENTIAL, i)))[0]);
-      // Bytes round by up to half a step, so neighbours may tie; four entries apart must not.
-      for (let i = 4; i < COLOURS; i++) expect(lightness[i]!).toBeGreaterThan(lightness[i - 4]!);
-      expect(lightness[COLOURS - 1]! - lightness[0]!).toBeGreaterThan(75);
-    }
+  it.each(ALL_EYES)('rises in lightness from entry to entry for eyes with %s', (eyes) => {
+    const lightness = all.map((i) => cielab(seenBy(eyes, linearOf(SEQUENTIAL, i)))[0]);
+    // Bytes round by up to half a step, so neighbours may tie; four entries apart must not.
+    for (let i = 4; i < COLOURS; i++) expect(lightness[i]!).toBeGreaterThan(lightness[i - 4]!);
+    expect(lightness[COLOURS - 1]! - lightness[0]!).toBeGreaterThan(70);
   });
 
   it('has steps that differ by less than a factor of 2.5 in CIELAB too', () => {
@@ -90,6 +130,12 @@ describe('sequential map in CIELAB, from its bytes', () => {
       distance(cielab(linearOf(SEQUENTIAL, i * 16)), cielab(linearOf(SEQUENTIAL, (i + 1) * 16))),
     );
     expect(Math.max(...steps) / Math.min(...steps)).toBeLessThan(2.5);
+  });
+
+  // A difference of 2.3 in CIELAB is just noticed (Mahy, Van Eycken & Oosterlinck 1994, from memory).
+  it.each(ALL_EYES)('keeps sixteenths of the range noticeably apart for eyes with %s', (eyes) => {
+    const seen = (i: number) => cielab(seenBy(eyes, linearOf(SEQUENTIAL, i)));
+    for (let i = 0; i + 16 < COLOURS; i++) expect(distance(seen(i), seen(i + 16))).toBeGreaterThan(2.3);
   });
 });
 
@@ -106,10 +152,32 @@ describe('diverging map in CIELAB, from its bytes', () => {
     expect(Math.hypot(a, b)).toBeLessThan(3);
   });
 
-  it('keeps its two ends apart for protan and deutan eyes', () => {
-    for (const kind of ['protan', 'deutan'] as const) {
-      const ends = [20, COLOURS - 21].map((i) => cielab(deficient(kind, linearOf(DIVERGING, i))));
-      expect(distance(ends[0]!, ends[1]!)).toBeGreaterThan(50);
+  it.each(ALL_EYES)('keeps equal values of both signs apart for eyes with %s', (eyes) => {
+    const seen = (i: number) => cielab(seenBy(eyes, linearOf(DIVERGING, i)));
+    const apart = (share: number) => {
+      const step = Math.round(share * 127);
+      return distance(seen(127 - step), seen(127 + step));
+    };
+    // Three times what is just noticed at an eighth of the range; unmistakable from half of it on.
+    expect(apart(1 / 8)).toBeGreaterThan(3 * 2.3);
+    for (const share of [0.5, 0.75, 1]) expect(apart(share)).toBeGreaterThan(30);
+  });
+});
+
+describe('both maps', () => {
+  // 0.02 in OKLab is about just noticed (from memory). Mean over nine places, in either direction of the other map.
+  it.each([
+    ['sequential', SEQUENTIAL, 17],
+    ['diverging', DIVERGING, 11],
+  ] as const)('%s: look like no published map in wide use', (kind, map, count) => {
+    const maps = published(kind);
+    expect(maps).toHaveLength(count);
+    const own = Array.from({ length: 9 }, (_, i) => oklab(linearOf(map, Math.round((i * (COLOURS - 1)) / 8))));
+    const mean = (colours: readonly (readonly number[])[]) =>
+      own.reduce((sum, colour, i) => sum + distance(colour, colours[i]!) / 9, 0);
+    for (const { name, colours } of maps) {
+      const nearest = Math.min(mean(colours), mean([...colours].reverse()));
+      expect({ name, apart: nearest > 0.07, nearest }).toMatchObject({ name, apart: true });
     }
   });
 });

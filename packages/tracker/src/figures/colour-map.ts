@@ -2,8 +2,8 @@
  * Two colour maps of our own, built in OKLab (B. Ottosson 2020, "A perceptual color space for image processing"):
  * smooth paths through a few anchor colours, walked in steps of equal OKLab distance, so that equal differences of
  * the value look equally large. Lightness rises strictly along the sequential map and falls strictly from the middle
- * of the diverging one to both ends; hues run from blue to yellow or orange, which the common colour-vision
- * deficiencies tell apart, and grey prints keep the order.
+ * of the diverging one to both ends: the order is kept in grey prints and for eyes without red, green or blue cones.
+ * The two arms of the diverging map lie on both sides of what such eyes confuse, so that signs stay apart.
  */
 
 /** Entries of a colour map: odd, so that a diverging map has a middle; 255, so that a byte holds them and "empty". */
@@ -15,22 +15,22 @@ export type ColourMap = Uint8Array;
 /** Anchor colour: OKLab lightness 0..1, chroma, hue in degrees. */
 type Anchor = readonly [lightness: number, chroma: number, hue: number];
 
-/** Deep water over green to sand. */
-const DEPTH: readonly Anchor[] = [
-  [0.23, 0.085, 277],
-  [0.43, 0.115, 254],
-  [0.62, 0.103, 214],
-  [0.79, 0.118, 160],
-  [0.95, 0.105, 108],
+/** Bottle green over slate and lilac to sand. */
+const MEADOW: readonly Anchor[] = [
+  [0.25, 0.043, 165],
+  [0.43, 0.07, 222],
+  [0.61, 0.11, 285],
+  [0.77, 0.1, 338],
+  [0.93, 0.05, 70],
 ];
 
-/** Blue over almost white to rust; both arms have the same lightness at the same distance from the middle. */
+/** Indigo over almost white to bronze; both arms have the same lightness at the same distance from the middle. */
 const TWO_WAYS: readonly Anchor[] = [
-  [0.4, 0.13, 262],
-  [0.68, 0.105, 248],
-  [0.96, 0.004, 248],
-  [0.68, 0.132, 55],
-  [0.4, 0.112, 40],
+  [0.39, 0.13, 285],
+  [0.67, 0.11, 280],
+  [0.96, 0.006, 90],
+  [0.67, 0.1, 85],
+  [0.39, 0.078, 75],
 ];
 
 type Lab = readonly [number, number, number];
@@ -99,7 +99,7 @@ function equalSteps(anchors: readonly Lab[], from: number, to: number, steps: nu
 
 /** OKLab colours of the map for values from the lowest to the highest. New array of `COLOURS`. */
 export function sequentialLab(): Lab[] {
-  return equalSteps(DEPTH.map(toLab), 0, DEPTH.length - 1, COLOURS);
+  return equalSteps(MEADOW.map(toLab), 0, MEADOW.length - 1, COLOURS);
 }
 
 /** OKLab colours of the map for values on both sides of zero; entry 127 is the middle. */
@@ -120,7 +120,7 @@ function toBytes(colours: readonly Lab[]): ColourMap {
 /** For quantities that run from low to high: speed, samples per bin. Dark is low. */
 export const SEQUENTIAL: ColourMap = toBytes(sequentialLab());
 
-/** For signed quantities: blue is negative, rust positive, almost white zero. */
+/** For signed quantities: indigo is negative, bronze positive, almost white zero. */
 export const DIVERGING: ColourMap = toBytes(divergingLab());
 
 /** Entry of the map for a value between `low` and `high`, 0..COLOURS - 1; values beyond take the end colour. NaN gives -1. */
