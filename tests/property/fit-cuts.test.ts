@@ -12,6 +12,7 @@ function parameters(change: Partial<FitParameters> = {}): FitParameters {
     noise: [0.02, 0.02, 0.04],
     span: 5,
     order: 2,
+    bridge: 2,
     interval: 0.01,
     pairs: false,
     riskLimit: 0.5,

@@ -65,6 +65,7 @@ function onCircle(theta: number, span: number): { radius: number; speed: number 
     noise: [1, 1, Number.NaN],
     span,
     order: 2,
+    bridge: 2,
     interval: 1,
     pairs: false,
     riskLimit: 1,

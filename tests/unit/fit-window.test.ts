@@ -8,6 +8,7 @@ const base: FitParameters = {
   noise: [0.01, 0.01, 0.03],
   span: 7,
   order: 2,
+  bridge: 2,
   interval: 1,
   pairs: false,
   riskLimit: 0.5,

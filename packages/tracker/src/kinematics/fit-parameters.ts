@@ -9,6 +9,8 @@ export interface FitParameters {
   readonly span: number;
   /** Degree of the local polynomial. */
   readonly order: 1 | 2 | 3;
+  /** Missing frames that a pathline may cross. */
+  readonly bridge: number;
   /** Time from frame number to frame number where the clock is even, else null: then the frames' own times count. */
   readonly interval: number | null;
   /** Image pairs: one sample a linked pair, at its mid-point. */
@@ -46,6 +48,7 @@ export function fitParameters(settings: RunSettings, prior: Prior): FitParameter
     noise: prior.noise,
     span: prior.span,
     order: settings.smoothing.order,
+    bridge: settings.linking.bridge,
     interval: clock.kind === 'none' ? prior.frameStep : even,
     pairs: clock.kind === 'pairs',
     riskLimit: settings.linking.riskLimit,
@@ -58,9 +61,20 @@ export function fitParameters(settings: RunSettings, prior: Prior): FitParameter
   };
 }
 
-/** Farthest frame, before or behind, that a single local fit can look at (one-sided at the end of a pathline). */
+/**
+ * Farthest frame, before or behind, that a single local fit can look at: the span, one-sided at the end of a pathline,
+ * or as far as gaps can push the samples that the polynomial needs, whichever is more.
+ */
 export function fitReach(parameters: FitParameters): number {
-  return parameters.span - 1;
+  return Math.max(parameters.span - 1, parameters.order * (parameters.bridge + 1));
+}
+
+/**
+ * Samples a fit is given where the pathline has them in reach: one more than the polynomial has coefficients, though
+ * no more than the span where that still determines it.
+ */
+export function fewestInFit(parameters: FitParameters): number {
+  return Math.max(parameters.order + 1, Math.min(parameters.span, parameters.order + 2));
 }
 
 /**

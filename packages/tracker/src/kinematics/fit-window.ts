@@ -9,7 +9,7 @@ import type { FitParameters } from './fit-parameters.js';
 import { fitReach } from './fit-parameters.js';
 import { FitSpace } from './fit-space.js';
 import { MARK, neighboursOfFrame } from './neighbours-of-frame.js';
-import { PathlineFitter } from './pathline-fitter.js';
+import { PathlineFitter, REFIT } from './pathline-fitter.js';
 import { frameOfRows, pathlineOrder } from './pathline-order.js';
 import type { CoreRows } from './sample-columns.js';
 import { coreRows } from './sample-columns.js';
@@ -35,7 +35,8 @@ const STEP_ROWS = 20_000;
  *    the round is not repeated, since each repetition would widen the overlap.
  *
  * A screened sample itself is given the value that the rest of its window implies; its measured position is kept
- * beside it. Cost about 0.6 us a row of the window (span 7, plane, 10 000 rows a frame), half of it the median test.
+ * beside it. A sample whose fit cannot do without screened ones, because too few others are in reach, carries their
+ * flag too: its figures rest on theirs. Cost about 0.6 us a row of the window (span 7, plane, 10 000 rows a frame), half of it the median test.
  * Memory about 60 bytes a row of the window beside it and its samples.
  */
 export function fitWindow(window: LinkedBlock, core: CoreRange, parameters: FitParameters): SampleBlock {
@@ -122,7 +123,11 @@ class WindowWork {
       const useTo = this.firstFrom(core.to + reach + 1);
       if (largest > parameters.offFitLimit) {
         this.leaveOutOffFit(fitFrom, fitTo, this.firstFrom(core.from - far), this.firstFrom(core.to + far));
-        for (let i = useFrom; i < useTo; i++) fitter.refit(i);
+        for (let i = useFrom; i < useTo; i++) {
+          if (fitter.refit(i) !== REFIT.tooFew) continue;
+          const row = fitter.row[i]!;
+          this.marks[row] = this.marks[row]! | MARK.restsOnOff;
+        }
       }
       this.keepVelocities(useFrom, useTo);
       const coreTo = this.firstFrom(core.to);
@@ -217,7 +222,13 @@ class WindowWork {
       const first = this.firstFrom(core.from);
       const last = this.firstFrom(core.to);
       fitter.place(first, last);
-      for (let i = first; i < last; i++) if (fitter.refit(i)) this.writeFit(i);
+      for (let i = first; i < last; i++) {
+        const done = fitter.refit(i);
+        if (done === REFIT.made) this.writeFit(i);
+        if (done !== REFIT.tooFew) continue;
+        const s = this.out.sampleOf[fitter.row[i]! - this.out.firstRow]!;
+        this.out.samples.flags[s] = this.out.samples.flags[s]! | FLAG['off-neighbours'];
+      }
     }
   }
 
@@ -298,10 +309,11 @@ class WindowWork {
       half,
       frame[lo]!,
       frame[hi]!,
-      hi - lo + 1,
+      i - lo,
+      hi - i,
     );
     flags |= linkFlag(window.linkRisk[row]!, next, parameters.riskLimit);
-    if ((this.marks[row]! & MARK.offFit) !== 0) flags |= FLAG['off-fit'];
+    if ((this.marks[row]! & (MARK.offFit | MARK.restsOnOff)) !== 0) flags |= FLAG['off-fit'];
     if (parameters.bodies.length > 0) flags |= atBody(parameters.bodies, parameters.rim, fitter.px[i]!, fitter.py[i]!);
     this.out.samples.flags[s] = flags;
   }

@@ -9,6 +9,8 @@ export const MARK = {
   inNextFrame: 8,
   /** Its pathline also has a sample in one of the two frames before. */
   inTwoFramesBefore: 16,
+  /** Its fit could not be freed from samples that are off their fit. */
+  restsOnOff: 32,
 } as const;
 
 /**

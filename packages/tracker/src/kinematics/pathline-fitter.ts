@@ -1,7 +1,17 @@
 import type { LinkedBlock } from '../core/columns.js';
 import type { FitParameters } from './fit-parameters.js';
+import { fewestInFit, fitReach } from './fit-parameters.js';
 import type { FitWeights } from './local-fit.js';
 import { WeightTable } from './weight-table.js';
+
+/** What `refit` did. */
+export const REFIT = {
+  /** No sample of the fit is excluded: it stands. */
+  none: 0,
+  made: 1,
+  /** Too few samples would remain for the polynomial: the fit stands, and rests on excluded ones. */
+  tooFew: 2,
+} as const;
 
 /** Below this share of the noise variance a residual says nothing: the fit passes through the sample. */
 const LEAST_REDUNDANCY = 1e-6;
@@ -46,6 +56,7 @@ export class PathlineFitter {
   /** Distance of the measured position from the fit over its expected standard deviation, largest over the axes. */
   readonly residual: Float64Array;
 
+  private readonly fewest: number;
   private readonly table: WeightTable;
   private readonly members: Int32Array;
 
@@ -80,8 +91,11 @@ export class PathlineFitter {
     this.velocityRoot = column();
     this.accelerationRoot = column();
     this.residual = column();
-    this.table = new WeightTable(parameters.span, parameters.order, parameters.interval);
-    this.members = new Int32Array(parameters.span);
+    this.fewest = fewestInFit(parameters);
+    // Widened to the fewest, on both sides at once.
+    const most = Math.max(parameters.span, this.fewest + 1);
+    this.table = new WeightTable(most, parameters.order, parameters.interval);
+    this.members = new Int32Array(most);
   }
 
   /** Takes the samples `rows[from .. to - 1]` of a pathline; `frameOf`: frame index of each row of the window. */
@@ -105,12 +119,14 @@ export class PathlineFitter {
 
   /**
    * Sets the windows of samples `from .. to - 1`: samples within half a span on either side; where the pathline
-   * ends sooner on one side the window shifts, so that it still covers the span. Nothing farther than span - 1
+   * ends sooner on one side the window shifts, so that it still covers the span. Where gaps leave a side empty or the
+   * whole with fewer samples than `fewestInFit`, the window widens to the next ones. Nothing farther than `fitReach`
    * frames from the sample is looked at.
    */
   place(from: number, to: number): void {
-    const { frame, low, high, reachFirst, reachLast, count } = this;
+    const { frame, low, high, reachFirst, reachLast, count, fewest } = this;
     const span = this.parameters.span;
+    const reach = fitReach(this.parameters);
     const half = (span - 1) / 2;
     let a = 0;
     let b = 0;
@@ -118,9 +134,9 @@ export class PathlineFitter {
     let hi = 0;
     for (let i = from; i < to; i++) {
       const own = frame[i]!;
-      while (own - frame[a]! >= span) a++;
+      while (own - frame[a]! > reach) a++;
       if (b < i) b = i;
-      while (b + 1 < count && frame[b + 1]! - own < span) b++;
+      while (b + 1 < count && frame[b + 1]! - own <= reach) b++;
       let first = own - half;
       if (first < frame[a]!) first = frame[a]!;
       let last = first + span - 1;
@@ -137,7 +153,26 @@ export class PathlineFitter {
       high[i] = hi;
       reachFirst[i] = frame[a]!;
       reachLast[i] = frame[b]!;
+      if (hi - lo + 1 < fewest || lo === i || hi === i) this.widen(i, a, b);
     }
+  }
+
+  /** Widens the window of sample i within samples a .. b: none of its sides empty, and samples enough. */
+  private widen(i: number, a: number, b: number): void {
+    const { frame, low, high, fewest } = this;
+    let lo = low[i]!;
+    let hi = high[i]!;
+    if (lo === i && a < i) lo--;
+    if (hi === i && b > i) hi++;
+    while (hi - lo + 1 < fewest && (lo > a || hi < b)) {
+      const before = lo > a ? frame[i]! - frame[lo - 1]! : Number.POSITIVE_INFINITY;
+      const behind = hi < b ? frame[hi + 1]! - frame[i]! : Number.POSITIVE_INFINITY;
+      // Both where they are equally far: a fit must not depend on the direction of time.
+      if (before <= behind) lo--;
+      if (behind <= before) hi++;
+    }
+    low[i] = lo;
+    high[i] = hi;
   }
 
   /** Fits samples `from .. to - 1` over all samples of their windows, and takes their residuals; returns the largest of these. */
@@ -177,18 +212,44 @@ export class PathlineFitter {
   }
 
   /**
-   * Fits sample i anew without the excluded samples of its window. False, and nothing changed, where none of the
-   * window is excluded or fewer than two samples would remain.
+   * Fits sample i anew without the excluded samples of its window, which widens within reach where fewer would remain
+   * than the polynomial has coefficients. Returns one of `REFIT`; only `made` changes anything.
    */
-  refit(i: number): boolean {
-    const { low, high, excluded, members, table } = this;
-    const hi = high[i]!;
+  refit(i: number): number {
+    const { frame, low, high, excluded, members, table, count } = this;
+    let lo = low[i]!;
+    let hi = high[i]!;
     let n = 0;
-    for (let j = low[i]!; j <= hi; j++) if (excluded[j] === 0) members[n++] = j;
-    if (n < 2 || n === hi - low[i]! + 1) return false;
+    for (let j = lo; j <= hi; j++) if (excluded[j] === 0) members[n++] = j;
+    if (n === hi - lo + 1) return REFIT.none;
+    const needed = this.parameters.order + 1;
+    if (n < needed) {
+      const first = this.reachFirst[i]!;
+      const last = this.reachLast[i]!;
+      for (;;) {
+        let before = lo - 1;
+        while (before >= 0 && excluded[before] !== 0) before--;
+        let behind = hi + 1;
+        while (behind < count && excluded[behind] !== 0) behind++;
+        const left = before >= 0 && frame[before]! >= first ? frame[i]! - frame[before]! : Number.POSITIVE_INFINITY;
+        const right = behind < count && frame[behind]! <= last ? frame[behind]! - frame[i]! : Number.POSITIVE_INFINITY;
+        if (n >= needed || (left === right && left === Number.POSITIVE_INFINITY)) break;
+        if (left <= right) {
+          lo = before;
+          n++;
+        }
+        if (right <= left) {
+          hi = behind;
+          n++;
+        }
+      }
+      if (n < needed) return REFIT.tooFew;
+      n = 0;
+      for (let j = lo; j <= hi; j++) if (excluded[j] === 0) members[n++] = j;
+    }
     const weights = table.at(this.frame, this.time, members, n, i);
     this.applyMembers(i, n, weights);
-    return true;
+    return REFIT.made;
   }
 
   /** Sums over successive samples lo, lo + 1, ...: differences from the sample's own position lose fewer digits. */

@@ -13,7 +13,7 @@ const MOST_PATTERNS = 4096;
  * of its own. Mutable: one table a user. Patterns without a gap cost one array access.
  */
 export class WeightTable {
-  private readonly span: number;
+  private readonly most: number;
   private readonly order: number;
   private readonly interval: number | null;
   private readonly whole: (FitWeights | undefined)[];
@@ -22,15 +22,15 @@ export class WeightTable {
   private readonly scratch: Float64Array;
   private readonly passing: FitWeights;
 
-  /** `interval`: time from frame to frame of an even clock, null for uneven times. */
-  constructor(span: number, order: number, interval: number | null) {
-    this.span = span;
+  /** `most`: samples in a fit at most. `interval`: time from frame to frame of an even clock, null for uneven times. */
+  constructor(most: number, order: number, interval: number | null) {
+    this.most = most;
     this.order = order;
     this.interval = interval;
-    this.whole = new Array<FitWeights | undefined>((span + 1) * span);
-    this.offsets = new Float64Array(span);
-    this.scratch = new Float64Array(2 * span);
-    this.passing = new FitWeights(span);
+    this.whole = new Array<FitWeights | undefined>((most + 1) * most);
+    this.offsets = new Float64Array(most);
+    this.scratch = new Float64Array(2 * most);
+    this.passing = new FitWeights(most);
   }
 
   /** True where `gapless` may be used. */
@@ -38,9 +38,9 @@ export class WeightTable {
     return this.interval !== null;
   }
 
-  /** Weights over `count` successive frames (at most the span) at the one numbered `at` (0-based). Even clock only. */
+  /** Weights over `count` successive frames at the one numbered `at` (0-based). Even clock only. */
   gapless(count: number, at: number): FitWeights {
-    const key = count * this.span + at;
+    const key = count * this.most + at;
     const known = this.whole[key];
     if (known !== undefined) return known;
     for (let j = 0; j < count; j++) this.offsets[j] = j - at;
@@ -68,13 +68,13 @@ export class WeightTable {
     const place = frame[at]! - start;
     if (frame[last]! - start === count - 1 && place >= 0 && place < count) return this.gapless(count, place);
     for (let j = 0; j < count; j++) offsets[j] = frame[members[j]!]! - frame[at]!;
-    if (this.span > PATTERN_FRAMES) {
+    if (frame[last]! - start >= PATTERN_FRAMES || place < -PATTERN_FRAMES || place > PATTERN_FRAMES) {
       localWeights(offsets, count, order, interval, this.passing, scratch);
       return this.passing;
     }
     let mask = 0;
     for (let j = 0; j < count; j++) mask |= 1 << (frame[members[j]!]! - start);
-    // `place` lies within a span before or behind `start`: 6 bits.
+    // `place` lies within 31 frames before or behind `start`: 6 bits.
     const key = (mask >>> 0) * 64 + (place + PATTERN_FRAMES);
     const known = this.patterns.get(key);
     if (known !== undefined) return known;

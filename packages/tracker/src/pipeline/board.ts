@@ -73,6 +73,8 @@ export interface Board {
   extent?: SampleExtent;
   finished?: FinishedSamples;
   grid?: GridResult;
+  /** Samples that count in at least one bin. */
+  samplesInGrid?: number;
   pathlinesBySamples?: Float64Array;
   record?: RunRecord;
 }

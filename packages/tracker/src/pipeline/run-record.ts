@@ -72,7 +72,7 @@ export function runRecord(board: Board, started: string): Omit<RunRecord, 'diges
       shortFragmentDetections: finished.shortFragmentDetections,
       unlinkedDetections: forLinking - inPathlines - finished.shortFragmentDetections,
       flagged: finished.flagged,
-      samplesInGrid: finished.unflagged,
+      samplesInGrid: board.samplesInGrid!,
       binsFilled: filled,
       bins: grid.samples.length,
     },

@@ -17,12 +17,12 @@ const FEWEST_STUCK = 20;
 
 /**
  * Draws the samples through the stages before, spills them, turns them into pathline order, bins them on the way,
- * and completes the result folder. Whatever fails leaves a folder that is no result.
+ * and completes the result folder. Whatever fails leaves the folder as it was.
  */
 export const storeStage: Stage = {
   name: 'store',
   needs: ['scan', 'look', 'calibration', 'farAway', 'linkCounts', 'samples', 'extent'],
-  gives: ['finished', 'grid', 'pathlinesBySamples', 'record'],
+  gives: ['finished', 'grid', 'samplesInGrid', 'pathlinesBySamples', 'record'],
   async run(board) {
     const { context, tools, request, seconds } = board;
     const { settings } = request.resolved;
@@ -74,6 +74,7 @@ export const storeStage: Stage = {
       board.finished = finished;
       board.pathlinesBySamples = bySamples.slice(0, longest + 1);
       board.grid = bins.finish();
+      board.samplesInGrid = bins.taken;
       await writer.writeGrid(board.grid, {});
       seconds['write'] = tools.clock.seconds() - written;
       if (finished.pathlines === 0) throw nothingLinked();

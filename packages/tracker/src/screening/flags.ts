@@ -2,8 +2,11 @@ import { FLAG } from '../core/columns.js';
 
 /**
  * Flags that follow from how the fit of a sample came about. `first`, `last`: frame numbers of the first and last
- * sample of its pathline in reach; `frame`: its own; `half`: half the span; `from`, `to`, `count`: first and last
- * frame number in its window and samples there.
+ * sample of its pathline in reach; `frame`: its own; `half`: half the span; `from`, `to`: first and last frame number
+ * in its window; `before`, `behind`: samples there on either side of it.
+ *
+ * `near-end` where the pathline ends within half a span, or where gaps leave one side with fewer than half the
+ * samples it would have: such a fit is one-sided too. So a sample without a velocity always carries it.
  */
 export function fitFlags(
   first: number,
@@ -12,10 +15,12 @@ export function fitFlags(
   half: number,
   from: number,
   to: number,
-  count: number,
+  before: number,
+  behind: number,
 ): number {
-  const nearEnd = frame - first < half || last - frame < half ? FLAG['near-end'] : 0;
-  const bridged = to - from + 1 > count ? FLAG.bridged : 0;
+  const ends = frame - first < half || last - frame < half;
+  const nearEnd = ends || 2 * before < half || 2 * behind < half ? FLAG['near-end'] : 0;
+  const bridged = to - from > before + behind ? FLAG.bridged : 0;
   return nearEnd | bridged;
 }
 
