@@ -64,6 +64,7 @@ describe.skipIf(!needs('chromium'))('in Chromium', () => {
       lengthUnit: 'mm',
       colours: 'low-to-high',
       range: [0, 40],
+      bodies: [{ kind: 'circle', centre: [-8, 0], diameter: 3 }],
     });
     const page = await browser.newPage({ viewport: { width: 800, height: 600 }, colorScheme: 'light' });
     const source = `data:image/svg+xml;base64,${Buffer.from(standaloneSvg(svg)).toString('base64')}`;
@@ -86,7 +87,7 @@ describe.skipIf(!needs('chromium'))('in Chromium', () => {
         context.drawImage(image, 0, 0);
         return points.map(([x, y]) => [...context.getImageData(Math.round(x), Math.round(y), 1, 1).data]);
       },
-      [source, [place(-12, -4), place(0.7, 1.4), place(2, 4)]] as const,
+      [source, [place(-12, -4), place(0.7, 1.4), place(2, 4), place(-8, 0.3)]] as const,
     );
     const hex = (pixel: number[]) =>
       `#${pixel
@@ -99,6 +100,8 @@ describe.skipIf(!needs('chromium'))('in Chromium', () => {
     expect(hex(shown[1]!)).toBe(wanted(30));
     const colours = new Set(Array.from({ length: COLOURS }, (_, i) => colourHex(SEQUENTIAL, i)));
     expect(colours.has(hex(shown[2]!))).toBe(false);
+    // A body hides the bins beneath it: nothing of their colour shines through.
+    expect(hex(shown[3]!)).toBe('#7d8993');
     await page.close();
   });
 });

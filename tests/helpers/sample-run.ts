@@ -89,6 +89,8 @@ export function sampleGrid(nx = 64, ny = 51, step = 1): GridResult {
   const first: [number, number, number] = [-12, (-(ny - 1) * step) / 2, 0];
   const u = new Float32Array(nx * ny);
   const v = new Float32Array(nx * ny);
+  const uu = new Float32Array(nx * ny).fill(Number.NaN);
+  const vv = uu.slice();
   const samples = new Float64Array(nx * ny);
   for (let j = 0; j < ny; j++) {
     for (let i = 0; i < nx; i++) {
@@ -104,12 +106,17 @@ export function sampleGrid(nx = 64, ny = 51, step = 1): GridResult {
       const wake = x > 0 ? 26 * Math.exp(-((y / (2.5 + 0.05 * x)) ** 2)) * Math.exp(-x / 30) * Math.min(1, x / 3) : 0;
       u[at] = 30 * (1 - (6.25 * (x * x - y * y)) / (r2 * r2)) - wake;
       v[at] = (-30 * 12.5 * x * y) / (r2 * r2);
+      // Stresses need more samples than means: none in the first column.
+      if (i > 0) {
+        uu[at] = 2 + wake;
+        vv[at] = 1 + 2 * wake;
+      }
       samples[at] = Math.round(320 + 40 * Math.sin(i * 0.9) * Math.cos(j * 0.7));
     }
   }
-  const field = (values: Float32Array, longName: string): GridField => ({
+  const field = (values: Float32Array, longName: string, unit = 'mm/s'): GridField => ({
     values,
-    unit: 'mm/s',
+    unit,
     longName,
     standardError: null,
   });
@@ -120,6 +127,8 @@ export function sampleGrid(nx = 64, ny = 51, step = 1): GridResult {
     fields: new Map([
       ['u', field(u, 'mean velocity along x')],
       ['v', field(v, 'mean velocity along y')],
+      ['uu', field(uu, 'Reynolds stress uu', 'mm2/s2')],
+      ['vv', field(vv, 'Reynolds stress vv', 'mm2/s2')],
     ]),
   };
 }

@@ -1,5 +1,5 @@
 import { keyFigureList, LASER_CAUTION, NO_CERTIFICATION, reportHtml } from '@wakeloom/tracker/figures/report';
-import { fullestPlane, rangeOf, speedOf, zerosEmpty } from '@wakeloom/tracker/figures/report-data';
+import { fluctuationEnergy, fullestPlane, rangeOf, speedOf, zerosEmpty } from '@wakeloom/tracker/figures/report-data';
 import { countLines } from '@wakeloom/tracker/figures/report-tables';
 import { escapeText } from '@wakeloom/tracker/figures/svg';
 import { describe, expect, it } from 'vitest';
@@ -30,6 +30,8 @@ describe('reportHtml', () => {
       'Displacement ratio 0.391',
       '95th percentile 0.553',
       'Position noise 0.0051, 0.0049 mm',
+      // From 03:05:00 to 03:05:09, whatever the stages add up to.
+      'finished 2026-01-02T03:05:09Z, 9.0 s with 2 threads.',
       'Rows in the dump 1 200 012',
       'rows set aside 5 < 0.01 % of rows',
       'not finite 3 cylinder-30.csv:17 "NaN"',
@@ -66,9 +68,43 @@ describe('reportHtml', () => {
     expect(text).not.toMatch(/verdict/i);
   });
 
-  it('has five pictures, each with a title and a description for those who cannot see it', () => {
+  it('keeps a unit on the line of its figure', () => {
+    expect(html).toContain('<dd>0.0051, 0.0049\u00a0<small>mm</small></dd>');
+  });
+
+  it('tells of image pairs without pathline lengths, and counts both detections of a sample', () => {
+    const record = sampleRecord();
+    const paired = {
+      ...record,
+      settings: [...record.settings, { key: 'clock.pairs.delay', value: 4e-4, unit: 's', origin: 'option' as const }],
+      counts: { ...record.counts, samples: 500_000, pathlines: 500_000, detectionsForLinking: 1_250_000 },
+      figures: { ...record.figures, medianPathlineSamples: 1 },
+    };
+    const page = readable(reportHtml(paired, sampleReportData()));
+    expect(page).toContain('Pathlines 500 000 one sample each, from the two detections of a pair');
+    expect(page).toContain('Samples 500 000 two detections each: 80 % of detections for linking');
+    expect(page).not.toMatch(/median 1 |Lengths of pathlines/);
+    expect(countLines(paired.counts, true).find(({ name }) => name === 'Samples')?.share).toBe(0.8);
+    const single = { ...record, figures: { ...record.figures, medianPathlineSamples: 1 } };
+    expect(readable(reportHtml(single, sampleReportData()))).toMatch(/median 1 sample[^s]/);
+  });
+
+  it('says which plane of a grid in space is shown', () => {
+    const plane = sampleGrid(4, 3);
+    const data = sampleReportData();
+    const stack = (values: ArrayLike<number>) => Float32Array.from({ length: 36 }, (_, i) => values[i % 12]!);
+    const fields = new Map([...plane.fields].map(([name, field]) => [name, { ...field, values: stack(field.values) }]));
+    const samples = Float64Array.from({ length: 36 }, (_, i) => (i < 12 || i >= 24 ? 0 : 1));
+    const shape = { ...plane.shape, dims: 3 as const, count: [4, 3, 3] as const, first: [0, 0, 8.5] as const };
+    const page = readable(
+      reportHtml(sampleRecord(), { ...data, grid: { shape, samples, pathlines: samples, fields } }),
+    );
+    expect(page).toContain('Shown: plane z = 9.500 mm, 2nd of 3.');
+  });
+
+  it('has six pictures, each with a title and a description for those who cannot see it', () => {
     const pictures = html.match(/<svg [\s\S]*?<\/svg>/g)!;
-    expect(pictures).toHaveLength(5);
+    expect(pictures).toHaveLength(6);
     for (const svg of pictures) {
       const [, title, description] = /aria-labelledby="(\S+) (\S+)"/.exec(svg)!;
       expect(svg).toMatch(new RegExp(`<title id="${title}">[^<]+</title>`));
@@ -126,6 +162,25 @@ describe('what the report computes', () => {
     const [u, v] = ['u', 'v'].map((name) => grid.fields.get(name)!.values);
     expect(speed[0]).toBe(Math.sqrt(u![0]! * u![0]! + v![0]! * v![0]!));
     expect(speed.filter(Number.isNaN)).toHaveLength(u!.filter(Number.isNaN).length);
+  });
+
+  it('energy of the fluctuations is half the sum of the normal stresses, and says in how many bins', () => {
+    const grid = sampleGrid(64, 51);
+    const plane = fluctuationEnergy(grid)!;
+    const [uu, vv] = ['uu', 'vv'].map((name) => grid.fields.get(name)!.values);
+    expect(plane.formula).toBe('(uu + vv) / 2');
+    const at = 40 * 64 + 30;
+    expect(plane.values[at]).toBe((uu![at]! + vv![at]!) / 2);
+    expect(plane.values[0]).toBeNaN();
+    const ww = { ...grid.fields.get('uu')!, values: new Float32Array(uu!.length).fill(6) };
+    const solid = fluctuationEnergy({ ...grid, fields: new Map([...grid.fields, ['ww', ww]]) })!;
+    expect(solid.formula).toBe('(uu + vv + ww) / 2');
+    expect(solid.values[at]).toBeCloseTo(plane.values[at]! + 3, 12);
+    expect(fluctuationEnergy({ ...grid, fields: new Map() })).toBeNull();
+    const finite = plane.values.filter(Number.isFinite).length;
+    expect(finite).toBeGreaterThan(3000);
+    const text = readable(reportHtml(sampleRecord(), sampleReportData()));
+    expect(text).toContain(`Reynolds stresses in ${finite} of ${plane.values.length} bins`);
   });
 
   it('the fullest plane has the most bins with samples', () => {

@@ -1,5 +1,6 @@
 import type { RunEvent } from '@wakeloom/tracker/core/context';
 import { isWakeloomError } from '@wakeloom/tracker/core/errors';
+import { isPairs } from '@wakeloom/tracker/figures/image-pairs';
 import { formatCount, formatNumber, formatShare } from '@wakeloom/tracker/figures/number-format';
 import { keyFigureList } from '@wakeloom/tracker/figures/report';
 import { countLines } from '@wakeloom/tracker/figures/report-tables';
@@ -34,7 +35,7 @@ export function eventText(event: RunEvent, terminal: Pick<Terminal, 'paint'>): s
 export function summaryLines(record: RunRecord, alreadySaid: ReadonlySet<string> = new Set()): string[] {
   const { counts, figures } = record;
   const lines = [record.run, ''];
-  for (const { name, count, share, of, inner } of countLines(counts)) {
+  for (const { name, count, share, of, inner } of countLines(counts, isPairs(record))) {
     // The steps stay; what took nothing away is left to the report.
     if (inner && count === 0) continue;
     const shown = share === null ? '' : `  ${formatShare(share)} ${of}`;
@@ -47,9 +48,10 @@ export function summaryLines(record: RunRecord, alreadySaid: ReadonlySet<string>
     const shown = `${value}${unit === '' ? '' : ` ${unit}`}`;
     lines.push(`${name.padEnd(34)}${shown.padStart(13)}  ${note}`);
   }
-  lines.push(
-    `${'Pathline length, median'.padEnd(34)}${formatNumber(figures.medianPathlineSamples).padStart(13)}  samples`,
-  );
+  if (!isPairs(record))
+    lines.push(
+      `${'Pathline length, median'.padEnd(34)}${formatNumber(figures.medianPathlineSamples).padStart(13)}  samples`,
+    );
   if (record.assumptions.length > 0) lines.push('', ...record.assumptions.map((line) => `assumed: ${line}`));
   const warnings = record.warnings.filter((line) => !alreadySaid.has(line));
   if (warnings.length > 0) lines.push('', ...warnings.map((line) => `warning: ${line}`));

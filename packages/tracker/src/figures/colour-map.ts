@@ -15,13 +15,13 @@ export type ColourMap = Uint8Array;
 /** Anchor colour: OKLab lightness 0..1, chroma, hue in degrees. */
 type Anchor = readonly [lightness: number, chroma: number, hue: number];
 
-/** Bottle green over slate and lilac to sand. */
-const MEADOW: readonly Anchor[] = [
+/** Bottle green over slate, mauve and old rose to sand. */
+const HEATH: readonly Anchor[] = [
   [0.25, 0.043, 165],
-  [0.43, 0.07, 222],
-  [0.61, 0.11, 285],
-  [0.77, 0.1, 338],
-  [0.93, 0.05, 70],
+  [0.42, 0.068, 225],
+  [0.59, 0.095, 288],
+  [0.76, 0.088, 8],
+  [0.94, 0.05, 80],
 ];
 
 /** Indigo over almost white to bronze; both arms have the same lightness at the same distance from the middle. */
@@ -99,7 +99,7 @@ function equalSteps(anchors: readonly Lab[], from: number, to: number, steps: nu
 
 /** OKLab colours of the map for values from the lowest to the highest. New array of `COLOURS`. */
 export function sequentialLab(): Lab[] {
-  return equalSteps(MEADOW.map(toLab), 0, MEADOW.length - 1, COLOURS);
+  return equalSteps(HEATH.map(toLab), 0, HEATH.length - 1, COLOURS);
 }
 
 /** OKLab colours of the map for values on both sides of zero; entry 127 is the middle. */

@@ -142,8 +142,9 @@ function heatPicture(
   return { uri: dataUri(palettePng(nx, ny, pixels, map)), empty, beyond };
 }
 
+/** Bodies cover the map: what little a bin at their rim averages must not look like flow inside them. */
 function drawBodies(box: PlotBox, bodies: readonly Body[]): string {
-  const look = 'fill="#7d8993" fill-opacity="0.9" stroke="#1c2733" stroke-width="1.5"';
+  const look = 'fill="#7d8993" stroke="#1c2733" stroke-width="1.5"';
   const pxPerLength = box.width / (box.x.high - box.x.low);
   return bodies
     .map((body) => {

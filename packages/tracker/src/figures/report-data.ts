@@ -35,6 +35,32 @@ export function speedOf(grid: GridResult): Float64Array {
   return Float64Array.from(u, (ui, i) => Math.sqrt(ui * ui + v[i]! * v[i]! + (w === undefined ? 0 : w[i]! * w[i]!)));
 }
 
+/** Kinetic energy of the fluctuations per bin, and its names. */
+export interface FluctuationEnergy {
+  /** NaN in bins without stresses. [bins], new */
+  readonly values: Float64Array;
+  readonly unit: string;
+  readonly name: string;
+  readonly formula: string;
+}
+
+/**
+ * Half the sum of the normal Reynolds stresses per unit mass: in the plane (uu + vv) / 2, of which nothing is known
+ * about the third component, else (uu + vv + ww) / 2. Noise is subtracted already, so that a quiet bin may lie slightly
+ * below zero. Null when the grid has no stresses.
+ */
+export function fluctuationEnergy(grid: GridResult): FluctuationEnergy | null {
+  const [uu, vv, ww] = ['uu', 'vv', 'ww'].map((name) => grid.fields.get(name));
+  if (uu === undefined || vv === undefined) return null;
+  const values = Float64Array.from(
+    uu.values,
+    (a, i) => (a + vv.values[i]! + (ww === undefined ? 0 : ww.values[i]!)) / 2,
+  );
+  return ww === undefined
+    ? { values, unit: uu.unit, name: 'In-plane kinetic energy', formula: '(uu + vv) / 2' }
+    : { values, unit: uu.unit, name: 'Turbulent kinetic energy', formula: '(uu + vv + ww) / 2' };
+}
+
 /** Zeros as NaN, so that a map of counts shows bins without samples as empty. New array. */
 export function zerosEmpty(counts: ArrayLike<number>): Float64Array {
   return Float64Array.from({ length: counts.length }, (_, i) => (counts[i]! > 0 ? counts[i]! : Number.NaN));

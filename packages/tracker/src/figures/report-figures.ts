@@ -1,9 +1,10 @@
 import type { RunRecord } from '../store/run-record.js';
 import { fieldMapSvg } from './field-map.js';
 import { gatherCounts, histogramSvg } from './histogram.js';
+import { isPairs } from './image-pairs.js';
 import { linePlotSvg } from './line-plot.js';
 import { formatCount, formatNumber, formatQuantity } from './number-format.js';
-import { fullestPlane, type ReportData, rangeOf, speedOf, zerosEmpty } from './report-data.js';
+import { fluctuationEnergy, fullestPlane, type ReportData, rangeOf, speedOf, zerosEmpty } from './report-data.js';
 import { escapeText } from './svg.js';
 
 /** The pictures of a report, as HTML `figure` elements. A picture whose data are missing is left out. */
@@ -11,9 +12,11 @@ export function reportFigures(record: RunRecord, data: ReportData): string {
   return [
     speedMap(record, data),
     transverseMap(record, data),
+    energyMap(record, data),
     samplesMap(record, data),
     detectionsPlot(data),
-    lengthHistogram(record, data),
+    // With image pairs every pathline is one sample long: nothing to draw.
+    isPairs(record) ? '' : lengthHistogram(record, data),
   ].join('\n');
 }
 
@@ -26,7 +29,13 @@ function planeWords(record: RunRecord, data: ReportData, plane: number): string 
   const { shape } = data.grid;
   if (shape.dims === 2) return '';
   const z = shape.first[2] + plane * shape.step[2];
-  return ` Plane z = ${formatQuantity(z, record.figures.lengthUnit)} of ${shape.count[2]}.`;
+  return ` Shown: plane z = ${formatQuantity(z, record.figures.lengthUnit)}, ${ordinal(plane + 1)} of ${shape.count[2]}.`;
+}
+
+function ordinal(number: number): string {
+  const teens = number % 100 >= 11 && number % 100 <= 13;
+  const ending = teens ? undefined : ['st', 'nd', 'rd'][(number % 10) - 1];
+  return `${number}${ending ?? 'th'}`;
 }
 
 function speedMap(record: RunRecord, data: ReportData): string {
@@ -75,6 +84,35 @@ function transverseMap(record: RunRecord, data: ReportData): string {
   return framed(svg, 'Mean transverse velocity', words);
 }
 
+function energyMap(record: RunRecord, data: ReportData): string {
+  const energy = fluctuationEnergy(data.grid);
+  if (energy === null) return '';
+  const { values, unit, name, formula } = energy;
+  const range = rangeOf(values);
+  const plane = fullestPlane(data.grid);
+  const needed = record.settings.find(({ key }) => key === 'grid.fewest-for-stress')?.value;
+  const rule = typeof needed === 'number' ? `; the others hold fewer than ${formatCount(needed)} samples` : '';
+  const found =
+    range.finite === 0
+      ? 'no bin has enough samples'
+      : `${formatNumber(range.least, 3)} to ${formatQuantity(range.most, unit, 3)}`;
+  const words = `Fluctuations per unit mass, ${formula}: ${found}. Reynolds stresses in ${formatCount(range.finite)} of ${formatCount(values.length)} bins${range.finite < values.length ? rule : ''}.${planeWords(record, data, plane)}`;
+  const svg = fieldMapSvg(data.grid, {
+    title: name,
+    description: words,
+    values,
+    quantity: 'energy',
+    unit,
+    lengthUnit: record.figures.lengthUnit,
+    colours: 'low-to-high',
+    plane,
+    bodies: data.bodies,
+    plotWidth: 400,
+    plotHeight: 400,
+  });
+  return framed(svg, name, words);
+}
+
 function samplesMap(record: RunRecord, data: ReportData): string {
   const values = zerosEmpty(data.grid.samples);
   const range = rangeOf(values);
@@ -115,7 +153,7 @@ function detectionsPlot(data: ReportData): string {
 function lengthHistogram(record: RunRecord, data: ReportData): string {
   const bars = gatherCounts(data.pathlinesBySamples);
   const median = record.figures.medianPathlineSamples;
-  const words = `${formatCount(record.counts.pathlines)} pathlines, median ${formatNumber(median)} samples, longest ${formatCount(Math.max(0, data.pathlinesBySamples.length - 1))}.`;
+  const words = `${formatCount(record.counts.pathlines)} pathlines, median ${formatNumber(median)} ${median === 1 ? 'sample' : 'samples'}, longest ${formatCount(Math.max(0, data.pathlinesBySamples.length - 1))}.`;
   const svg = histogramSvg(bars, {
     title: 'Lengths of pathlines',
     description: words,

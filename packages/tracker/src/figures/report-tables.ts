@@ -21,9 +21,13 @@ function table(head: readonly string[], rows: readonly { cells: readonly Cell[];
   return `<div class="scroll"><table><thead><tr>${top.join('')}</tr></thead><tbody>${body.join('')}</tbody></table></div>`;
 }
 
-/** Steps from the rows of the dump to the bins of the grid; `share` of the count the step starts from, null: none. */
+/**
+ * Steps from the rows of the dump to the bins of the grid; `share` of the count the step starts from, null: none. With
+ * image `pairs` a sample stands for two detections.
+ */
 export function countLines(
   counts: RunCounts,
+  pairs = false,
 ): { name: string; count: number; share: number | null; of: string; inner: boolean }[] {
   const line = (name: string, count: number, whole: number | null = null, of = '', inner = false) => ({
     name,
@@ -57,7 +61,9 @@ export function countLines(
     line('across missing frames', counts.linksBridging, counts.links, 'of links', true),
     line('left out for their risk', counts.linksLeftOutForRisk, null, '', true),
     line('Pathlines', counts.pathlines),
-    line('Samples', counts.samples, counts.detectionsForLinking, linked),
+    pairs
+      ? { ...line('Samples', counts.samples), share: usedShare(counts, pairs), of: `${linked}, two a sample` }
+      : line('Samples', counts.samples, counts.detectionsForLinking, linked),
     ...Object.keys(FLAG).map((flag) =>
       line(
         `flagged ${flag}: ${FLAG_MEANING[flag as FlagName]}`,
@@ -72,9 +78,15 @@ export function countLines(
   ];
 }
 
+/** Share of the detections for linking that samples were made from; two each with image pairs. NaN without any. */
+export function usedShare(counts: RunCounts, pairs: boolean): number {
+  if (counts.detectionsForLinking === 0) return Number.NaN;
+  return ((pairs ? 2 : 1) * counts.samples) / counts.detectionsForLinking;
+}
+
 /** What went in and came out at every step. */
-export function countsTable(counts: RunCounts): string {
-  const rows = countLines(counts).map(({ name, count, share, of, inner }) => ({
+export function countsTable(counts: RunCounts, pairs = false): string {
+  const rows = countLines(counts, pairs).map(({ name, count, share, of, inner }) => ({
     cells: [name, { number: formatCount(count) }, { number: share === null ? '' : formatShare(share) }, of],
     look: inner ? 'step' : undefined,
   }));

@@ -1,9 +1,10 @@
 import type { RunRecord } from '../store/run-record.js';
+import { isPairs } from './image-pairs.js';
 import { formatCount, formatDuration, formatNumber, formatQuantity, formatShare, formatUnit } from './number-format.js';
 import type { ReportData } from './report-data.js';
 import { reportFigures } from './report-figures.js';
 import { REPORT_STYLE } from './report-style.js';
-import { countsTable, inputsTable, setAsideTable, settingsTable, systematicTable } from './report-tables.js';
+import { countsTable, inputsTable, setAsideTable, settingsTable, systematicTable, usedShare } from './report-tables.js';
 import { escapeText } from './svg.js';
 
 /** Caution for whoever stands beside the tunnel. Standard names from memory; no advice. */
@@ -43,7 +44,7 @@ ${warnings(record)}
 ${reportFigures(record, data)}
 </div>
 <h2>From rows to bins</h2>
-${countsTable(record.counts)}
+${countsTable(record.counts, isPairs(record))}
 <h2>Rows set aside</h2>
 ${setAsideTable(record.counts)}
 <h2>What was assumed</h2>
@@ -86,6 +87,8 @@ interface KeyFigure {
 export function keyFigureList(record: RunRecord): KeyFigure[] {
   const { counts, figures } = record;
   const names = ['x', 'y', 'z'];
+  const pairs = isPairs(record);
+  const median = figures.medianPathlineSamples;
   const noise = figures.noise.filter((value) => Number.isFinite(value) && value >= 0);
   return [
     {
@@ -104,13 +107,17 @@ export function keyFigureList(record: RunRecord): KeyFigure[] {
       name: 'Pathlines',
       value: formatCount(counts.pathlines),
       unit: '',
-      note: `median ${formatNumber(figures.medianPathlineSamples)} samples`,
+      note: pairs
+        ? 'one sample each, from the two detections of a pair'
+        : `median ${formatNumber(median)} ${median === 1 ? 'sample' : 'samples'}`,
     },
     {
       name: 'Samples',
       value: formatCount(counts.samples),
       unit: '',
-      note: `${formatShare(counts.detectionsForLinking > 0 ? counts.samples / counts.detectionsForLinking : Number.NaN)} of detections for linking`,
+      note: pairs
+        ? `two detections each: ${formatShare(usedShare(counts, pairs))} of detections for linking`
+        : `${formatShare(usedShare(counts, pairs))} of detections for linking`,
     },
     {
       name: 'Displacement ratio',
@@ -135,9 +142,10 @@ export function keyFigureList(record: RunRecord): KeyFigure[] {
 }
 
 function keyFigures(record: RunRecord): string {
+  // Values break between figures only: a unit, or the last letter of one, alone on a line says nothing.
   const tiles = keyFigureList(record).map(
     ({ name, value, unit, note }) =>
-      `<div><dt>${escapeText(name)}</dt><dd>${escapeText(value)}${unit === '' ? '' : ` <small>${escapeText(formatUnit(unit))}</small>`}</dd><dd class="note">${escapeText(note)}</dd></div>`,
+      `<div><dt>${escapeText(name)}</dt><dd>${escapeText(value)}${unit === '' ? '' : `\u00a0<small>${escapeText(formatUnit(unit))}</small>`}</dd><dd class="note">${escapeText(note)}</dd></div>`,
   );
   return `<dl class="figures">${tiles.join('\n')}</dl>`;
 }
@@ -160,6 +168,7 @@ function notes(record: RunRecord): string {
 
 function footLine(record: RunRecord): string {
   const { clockTimes, host, program } = record;
-  const total = Object.values(clockTimes.seconds).reduce((sum, seconds) => sum + seconds, 0);
+  // Stages overlap (reading, linking and fitting stream into each other), so their seconds do not add up to the run.
+  const total = (Date.parse(clockTimes.finished) - Date.parse(clockTimes.started)) / 1000;
   return `${program.name} ${program.version}, ${host.runtime} on ${host.platform}, finished ${clockTimes.finished}, ${formatDuration(total)} with ${host.threads} ${host.threads === 1 ? 'thread' : 'threads'}.`;
 }
