@@ -19,6 +19,10 @@ export class ActivePathlines {
   u0 = new Float64Array(0);
   v0 = new Float64Array(0);
   w0 = new Float64Array(0);
+  /** Middle of the last link. */
+  mx = new Float64Array(0);
+  my = new Float64Array(0);
+  mz = new Float64Array(0);
   /** Own deviation from the flow picture, averaged over the last links. */
   du = new Float64Array(0);
   dv = new Float64Array(0);
@@ -58,12 +62,32 @@ export class ActivePathlines {
     this.du[j] = from.du[i];
     this.dv[j] = from.dv[i];
     this.dw[j] = from.dw[i];
+    this.mx[j] = from.mx[i];
+    this.my[j] = from.my[i];
+    this.mz[j] = from.mz[i];
     this.age[j] = from.age[i];
     this.missed[j] = from.missed[i];
   }
 }
 
-const ACTIVE_FLOATS = ['x', 'y', 'z', 'time', 'u', 'v', 'w', 'u0', 'v0', 'w0', 'du', 'dv', 'dw'] as const;
+const ACTIVE_FLOATS = [
+  'x',
+  'y',
+  'z',
+  'time',
+  'u',
+  'v',
+  'w',
+  'u0',
+  'v0',
+  'w0',
+  'du',
+  'dv',
+  'dw',
+  'mx',
+  'my',
+  'mz',
+] as const;
 
 function copyInt(old: Int32Array, size: number): Int32Array<ArrayBuffer> {
   const fresh = new Int32Array(size);

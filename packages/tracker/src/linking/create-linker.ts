@@ -2,8 +2,9 @@ import { CellIndex } from '../math/cell-index.js';
 import { KdSearch } from '../math/kd-search.js';
 import type { NeighbourSearch } from '../math/neighbour-search.js';
 import type { LinkingSettings } from '../run/settings.js';
-import { FlowGrid, type FlowGridData } from './flow-grid.js';
+import type { FlowGridData } from './flow-grid.js';
 import { Linker } from './linker.js';
+import { FlowPictures } from './pictures.js';
 
 /** What linking takes from the first look at the data. */
 export interface LinkPrior {
@@ -28,7 +29,6 @@ export function searchFor(name: LinkingSettings['search']): NeighbourSearch {
 
 /** A linker ready for the first frame. */
 export function createLinker(settings: LinkingSettings, prior: LinkPrior): Linker {
-  const flow = new FlowGrid({ ...prior.flow, moments: prior.flow.moments.slice() });
   const linker = new Linker({
     dims: prior.dims,
     reach: prior.reach,
@@ -39,7 +39,7 @@ export function createLinker(settings: LinkingSettings, prior: LinkPrior): Linke
     noiseSquare: prior.noiseSquare,
     expected: prior.expected,
     density: prior.density,
-    flow,
+    pictures: new FlowPictures(prior.flow),
     search: searchFor(settings.search),
   });
   linker.pairsOnly = prior.pairs;

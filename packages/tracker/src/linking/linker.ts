@@ -4,22 +4,24 @@ import { ActivePathlines } from './active-pathlines.js';
 import { GroupedAssignment } from './assign-exact.js';
 import { assignQuickly } from './assign-quick.js';
 import { Candidates } from './candidates.js';
-import type { FlowGrid } from './flow-grid.js';
 import { decay, linkRisk } from './link-risk.js';
-import { Predictors } from './predictors.js';
+import type { FlowPictures } from './pictures.js';
+import { GUESS_SIZE, Predictors } from './predictors.js';
+import { Rescue } from './rescue.js';
 
 /** Gate: a candidate farther than this many times its expected square (mean over axes) is none. exp(-16) = 1e-7. */
 const GATE = 16;
 /** Handicap of a pathline with a single detection against one that has proved itself, in units of expected squares. */
 const NEWBORN_HANDICAP = 3;
-/** Share of the flow picture and of the records kept from frame to frame: a memory of about 5 frames and 20 frames. */
-const FLOW_KEEP = 0.8;
+/** Share of the records kept from frame to frame: a memory of about 20 frames. */
 const RECORD_KEEP = 0.95;
 /** Weight of the newest link in a pathline's own deviation from the flow picture. */
 const DEVIATION_GAIN = 0.5;
 const AGE_CAP = 200;
 /** Mark of a pathline whose link was left out for its risk: it ends. */
 const ENDED = -2;
+/** Mark of a lone detection that was linked with two others in line. */
+const RESCUED = -3;
 
 export interface LinkerOptions {
   readonly dims: Dims;
@@ -36,7 +38,7 @@ export interface LinkerOptions {
   readonly expected: number;
   /** Particles per area (volume) of link space (z divided by depthNoise). */
   readonly density: number;
-  readonly flow: FlowGrid;
+  readonly pictures: FlowPictures;
   readonly search: NeighbourSearch;
 }
 
@@ -69,6 +71,8 @@ export class Linker {
   private queue = new Int32Array(0);
   private rowOfColumn = new Int32Array(0);
   private columnDensity = new Float64Array(0);
+  private columnRisk = new Float64Array(0);
+  private readonly rescue: Rescue;
   private guessOfRow = new Float64Array(0);
   private cellOfRow = new Int32Array(0);
   private straySum = 0;
@@ -79,8 +83,9 @@ export class Linker {
     this.options = options;
     this.depth = options.dims === 3 ? 1 / options.depthNoise : 1;
     this.reaches = [options.reach, options.reach, options.reach * (options.dims === 3 ? options.depthNoise : 1)];
+    this.rescue = new Rescue(options.dims, options.reach, options.depthNoise);
     this.predictors = new Predictors(
-      options.flow,
+      options.pictures.all,
       options.noiseSquare,
       Math.max(options.expected, options.noiseSquare),
     );
@@ -112,6 +117,8 @@ export class Linker {
     this.fit(to - from);
     this.collect(block, from, to, time);
     this.assign(to - from);
+    this.judge(to - from);
+    this.rescueLone(block, from, to, time);
     this.settle(block, from, to, time, pathline, risk);
   }
 
@@ -140,8 +147,8 @@ export class Linker {
     const reachSquare = options.reach * options.reach;
     candidates.begin(active.count, to - from);
     columnDensity.fill(0, 0, to - from);
-    if (this.guessOfRow.length < active.count * 12) {
-      this.guessOfRow = new Float64Array(active.count * 18);
+    if (this.guessOfRow.length < active.count * GUESS_SIZE) {
+      this.guessOfRow = new Float64Array(active.count * GUESS_SIZE * 2);
       this.cellOfRow = new Int32Array(active.count * 2);
     }
     const { guessOfRow, cellOfRow } = this;
@@ -149,7 +156,7 @@ export class Linker {
     const { x, y, z } = block;
     for (let i = 0; i < active.count; i++) {
       predictors.predict(active, i, time);
-      guessOfRow.set(predictors.guess, i * 12);
+      guessOfRow.set(predictors.guess, i * GUESS_SIZE);
       cellOfRow[i] = predictors.cell;
       const { expected } = predictors;
       const newborn = active.age[i] < 2;
@@ -187,6 +194,51 @@ export class Linker {
     else this.grouped.assign(candidates, GATE + NEWBORN_HANDICAP, edgeOfRow, rowOfColumn);
   }
 
+  /** States the risk of every link chosen and leaves out those above the limit. */
+  private judge(columns: number): void {
+    const { candidates, edgeOfRow, rowOfColumn, columnDensity, columnRisk, options, tally } = this;
+    const stray = this.strayDensity();
+    for (let column = 0; column < columns; column++) {
+      const i = rowOfColumn[column];
+      if (i === -1) continue;
+      const e = edgeOfRow[i];
+      let rowSum = 0;
+      for (let other = candidates.start[i]; other < candidates.start[i + 1]; other++) {
+        rowSum += candidates.density[other];
+      }
+      const risk = linkRisk(candidates.density[e], rowSum, columnDensity[column], stray);
+      columnRisk[column] = risk;
+      if (risk <= options.riskLimit) continue;
+      tally.leftOutForRisk++;
+      // The detection starts a pathline of its own; the old one must not contend with it for the next ones.
+      edgeOfRow[i] = ENDED;
+      rowOfColumn[column] = -1;
+    }
+  }
+
+  /** Links lone detections that lie in line with two earlier lone ones. */
+  private rescueLone(block: DetectionBlock, from: number, to: number, time: number): void {
+    const { active, edgeOfRow, rowOfColumn, columnRisk, options, rescue } = this;
+    if (options.care === 'quick' || this.pairsOnly) return;
+    const left = { active, block, from, to, time, edgeOfRow, rowOfColumn };
+    rescue.look(left, options.pictures.main, this.predictors, this.strayDensity());
+    for (let column = 0; column < to - from; column++) {
+      const i = rescue.given[column];
+      if (i === -1 || rescue.risk[column] > options.riskLimit) continue;
+      const first = rescue.needless[column];
+      if (edgeOfRow[i] >= 0 || edgeOfRow[first] === RESCUED) continue;
+      const perStep = 1 / (active.time[i] - active.time[first]);
+      active.u[i] = (active.x[i] - active.x[first]) * perStep;
+      active.v[i] = (active.y[i] - active.y[first]) * perStep;
+      active.w[i] = (active.z[i] - active.z[first]) * perStep;
+      active.age[i] = 2;
+      edgeOfRow[first] = ENDED;
+      edgeOfRow[i] = RESCUED;
+      rowOfColumn[column] = i;
+      columnRisk[column] = rescue.risk[column];
+    }
+  }
+
   /** Turns assignments into links, starts new pathlines, carries on those that missed, and learns. */
   private settle(
     block: DetectionBlock,
@@ -196,12 +248,11 @@ export class Linker {
     pathline: Int32Array,
     risk: Float32Array,
   ): void {
-    const { active, spare, candidates, edgeOfRow, rowOfColumn, columnDensity, options, predictors } = this;
-    const { dims, bridge, riskLimit } = options;
+    const { active, spare, edgeOfRow, rowOfColumn, columnRisk, options, predictors } = this;
+    const { dims, bridge } = options;
     const { tally, depth, guessOfRow, cellOfRow } = this;
     spare.count = 0;
     spare.reserve(to - from + active.count);
-    const stray = this.strayDensity();
     predictors.fade(RECORD_KEEP);
     let strays = 0;
     for (let row = from; row < to; row++) {
@@ -210,26 +261,13 @@ export class Linker {
       const x = block.x[row];
       const y = block.y[row];
       const z = dims === 3 ? block.z[row] : 0;
-      let wrong = 1;
-      if (i !== -1) {
-        const e = edgeOfRow[i];
-        let rowSum = 0;
-        for (let other = candidates.start[i]; other < candidates.start[i + 1]; other++)
-          rowSum += candidates.density[other];
-        wrong = linkRisk(candidates.density[e], rowSum, columnDensity[column], stray);
-        if (wrong > riskLimit) {
-          tally.leftOutForRisk++;
-          // The detection starts a pathline of its own; the old one must not contend with it for the next ones.
-          edgeOfRow[i] = ENDED;
-        }
-      }
       const j = spare.count++;
       spare.x[j] = x;
       spare.y[j] = y;
       spare.z[j] = z;
       spare.time[j] = time;
       spare.missed[j] = 0;
-      if (i === -1 || wrong > riskLimit) {
+      if (i === -1) {
         strays++;
         spare.id[j] = this.nextId;
         pathline[row] = this.nextId++;
@@ -241,13 +279,13 @@ export class Linker {
         continue;
       }
       pathline[row] = active.id[i];
-      risk[row] = wrong;
+      risk[row] = columnRisk[column];
       tally.links++;
       if (active.missed[i] > 0) tally.bridging++;
       this.extend(active, i, j, x, y, z, time);
-      if (active.missed[i] === 0) {
-        const guess = guessOfRow.subarray(i * 12, i * 12 + 12);
-        predictors.learn(x, y, z, depth, active.age[i], cellOfRow[i], guess);
+      if (active.missed[i] === 0 && active.age[i] >= 3 && edgeOfRow[i] >= 0) {
+        const guess = guessOfRow.subarray(i * GUESS_SIZE, (i + 1) * GUESS_SIZE);
+        predictors.learn(x, y, z, depth, cellOfRow[i], guess);
       }
     }
     this.teach(to - from, time);
@@ -266,7 +304,7 @@ export class Linker {
   /** Entry `j` of the next set: pathline `i` grown by a detection. */
   private extend(active: ActivePathlines, i: number, j: number, x: number, y: number, z: number, time: number): void {
     const { spare, flowAt, options } = this;
-    const { flow } = options;
+    const flow = options.pictures.main;
     const perStep = 1 / (time - active.time[i]);
     const u = (x - active.x[i]) * perStep;
     const v = (y - active.y[i]) * perStep;
@@ -284,6 +322,9 @@ export class Linker {
     spare.u[j] = u;
     spare.v[j] = v;
     spare.w[j] = w;
+    spare.mx[j] = mx;
+    spare.my[j] = my;
+    spare.mz[j] = mz;
     spare.u0[j] = active.u[i];
     spare.v0[j] = active.v[i];
     spare.w0[j] = active.w[i];
@@ -298,19 +339,19 @@ export class Linker {
    * its place in the list. Only pathlines that have proved themselves teach, unless there are no others (pairs).
    */
   private teach(columns: number, time: number): void {
-    const { active, spare, rowOfColumn, edgeOfRow, options } = this;
-    options.flow.fade(FLOW_KEEP);
+    const { active, spare, rowOfColumn, options } = this;
+    options.pictures.fade();
     const fewest = this.pairsOnly ? 2 : 3;
     for (let j = 0; j < columns; j++) {
       const i = rowOfColumn[j];
-      if (i === -1 || edgeOfRow[i] < 0 || spare.age[j] < fewest) continue;
+      if (i === -1 || spare.age[j] < fewest) continue;
       const half = 0.5 * (time - active.time[i]);
       const u = spare.u[j];
       const v = spare.v[j];
       const w = spare.w[j];
-      options.flow.learn(spare.x[j] - half * u, spare.y[j] - half * v, spare.z[j] - half * w, u, v, w);
+      options.pictures.learn(spare.x[j] - half * u, spare.y[j] - half * v, spare.z[j] - half * w, u, v, w);
     }
-    options.flow.fit();
+    options.pictures.fit();
   }
 
   /** Set for image pairs, where no pathline ever gets older than two detections. */
@@ -332,6 +373,7 @@ export class Linker {
       const size = columns * 2;
       this.rowOfColumn = new Int32Array(size);
       this.columnDensity = new Float64Array(size);
+      this.columnRisk = new Float64Array(size);
       this.near = new Int32Array(size);
     }
   }

@@ -1,126 +1,132 @@
 import type { ActivePathlines } from './active-pathlines.js';
 import type { FlowGrid } from './flow-grid.js';
 
-/** Ways to predict, each with its own record of surprises; see `Predictors.predict`. */
-export const PREDICTOR_COUNT = 4;
+/** Pictures of the flow that are kept: see `pictures.ts`. */
+export const PICTURES = 3;
+/** Guesses: flow alone and flow plus own deviation for each picture, constant velocity, constant change of velocity. */
+const GUESSES = 2 * PICTURES + 2;
+/** Numbers of a pathline's guesses, x y z each. */
+export const GUESS_SIZE = 3 * GUESSES;
+const CONSTANT_VELOCITY = 2 * PICTURES;
+const CONSTANT_CHANGE = CONSTANT_VELOCITY + 1;
+
+/** Guesses that a pathline can make with one detection, with two, and with more. */
+const WITH_ONE = Array.from({ length: PICTURES }, (_, p) => 2 * p);
+const WITH_MORE = Array.from({ length: GUESSES }, (_, g) => g);
+const WITH_TWO = WITH_MORE.filter((g) => g !== CONSTANT_CHANGE);
 
 /** Links from which records are kept: enough to compare, few enough to follow a changing flow. */
 const RECORD_PRIOR = 6;
 
 /**
- * Predicts where a pathline goes, from four simple guesses weighted by how well each has done lately at this
- * place: (0) the flow picture alone; (1) the flow picture plus the pathline's own averaged deviation from it;
- * (2) the same with the deviation of the last link alone, which in a uniform picture is constant velocity;
- * (3) constant change of velocity. The flow picture is read at the middle of the coming step, so its gradient
- * along the path stands for the acceleration without amplifying position noise. Weights go as the inverse
- * square of each guess's mean squared surprise in the flow cell: a guess twice as far off counts a quarter.
+ * Predicts where a pathline goes, from simple guesses weighted by how well each has done lately at this place. For
+ * each picture of the flow: the picture alone, and the picture plus the pathline's own deviation from it (averaged
+ * over its links for the first picture, of the last link for the others). Besides: constant velocity, and constant
+ * change of velocity. Pictures are read at the middle of the coming step, so that their gradient along the path
+ * stands for the acceleration without amplifying position noise.
+ *
+ * Weights go as the inverse fourth power of each guess's mean squared surprise in the flow cell: the best two or
+ * three decide, and average their errors; which ones differs from place to place and is measured, not set.
  */
 export class Predictors {
-  readonly record: Float64Array[];
-  readonly recordWeight: Float64Array;
-  private readonly global = new Float64Array(PREDICTOR_COUNT);
+  private readonly record: Float64Array[];
+  private readonly recordWeight: Float64Array;
+  private readonly global = new Float64Array(GUESSES);
   private globalWeight = 0;
   private readonly flow = new Float64Array(3);
   /** Guesses of the last call, x y z each, for the record. */
-  readonly guess = new Float64Array(PREDICTOR_COUNT * 3);
+  readonly guess = new Float64Array(GUESS_SIZE);
   /** Prediction of the last call. */
   x = 0;
   y = 0;
   z = 0;
   /** Expected squared distance of a true detection from the prediction, link space. */
   expected = 0;
-  /** Cell the prediction was made in. */
+  /** Cell of the first picture that the prediction was made in. */
   cell = 0;
-  private readonly grid: FlowGrid;
+  private readonly pictures: readonly FlowGrid[];
   private readonly floor: number;
   private readonly start: number;
 
   /** `floor`: least expected square (position noise), `start`: expected square before anything is known. */
-  constructor(grid: FlowGrid, floor: number, start: number) {
-    this.grid = grid;
+  constructor(pictures: readonly FlowGrid[], floor: number, start: number) {
+    this.pictures = pictures;
     this.floor = floor;
     this.start = start;
-    const { cells } = grid;
-    this.record = Array.from({ length: PREDICTOR_COUNT }, () => new Float64Array(cells));
+    const { cells } = pictures[0];
+    this.record = Array.from({ length: GUESSES }, () => new Float64Array(cells));
     this.recordWeight = new Float64Array(cells);
   }
 
   /** Predicts entry `i` at `time`; results stand in the fields of this object. */
   predict(active: ActivePathlines, i: number, time: number): void {
-    const { grid, flow, guess } = this;
+    const { pictures, flow, guess } = this;
     const step = time - active.time[i];
     const x = active.x[i];
     const y = active.y[i];
     const z = active.z[i];
     const age = active.age[i];
-    // Two looks at the flow picture: where the particle is, then at the middle of the step it would take.
-    grid.at(x, y, z, flow);
-    let fu = flow[0];
-    let fv = flow[1];
-    let fw = flow[2];
-    const half = 0.5 * step;
-    const known = grid.at(
-      x + half * (fu + active.du[i]),
-      y + half * (fv + active.dv[i]),
-      z + half * (fw + active.dw[i]),
-      flow,
-    );
-    fu = flow[0];
-    fv = flow[1];
-    fw = flow[2];
-    const cell = grid.cellAt(x, y, z);
-    this.cell = cell;
-    guess[0] = x + step * fu;
-    guess[1] = y + step * fv;
-    guess[2] = z + step * fw;
-    const surprise = this.surpriseOf(cell, 0);
+    this.cell = pictures[0].cellAt(x, y, z);
+    // Velocity towards the middle of the coming step: the pathline's own, or the picture's for one that has none.
+    let u = active.u[i];
+    let v = active.v[i];
+    let w = active.w[i];
     if (age < 2) {
-      this.x = guess[0];
-      this.y = guess[1];
-      this.z = guess[2];
-      this.expected = known > 0 ? grown(surprise, active.missed[i]) : this.start;
+      pictures[0].at(x, y, z, flow);
+      [u, v, w] = flow;
+    }
+    const half = 0.5 * step;
+    const mx = x + half * u;
+    const my = y + half * v;
+    const mz = z + half * w;
+    let known = 0;
+    for (let p = 0; p < PICTURES; p++) {
+      const picture = pictures[p];
+      const weight = picture.at(mx, my, mz, flow);
+      if (p === 0) known = weight;
+      const at = 6 * p;
+      guess[at] = x + step * flow[0];
+      guess[at + 1] = y + step * flow[1];
+      guess[at + 2] = z + step * flow[2];
+      if (age < 2) continue;
+      let du = active.du[i];
+      let dv = active.dv[i];
+      let dw = active.dw[i];
+      if (p > 0) {
+        picture.at(active.mx[i], active.my[i], active.mz[i], flow);
+        du = u - flow[0];
+        dv = v - flow[1];
+        dw = w - flow[2];
+      }
+      guess[at + 3] = guess[at] + step * du;
+      guess[at + 4] = guess[at + 1] + step * dv;
+      guess[at + 5] = guess[at + 2] + step * dw;
+    }
+    if (age < 2) {
+      this.combine(WITH_ONE);
+      this.expected = known > 0 ? grown(this.expected, active.missed[i]) : this.start;
       return;
     }
-    guess[3] = x + step * (fu + active.du[i]);
-    guess[4] = y + step * (fv + active.dv[i]);
-    guess[5] = z + step * (fw + active.dw[i]);
-    guess[6] = x + step * active.u[i];
-    guess[7] = y + step * active.v[i];
-    guess[8] = z + step * active.w[i];
-    const guesses = age < 3 ? 3 : 4;
+    const at = 3 * CONSTANT_VELOCITY;
+    guess[at] = x + step * u;
+    guess[at + 1] = y + step * v;
+    guess[at + 2] = z + step * w;
     if (age >= 3) {
-      guess[9] = guess[6] + step * (active.u[i] - active.u0[i]);
-      guess[10] = guess[7] + step * (active.v[i] - active.v0[i]);
-      guess[11] = guess[8] + step * (active.w[i] - active.w0[i]);
+      guess[at + 3] = guess[at] + step * (u - active.u0[i]);
+      guess[at + 4] = guess[at + 1] + step * (v - active.v0[i]);
+      guess[at + 5] = guess[at + 2] + step * (w - active.w0[i]);
     }
-    let sum = 0;
-    let px = 0;
-    let py = 0;
-    let pz = 0;
-    let least = Number.POSITIVE_INFINITY;
-    for (let g = 0; g < guesses; g++) {
-      const square = g === 0 ? surprise : this.surpriseOf(cell, g);
-      if (square < least) least = square;
-      const weight = 1 / (square * square);
-      sum += weight;
-      px += weight * guess[3 * g];
-      py += weight * guess[3 * g + 1];
-      pz += weight * guess[3 * g + 2];
-    }
-    this.x = px / sum;
-    this.y = py / sum;
-    this.z = pz / sum;
+    this.combine(age < 3 ? WITH_TWO : WITH_MORE);
     // A second detection only: its own deviation is no better than two noisy positions.
-    this.expected = grown(least, active.missed[i]) * (age < 3 ? 2 : 1);
+    this.expected = grown(this.expected, active.missed[i]) * (age < 3 ? 2 : 1);
   }
 
-  /** Records how far each guess of the last `predict` call was from the detection that was linked. */
-  learn(x: number, y: number, z: number, depth: number, age: number, cell: number, guess: Float64Array): void {
+  /** Records how far each of the guesses made in `cell` was from the detection that was linked. */
+  learn(x: number, y: number, z: number, depth: number, cell: number, guess: Float64Array): void {
     const { record, recordWeight, global } = this;
-    if (age < 3) return;
     recordWeight[cell] += 1;
     this.globalWeight += 1;
-    for (let g = 0; g < PREDICTOR_COUNT; g++) {
+    for (let g = 0; g < GUESSES; g++) {
       const dx = guess[3 * g] - x;
       const dy = guess[3 * g + 1] - y;
       const dz = (guess[3 * g + 2] - z) * depth;
@@ -137,7 +143,37 @@ export class Predictors {
       for (let cell = 0; cell < squares.length; cell++) squares[cell] *= keep;
     }
     this.globalWeight *= keep;
-    for (let g = 0; g < PREDICTOR_COUNT; g++) this.global[g] *= keep;
+    for (let g = 0; g < GUESSES; g++) this.global[g] *= keep;
+  }
+
+  /** Mean squared surprise of constant velocity in a cell: what two links of unknown pathlines may differ by. */
+  bendIn(cell: number): number {
+    return this.surpriseOf(cell, CONSTANT_VELOCITY);
+  }
+
+  /** Weighted mean of the chosen guesses, and the least of their expected squares. */
+  private combine(chosen: readonly number[]): void {
+    const { guess, cell } = this;
+    let sum = 0;
+    let px = 0;
+    let py = 0;
+    let pz = 0;
+    let least = Number.POSITIVE_INFINITY;
+    for (const g of chosen) {
+      const square = this.surpriseOf(cell, g);
+      if (square < least) least = square;
+      // In units of the floor, so that the fourth power neither overflows nor vanishes.
+      const ratio = this.floor / square;
+      const weight = ratio * ratio * ratio * ratio;
+      sum += weight;
+      px += weight * guess[3 * g];
+      py += weight * guess[3 * g + 1];
+      pz += weight * guess[3 * g + 2];
+    }
+    this.x = px / sum;
+    this.y = py / sum;
+    this.z = pz / sum;
+    this.expected = least;
   }
 
   /** Mean squared surprise of one guess in a cell, leaning on the whole field where the cell has seen little. */
