@@ -128,6 +128,23 @@ describe('grid accumulator', () => {
     expect(grid.leftOut.outside).toBeLessThanOrEqual(1);
   });
 
+  it('samples within the tolerance beyond the border count in the bins there, others do not', () => {
+    for (const overlap of [0, 0.5]) {
+      const shape = square(4, 1, overlap);
+      const low = shape.first[0] - 0.5;
+      const high = shape.first[0] + 3 * shape.step[0] + 0.5;
+      const grid = createGridAccumulator(shape, 2, { ...options, tolerance: [0.02, 0.02, 0] });
+      const at = (pathline: number, x: number) => ({ pathline, x, y: low + 0.1, u: 1, v: 1 });
+      grid.add(
+        pathlineRows([at(0, low - 0.019), at(1, high), at(2, high + 0.019), at(3, low - 0.021), at(4, high + 0.021)]),
+      );
+      expect(grid.taken).toBe(3);
+      expect(grid.leftOut.outside).toBe(2);
+      const { samples } = grid.finish();
+      expect([0, 1, 2, 3].map((i) => samples[binIndex(shape, i, 0, 0)])).toEqual([1, 0, 0, 2]);
+    }
+  });
+
   it('leaves out screened samples, counts them, keeps near-end and bridged ones', () => {
     const grid = createGridAccumulator(square(1, 1), 2, options);
     const one = { x: 0.5, y: 0.5, u: 1, v: 2 };

@@ -1,4 +1,4 @@
-import { gridShape } from '@wakeloom/tracker/eulerian/grid-shape';
+import { gridShape, withoutNoise } from '@wakeloom/tracker/eulerian/grid-shape';
 import { describe, expect, it } from 'vitest';
 
 const settings = (bin: readonly [number, number, number] | 'auto', overlap = 0) => ({
@@ -54,6 +54,23 @@ describe('grid shape', () => {
     expect(code(() => gridShape(settings([0, 1, 1]), 2, box, 0.3))).toBe('grid/bin-size');
     const empty = { min: [Infinity, Infinity, 0], max: [-Infinity, -Infinity, 0] } as const;
     expect(code(() => gridShape(settings('auto'), 2, empty, 0.3))).toBe('grid/no-extent');
+  });
+
+  it('a field that noise makes a little larger gets no rim of bins', () => {
+    const noisy = { min: [-0.012, -0.004, -1], max: [64.011, 48.009, 1] } as const;
+    const { bounds, tolerance } = withoutNoise(noisy, [0.005, 0.005, Number.NaN]);
+    const shape = gridShape(settings([4, 4, 1]), 2, bounds, 1);
+    expect(shape.count).toEqual([16, 12, 1]);
+    expect(shape.first).toEqual([2, 2, 0]);
+    // Whatever lies in the noisy field still counts.
+    for (const axis of [0, 1]) {
+      expect(shape.first[axis]! - shape.size[axis]! / 2 - tolerance[axis]!).toBeLessThanOrEqual(noisy.min[axis]!);
+      const end = shape.first[axis]! + (shape.count[axis]! - 0.5) * shape.step[axis]!;
+      expect(end + tolerance[axis]!).toBeGreaterThan(noisy.max[axis]!);
+    }
+    // A field no wider than its noise stays as it is.
+    const thin = { min: [0, 0, 0], max: [0.01, 0.01, 0.01] } as const;
+    expect(withoutNoise(thin, [0.005, 0.005, 0.005])).toEqual({ bounds: thin, tolerance: [0, 0, 0] });
   });
 
   it('a field without extent gets one bin', () => {

@@ -53,6 +53,16 @@ export function createGridAccumulator(shape: GridShape, dims: Dims, options: Gri
   return new Accumulator(shape, dims, options);
 }
 
+/** A hair inside the last border, in steps: far above rounding (4 million bins at most), far below any noise. */
+const HAIR = 1e-6;
+
+/** Place in steps from the first centre, moved onto the grid where it lies at most `tolerance` steps beyond its border. */
+function ontoGrid(place: number, half: number, count: number, tolerance: number): number {
+  if (place < -half) return place >= -half - tolerance ? -half : place;
+  const end = count - 1 + half;
+  return place >= end && place < end + tolerance ? end - HAIR : place;
+}
+
 class Accumulator implements GridAccumulator {
   readonly shape: GridShape;
   taken = 0;
@@ -83,6 +93,8 @@ class Accumulator implements GridAccumulator {
       shape.size[1] / shape.step[1] / 2,
       shape.size[2] / shape.step[2] / 2,
     ];
+    const tolerance = this.options.tolerance ?? [0, 0, 0];
+    const [tx, ty, tz] = [tolerance[0] * perX, tolerance[1] * perY, tolerance[2] * perZ];
     for (let p = 0; p + 1 < rowStart.length; p++) {
       this.pathlines++;
       const end = rowStart[p + 1]!;
@@ -98,9 +110,9 @@ class Accumulator implements GridAccumulator {
           continue;
         }
         // Bins i with centre - half <= x < centre + half, in steps from the first centre.
-        const px = (x[r]! - x0) * perX;
-        const py = (y[r]! - y0) * perY;
-        const pz = deep ? (z[r]! - z0) * perZ : 0;
+        const px = ontoGrid((x[r]! - x0) * perX, hx, nx, tx);
+        const py = ontoGrid((y[r]! - y0) * perY, hy, ny, ty);
+        const pz = deep ? ontoGrid((z[r]! - z0) * perZ, hz, nz, tz) : 0;
         const i1 = Math.min(nx - 1, Math.floor(px + hx));
         const j1 = Math.min(ny - 1, Math.floor(py + hy));
         const k1 = deep ? Math.min(nz - 1, Math.floor(pz + hz)) : 0;

@@ -10,6 +10,11 @@ export interface GridOptions {
   /** Names of the length and the time unit: `mm`, `s`. */
   readonly lengthUnit: string;
   readonly timeUnit: string;
+  /**
+   * How far beyond the border of the grid a sample still counts, in the bins at the border, length unit per axis:
+   * the noise of fitted positions must not push samples out of the field. Absent: not at all.
+   */
+  readonly tolerance?: readonly [number, number, number];
 }
 
 const COMPONENTS = ['u', 'v', 'w'] as const;

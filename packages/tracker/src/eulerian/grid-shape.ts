@@ -28,6 +28,30 @@ export const MOST_BINS = 4_000_000;
 /** Steps of a decade that an automatic bin is rounded to, so that axes carry plain numbers. */
 const ROUND_STEPS = [1, 1.2, 1.5, 2, 2.5, 3, 4, 5, 6, 8, 10];
 
+/** How many standard deviations of the position noise the bounds of the samples are drawn in before bins are laid. */
+const EDGE_NOISE = 5;
+
+/**
+ * Bounds drawn in by what noise can add to fitted positions (at most as uncertain as measured ones: 1 in 3.5 million
+ * lies 5 standard deviations beyond its true place), and that distance per axis: the tolerance that a
+ * grid laid on them must count samples with. Without it a field that ends at the border of a bin would get a rim of bins
+ * with a handful of samples each. Axes too short for it, or without known noise, stay as they are.
+ */
+export function withoutNoise(
+  bounds: Bounds,
+  noise: readonly [number, number, number],
+): { readonly bounds: Bounds; readonly tolerance: readonly [number, number, number] } {
+  const margin = [0, 1, 2].map((axis) => {
+    const wanted = EDGE_NOISE * noise[axis]!;
+    return wanted > 0 && bounds.max[axis]! - bounds.min[axis]! > 4 * wanted ? wanted : 0;
+  }) as [number, number, number];
+  const moved = (values: Bounds['min'], sign: number) =>
+    values.map((value, axis) => value + sign * margin[axis]!) as [number, number, number];
+  // Twice: rounding must not leave the outermost sample outside.
+  const tolerance = margin.map((value) => 2 * value) as [number, number, number];
+  return { bounds: { min: moved(bounds.min, 1), max: moved(bounds.max, -1) }, tolerance };
+}
+
 /**
  * Bins that cover `bounds`. Without overlap a bin border lies on the origin of the results along every axis (centres
  * at half steps), so that grids of several runs with one bin size fit together and a grid of a symmetric setup is

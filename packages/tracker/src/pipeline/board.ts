@@ -41,10 +41,16 @@ export interface LinkCounts extends LinkTally {
   given: (GivenTally & { agreed: number | null }) | null;
 }
 
-/** Smallest and largest coordinate of the samples, and their number, noted while they stream by. */
+/** Smallest and largest coordinates. */
+export interface Extremes {
+  readonly min: [number, number, number];
+  readonly max: [number, number, number];
+}
+
+/** Number of samples and where they lie, noted while they stream by: those without a flag that excludes them, and all. */
 export interface SampleExtent {
-  min: [number, number, number];
-  max: [number, number, number];
+  readonly trusted: Extremes;
+  readonly all: Extremes;
   samples: number;
 }
 

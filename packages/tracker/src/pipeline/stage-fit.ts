@@ -1,7 +1,8 @@
 import type { SampleBlock } from '../core/columns.js';
+import { EXCLUDED_FROM_GRID } from '../core/columns.js';
 import { addFrameVelocity } from '../detections/frame-velocity.js';
 import { fitStage } from '../kinematics/fit-stage.js';
-import type { SampleExtent, Stage } from './board.js';
+import type { Extremes, SampleExtent, Stage } from './board.js';
 import { restoreNumbers } from './frame-step.js';
 
 /** Turns linked detections into samples: fit, screening, velocity of a towed frame; notes their extent. */
@@ -12,11 +13,7 @@ export const samplesStage: Stage = {
   run(board) {
     const { settings } = board.request.resolved;
     const input = { settings, scan: board.scan!, prior: board.look!.prior, context: board.context };
-    const extent: SampleExtent = {
-      min: [Number.POSITIVE_INFINITY, Number.POSITIVE_INFINITY, Number.POSITIVE_INFINITY],
-      max: [Number.NEGATIVE_INFINITY, Number.NEGATIVE_INFINITY, Number.NEGATIVE_INFINITY],
-      samples: 0,
-    };
+    const extent: SampleExtent = { trusted: nowhere(), all: nowhere(), samples: 0 };
     board.extent = extent;
     const fitted = fitStage(input, board.linked!, board.tools.fit);
     const { frameNumbers } = board.scan!;
@@ -35,12 +32,26 @@ async function* finishSamples(
     restore(block);
     if (frameVelocity !== null) addFrameVelocity(block, frameVelocity);
     extent.samples += block.flags.length;
-    for (const [axis, column] of [block.x, block.y, block.z].entries()) {
-      for (let row = 0; row < column.length; row++) {
-        if (column[row] < extent.min[axis]) extent.min[axis] = column[row];
-        if (column[row] > extent.max[axis]) extent.max[axis] = column[row];
-      }
-    }
+    noteExtremes(block, extent);
     yield block;
+  }
+}
+
+function nowhere(): Extremes {
+  const { POSITIVE_INFINITY: far } = Number;
+  return { min: [far, far, far], max: [-far, -far, -far] };
+}
+
+/** What the grid leaves out must not stretch it: positions implied for outliers may lie anywhere. */
+function noteExtremes({ x, y, z, flags }: SampleBlock, { trusted, all }: SampleExtent): void {
+  for (const [axis, column] of [x, y, z].entries()) {
+    for (let row = 0; row < column.length; row++) {
+      const value = column[row];
+      if (value < all.min[axis]) all.min[axis] = value;
+      if (value > all.max[axis]) all.max[axis] = value;
+      if ((flags[row] & EXCLUDED_FROM_GRID) !== 0) continue;
+      if (value < trusted.min[axis]) trusted.min[axis] = value;
+      if (value > trusted.max[axis]) trusted.max[axis] = value;
+    }
   }
 }

@@ -1,6 +1,6 @@
 import { WakeloomError } from '../core/errors.js';
 import { createGridAccumulator } from '../eulerian/accumulate.js';
-import { gridShape } from '../eulerian/grid-shape.js';
+import { gridShape, withoutNoise } from '../eulerian/grid-shape.js';
 import { reportHtml } from '../figures/report.js';
 import { openResultWriter } from '../store/result-writer.js';
 import type { Stage } from './board.js';
@@ -52,13 +52,15 @@ export const storeStage: Stage = {
       for await (const block of board.samples!) await writer.add(block);
       seconds['stream'] = tools.clock.seconds() - streamed;
       if (board.extent!.samples === 0) throw nothingLinked();
-      const bounds = board.extent!;
+      const { trusted, all } = board.extent!;
+      const { bounds, tolerance } = withoutNoise(trusted.min[0] <= trusted.max[0] ? trusted : all, prior.noise);
       const shape = gridShape(settings.grid, dims, bounds, prior.spacing, frameNumbers.length);
       const bins = createGridAccumulator(shape, dims, {
         fewestForMean: settings.grid.fewestForMean,
         fewestForStress: settings.grid.fewestForStress,
         lengthUnit: settings.units.length,
         timeUnit: settings.units.time,
+        tolerance,
       });
       const bySamples = new Float64Array(LONGEST_BAR);
       let longest = 0;
