@@ -76,7 +76,8 @@ export function runRecord(board: Board, started: string): Omit<RunRecord, 'diges
       binsFilled: filled,
       bins: grid.samples.length,
     },
-    prior,
+    // In the plane there is no third component to tell of.
+    prior: { ...prior, noise: prior.noise.slice(0, scan.dims), reach: prior.reach.slice(0, scan.dims) },
     figures: {
       meanSpeed: finished.meanSpeed,
       peakSpeed: finished.peakSpeed,

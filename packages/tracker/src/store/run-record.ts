@@ -71,7 +71,11 @@ export interface RunRecord {
   readonly format: string;
   readonly columns: Readonly<Record<string, string>>;
   readonly counts: RunCounts;
-  readonly prior: Prior;
+  /** What the first look found; noise and reach a component an axis of the run. */
+  readonly prior: Omit<Prior, 'noise' | 'reach'> & {
+    readonly noise: readonly number[];
+    readonly reach: readonly number[];
+  };
   readonly figures: RunFigures;
   readonly systematic: readonly SystematicLine[];
   readonly warnings: readonly string[];
