@@ -10,7 +10,7 @@ const folder = join('results', 'demo');
 
 for (const words of [
   ['demo', 'cylinder-wake', '--out', folder, '--seed', '1', '--replace'],
-  ['process', join(folder, 'cylinder-wake.yaml'), '--out', join(folder, 'result')],
+  ['process', join(folder, 'cylinder-wake.yaml'), '--out', join(folder, 'result'), '--replace'],
 ]) {
   console.log(`\n> npx wakeloom ${words.join(' ')}\n`);
   const { status, signal, error } = spawnSync(process.execPath, [bin, ...words], { cwd: root, stdio: 'inherit' });

@@ -144,6 +144,19 @@ describe('process without a run sheet, then export', () => {
     expect(after.digest.content).toBe(before.digest.content);
   });
 
+  it('says whose result it replaces, and refuses to without --replace when it is another run', async () => {
+    const again = await runCli([...words, '--out', 'result'], { cwd: folder });
+    expect([again.code, again.stderr]).toEqual([
+      0,
+      'note replaces the result of run stream once the new one is whole\n',
+    ]);
+    const before = readFileSync(at('result', 'run.json'), 'utf8');
+    const other = await runCli([...words, '--span', '9', '--out', 'result'], { cwd: folder });
+    expect([other.code, other.stdout]).toEqual([2, '']);
+    expect(other.stderr).toMatch(/result of another run, "stream" \(differs in smoothing\.span\).*--replace/);
+    expect(readFileSync(at('result', 'run.json'), 'utf8')).toBe(before);
+  });
+
   it('gives the same from a run sheet whose paths count from the sheet', async () => {
     writeFileSync(
       at('sheet.yaml'),

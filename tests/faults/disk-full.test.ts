@@ -16,10 +16,13 @@ interface Outcome {
 const disk = mkdtempSync(join(tmpdir(), 'disk-full-'));
 afterAll(() => rmSync(disk, { recursive: true, force: true }));
 
-/** A disk of 20 MB, partly taken by ballast during the first of two runs of 50 000 samples (about 5 MB and 7 MB of files). */
-function twoRuns(manner: 'asked' | 'silent', ballast: number): Outcome[] {
+/**
+ * A disk of 20 MB, partly taken by ballast during the first of two runs of 50 000 samples (about 5 MB in scratch files
+ * and 7 MB of result).
+ */
+function twoRuns(manner: 'asked' | 'silent', ballast: number, megabytes = 20): Outcome[] {
   const child = join(import.meta.dirname, '../helpers/fill-disk.mjs');
-  const command = 'mount -t tmpfs -o size=20m tmpfs "$1" && exec "$2" "$3" "$1" 50000 "$4" "$5"';
+  const command = `mount -t tmpfs -o size=${megabytes}m tmpfs "$1" && exec "$2" "$3" "$1" 50000 "$4" "$5"`;
   const args = ['-rm', 'sh', '-c', command, 'sh', disk, process.execPath, child, manner, String(ballast)];
   const output = execFileSync('unshare', args, { encoding: 'utf8' });
   return output
@@ -48,7 +51,14 @@ describe.each([
     },
   );
 
+  it.skipIf(!needs('mount namespaces'))('keeps an earlier result and says that it takes room', () => {
+    const [first, over] = twoRuns(manner, 0);
+    expect(first).toMatchObject({ code: null, complete: true });
+    expect(over).toMatchObject({ code: 'store/disk-full', complete: true, files: first.files });
+    expect(over.message).toMatch(/make room .*; the earlier result in the folder takes \d\.\d MB and stays/);
+  });
+
   it.skipIf(!needs('mount namespaces'))('does not complain while there is room', () => {
-    for (const outcome of twoRuns(manner, 0)) expect(outcome).toMatchObject({ code: null, complete: true });
+    for (const outcome of twoRuns(manner, 0, 40)) expect(outcome).toMatchObject({ code: null, complete: true });
   });
 });

@@ -58,7 +58,7 @@ function struck(
   signal: NodeJS.Signals,
 ): Promise<{ code: number | null; files: string }> {
   return new Promise((resolve) => {
-    const child = spawn(process.execPath, [BIN, ...words(out)], { detached: true, stdio: 'ignore' });
+    const child = spawn(process.execPath, [BIN, ...words(out, '--replace')], { detached: true, stdio: 'ignore' });
     let files = '';
     const strike = () => {
       files = readdirSync(out).join(' ');
@@ -97,10 +97,12 @@ const instants: Instant[] = [
 describe('SIGKILL', () => {
   it('at 12 instants leaves no result or a sound one, and a rerun succeeds', async () => {
     let killed = 0;
+    let kept = 0;
     for (const [k, instant] of instants.entries()) {
       const out = at(`struck-${k}`);
-      // Every second time over a finished older result, which must not outlive the first new file.
-      if (k % 2 === 1) cpSync(at('older'), out, { recursive: true });
+      // Every second time over a finished older result, which must stay whole until the new one takes its place.
+      const over = k % 2 === 1;
+      if (over) cpSync(at('older'), out, { recursive: true });
       else mkdirSync(out);
       const { code, files } = await struck(out, instant, 'SIGKILL');
       const state = await stateOfFolder(out);
@@ -108,12 +110,18 @@ describe('SIGKILL', () => {
       if (code === null) killed++;
       else expect(code).toBe(0);
       expect(['none', 'sound']).toContain(state);
+      // Between two results there is none for the milliseconds in which names change, from a partial run.json on.
+      const changing = files.split(' ').includes('.partial-run.json') || !files.split(' ').includes('run.json');
+      if (over && !changing) {
+        expect(state).toBe('sound');
+        kept++;
+      }
       if (state === 'sound') {
         expect([olderDigest, digest]).toContain(contentOf(out));
         if (code === 0) expect(contentOf(out)).toBe(digest);
       } else expect(existsSync(join(out, 'run.json'))).toBe(false);
 
-      const again = await runCli(words(out));
+      const again = await runCli(words(out, '--replace'));
       expect([again.code, again.stderr]).toEqual([0, '']);
       expect(await stateOfFolder(out)).toBe('sound');
       expect(contentOf(out)).toBe(digest);
@@ -121,6 +129,7 @@ describe('SIGKILL', () => {
     }
     // Otherwise the instants tell nothing.
     expect(killed).toBeGreaterThanOrEqual(9);
+    expect(kept).toBeGreaterThanOrEqual(4);
   }, 300_000);
 });
 
@@ -131,5 +140,29 @@ describe('SIGINT', () => {
     const { code } = await struck(out, { file: '.partial-scratch-samples', after: 0 }, 'SIGINT');
     expect(code).toBe(130);
     expect(readdirSync(out)).toEqual([]);
+  }, 60_000);
+
+  it('leaves an earlier result as it was, and says so', async () => {
+    const out = at('interrupted-over');
+    cpSync(at('older'), out, { recursive: true });
+    const spoken = words(out, '--replace').filter((word) => word !== '--quiet');
+    let struckOnce = false;
+    const { code, stderr } = await runCli(spoken, {
+      onStderr: (text, kill) => {
+        // The first note says that the work begins; its first scratch file is not far.
+        if (struckOnce || !text.includes('replaces the result of run dump once')) return;
+        struckOnce = true;
+        setTimeout(() => kill('SIGINT'), 0.5 * seconds * 1000);
+      },
+    });
+    expect(code).toBe(130);
+    expect(stderr).toContain(`${out} still holds the complete earlier result of run dump`);
+    expect(await stateOfFolder(out)).toBe('sound');
+    expect(contentOf(out)).toBe(olderDigest);
+    expect(partials(out)).toEqual([]);
+    const refused = await runCli(words(out));
+    expect([refused.code, refused.stdout]).toEqual([2, '']);
+    expect(refused.stderr).toMatch(/another run, "dump" \(differs in grid\.bin\).*--replace/);
+    expect(contentOf(out)).toBe(olderDigest);
   }, 60_000);
 });

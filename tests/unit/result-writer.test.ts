@@ -10,6 +10,7 @@ import type { PathlineRows } from '@wakeloom/tracker/store/pathline-rows';
 import { isCompleteResult, openResult } from '@wakeloom/tracker/store/read-result';
 import { openResultWriter } from '@wakeloom/tracker/store/result-writer';
 import { sampleColumns } from '@wakeloom/tracker/store/sample-columns';
+import { verifyResult } from '@wakeloom/tracker/store/verify-result';
 import { afterEach, beforeEach, describe, expect, it } from 'vitest';
 import { MADE_OPTIONS, madeGrid, madeRecord, makeResult } from '../helpers/made-result.js';
 import { madeSamples } from '../helpers/made-samples.js';
@@ -167,13 +168,80 @@ it('leaves the acceleration of image pairs out, and calls no single sample stuck
 });
 
 describe('a result that is not complete', () => {
-  it('loses its old run.json before anything else', async () => {
-    await makeResult(place, MADE);
-    expect(await isCompleteResult(place)).toBe(true);
+  it('leaves an earlier one whole until it is itself, whether it is given up or fails', async () => {
+    const { record } = await makeResult(place, MADE);
+    const before = readdirSync(folder);
+    const contentNow = async () => {
+      const result = await openResult(place);
+      result.close();
+      await verifyResult(place, createContext());
+      return result.record.digest.content;
+    };
     const writer = openResultWriter(place, { ...MADE_OPTIONS, dims: 2, context: createContext() });
-    expect(await isCompleteResult(place)).toBe(false);
-    expect(readdirSync(folder).every((name) => name.startsWith('.partial-'))).toBe(true);
+    for (const block of madeSamples(MADE)) await writer.add(block);
+    await writer.finish(() => {});
+    expect(readdirSync(folder)).toEqual(expect.arrayContaining([...before, '.partial-pathlines.nc']));
+    expect(await contentNow()).toBe(record.digest.content);
     writer.abandon();
+    expect(readdirSync(folder)).toEqual(before);
+    const full: ResultPlace = { ...place, freeBytes: () => 3_000_000 };
+    const failing = makeResult(full, { ...MADE, seed: 2 }, { expectedSamples: 1e6 });
+    await expect(failing).rejects.toMatchObject({
+      code: 'store/disk-full',
+      message: expect.stringMatching(/earlier result in the folder takes \d\.\d MB and stays/),
+    });
+    expect(readdirSync(folder)).toEqual(before);
+    expect(await contentNow()).toBe(record.digest.content);
+  });
+
+  it('takes the place of an earlier one by names alone: old run.json first, new one last, nothing stale left', async () => {
+    await makeResult(place, MADE);
+    const calls: string[] = [];
+    const noting: ResultPlace = {
+      ...place,
+      rename(from, to) {
+        calls.push(`rename ${to}`);
+        place.rename(from, to);
+      },
+      remove(file) {
+        calls.push(`remove ${file}`);
+        place.remove(file);
+      },
+      sync(file) {
+        calls.push(`sync ${file}`);
+        return place.sync(file);
+      },
+      writeText(file, text) {
+        calls.push(`write ${file}`);
+        place.writeText(file, text);
+      },
+    };
+    await makeResult(noting, { ...MADE, seed: 2 }, { keepFrames: 'none' });
+    const swap = calls.slice(calls.indexOf('remove run.json'));
+    expect(swap).toEqual([
+      'remove run.json',
+      'rename pathlines.nc',
+      'remove frames.nc',
+      'rename grid.nc',
+      'rename report.html',
+      'rename log.ndjson',
+      'rename run.json',
+    ]);
+    expect(calls.indexOf('sync .partial-run.json')).toBeGreaterThan(0);
+    expect(readdirSync(folder)).toEqual(['grid.nc', 'log.ndjson', 'pathlines.nc', 'report.html', 'run.json']);
+    await verifyResult(place, createContext());
+  });
+
+  it('is none when the swap itself breaks off', async () => {
+    await makeResult(place, MADE);
+    const broken: ResultPlace = {
+      ...place,
+      rename(from, to) {
+        if (to === 'grid.nc') throw new Error('the disk went away');
+        place.rename(from, to);
+      },
+    };
+    await expect(makeResult(broken, { ...MADE, seed: 2 })).rejects.toThrow('went away');
     expect(readdirSync(folder)).toEqual([]);
   });
 

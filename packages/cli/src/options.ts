@@ -1,7 +1,7 @@
 import { WakeloomError } from '@wakeloom/tracker/core/errors';
 import { SETTING_TABLE } from '@wakeloom/tracker/run/options';
 import { expectedOf } from '@wakeloom/tracker/run/read-setting';
-import type { SettingRow } from '@wakeloom/tracker/run/setting-kinds';
+import { isRepeatable, type OptionValue, type SettingRow } from '@wakeloom/tracker/run/setting-kinds';
 import type { Argv, Options } from 'yargs';
 
 /** Headings of the help, by the first part of a setting's key. */
@@ -23,13 +23,8 @@ const GROUPS: Readonly<Record<string, string>> = {
   seed: 'Results:',
 };
 
-/**
- * Settings that can be given as options. The dump's files are the positional argument, and notes are free keys, which
- * need the run sheet.
- */
-export const OPTION_ROWS: readonly SettingRow[] = SETTING_TABLE.filter(
-  ({ kind }) => kind.type !== 'files' && kind.type !== 'notes',
-);
+/** Settings that can be given as options: all but the dump's files, which are the words after the verb. */
+export const OPTION_ROWS: readonly SettingRow[] = SETTING_TABLE.filter(({ kind }) => kind.type !== 'files');
 
 /** Adds every setting of the one table as an option. All are texts here: the library reads them, units and all. */
 export function addSettings<T>(parser: Argv<T>): Argv<T> {
@@ -39,7 +34,10 @@ export function addSettings<T>(parser: Argv<T>): Argv<T> {
 
 function optionOf(row: SettingRow): Options {
   const fallback = row.default === null || row.default === '' ? '' : ` [${String(row.default)}]`;
-  const takes = row.kind.type === 'choice' ? `: ${row.kind.values.join(', ')}` : `, such as "${row.example}"`;
+  const takes =
+    row.kind.type === 'choice'
+      ? `: ${row.kind.values.join(', ')}`
+      : `, such as "${row.example}"${isRepeatable(row.kind) ? '; may be repeated' : ''}`;
   return {
     type: 'string',
     requiresArg: true,
@@ -48,13 +46,16 @@ function optionOf(row: SettingRow): Options {
   };
 }
 
-/** The settings among parsed arguments, as the library takes them. An option given twice is a usage error. */
-export function givenSettings(args: Readonly<Record<string, unknown>>): Record<string, string> {
-  const given: Record<string, string> = {};
+/** The settings among parsed arguments, as the library takes them. One given twice that takes one is a usage error. */
+export function givenSettings(args: Readonly<Record<string, unknown>>): Record<string, OptionValue> {
+  const given: Record<string, OptionValue> = {};
   for (const row of OPTION_ROWS) {
     const value = args[row.option];
     if (value === undefined) continue;
-    given[row.option] = single(row.option, value, expectedOf(row.kind));
+    const expected = expectedOf(row.kind);
+    given[row.option] = isRepeatable(row.kind)
+      ? (Array.isArray(value) ? value : [value]).map((each) => single(row.option, each, expected))
+      : single(row.option, value, expected);
   }
   return given;
 }

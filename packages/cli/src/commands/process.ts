@@ -3,13 +3,16 @@ import { dirname, join } from 'node:path';
 import { WakeloomError } from '@wakeloom/tracker/core/errors';
 import { resolveRun } from '@wakeloom/tracker/run/resolve';
 import { parseRunSheet } from '@wakeloom/tracker/run/run-sheet';
+import type { OptionValue } from '@wakeloom/tracker/run/setting-kinds';
 import type { ResolvedRun } from '@wakeloom/tracker/run/settings';
 import { calledAs } from '../called-as.js';
+import { differencesFrom, type EarlierRecord } from '../earlier-result.js';
 import { EXIT } from '../exit-codes.js';
 import { expandFiles } from '../files.js';
 import { summaryLines } from '../messages.js';
 import { addSettings, givenSettings, single } from '../options.js';
-import { prepareOutFolder } from '../out-folder.js';
+import { isOurResult, prepareOutFolder } from '../out-folder.js';
+import { plainText } from '../plain-text.js';
 import { processRun } from '../process-run.js';
 import type { Terminal } from '../terminal.js';
 import type { Args, Verb } from '../verbs.js';
@@ -21,6 +24,8 @@ wakeloom process SHEET.yaml [options] --out DIR
 
 Links the detections of a dump into pathlines and writes the result folder DIR.
 Everything below can stand in a run sheet; an option overrules the sheet.
+Several dump files are read in the order given; a quoted pattern such as
+"frames/*.csv" stands for its files in the order of their numbers.
 
 Examples:
   wakeloom demo --out demo
@@ -39,7 +44,10 @@ export const PROCESS: Verb = {
     addSettings(
       parser
         .option('out', { type: 'string', description: 'Folder for the result; made when missing' })
-        .option('replace', { type: 'boolean', description: 'Write into a folder that holds other files; they stay' })
+        .option('replace', {
+          type: 'boolean',
+          description: "Put the result in the place of another run's, or beside other files, which stay",
+        })
         .option('quiet', { type: 'boolean', description: 'Say nothing but errors' }),
     ),
   run: runProcess,
@@ -55,7 +63,12 @@ async function runProcess(inputs: readonly string[], args: Args, terminal: Termi
     );
   }
   const out = single('out', args['out'], 'a folder');
-  prepareOutFolder(out, args['replace'] === true);
+  const { earlier, undo } = await prepareOutFolder(out, args['replace'] === true, (record) =>
+    differencesFrom(record, run, files),
+  );
+  if (!quiet && earlier !== null) {
+    terminal.say(plainText(`note replaces the result of run ${earlier.run} once the new one is whole`));
+  }
   const said = new Set<string>();
   const record = await longWork(terminal, quiet, (hooks) => {
     const onEvent: typeof hooks.onEvent = (event) => {
@@ -63,10 +76,23 @@ async function runProcess(inputs: readonly string[], args: Args, terminal: Termi
       hooks.onEvent(event);
     };
     return processRun({ run, files, out }, { ...hooks, onEvent });
+  }).catch((error: unknown) => {
+    undo();
+    if (earlier !== null) terminal.say(earlierAfterFailure(out, earlier));
+    throw error;
   });
   if (quiet) return EXIT.done;
   for (const line of [...summaryLines(record, said), ...nextSteps(out)]) terminal.result(line);
   return EXIT.done;
+}
+
+/** Whether the earlier result outlived a run that failed: it does unless the failure came while files changed names. */
+function earlierAfterFailure(out: string, earlier: EarlierRecord): string {
+  return plainText(
+    isOurResult(out)
+      ? `note ${out} still holds the complete earlier result of run ${earlier.run}`
+      : `note ${out} holds no result any more: the new one was being put in the place of the earlier one`,
+  );
 }
 
 /** Where the results lie and what to type next. */
@@ -86,7 +112,7 @@ export function nextSteps(out: string): string[] {
 /** Settings and dump files from what was typed: one run sheet, or dump files and globs. */
 export function resolveInputs(
   inputs: readonly string[],
-  options: Readonly<Record<string, string>>,
+  options: Readonly<Record<string, OptionValue>>,
 ): { run: ResolvedRun; files: string[] } {
   if (inputs.length === 0) {
     throw new WakeloomError(

@@ -41,6 +41,6 @@ export interface ResultPlace {
   sync(file: string): Promise<void>;
   /** Renames over an existing file of that name; the folder entry is on the disk when it returns. */
   rename(from: string, to: string): void;
-  /** Removes the file; no error when there is none. */
+  /** Removes the file; no error when there is none. The folder entry is off the disk when it returns. */
   remove(file: string): void;
 }

@@ -19,7 +19,7 @@ export interface WorkerRunOptions {
 /**
  * Works a whole run in worker threads: `processRun` on these files, in this order, into the folder `out`, which is
  * made where it is missing. The threads are gone when the promise has settled. Codes as `processRun` and as
- * `WorkerClient.run`; after an abort the folder holds no result.
+ * `WorkerClient.run`; after an abort the folder is what it was before.
  */
 export async function processInWorker(
   request: RunRequest,

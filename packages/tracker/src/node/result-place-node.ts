@@ -86,7 +86,11 @@ export async function openNodeResultPlace(folder: string, options: { create: boo
       guard(path(to), 0, () => renameSync(path(from), path(to)));
       syncFolder(folder);
     },
-    remove: (file) => guard(path(file), 0, () => rmSync(path(file), { force: true })),
+    remove(file) {
+      if (statSync(path(file), { throwIfNoEntry: false }) === undefined) return;
+      guard(path(file), 0, () => rmSync(path(file), { force: true }));
+      syncFolder(folder);
+    },
   };
 }
 

@@ -8,7 +8,7 @@ import { runStages, STAGES } from './list.js';
  * the folder. Memory: particles in view, the grid, and about 60 MB for the store; not the number of frames.
  *
  * Throws coded errors (`dump/...`, `geometry/...`, `linking/...`, `grid/...`, `store/...`, `run/aborted`); after any
- * of them the folder holds no run.json and is no result.
+ * of them the folder is what it was before: no result, or the earlier complete one.
  */
 export async function processRun(request: RunRequest, tools: RunTools, context: RunContext): Promise<RunRecord> {
   const events: RunEvent[] = [];

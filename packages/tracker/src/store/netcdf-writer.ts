@@ -27,7 +27,7 @@ export interface NetcdfWriter {
   variable(options: VariableOptions): void;
   /** Appends rows; several calls must cover the variable exactly, in order. Borrows `values`. */
   append(name: string, values: NumericArray): void;
-  /** Closes, syncs, reads back, compares, renames to the final name; resolves to the content digest. */
+  /** Closes, syncs, reads back, compares; resolves to the content digest. The file keeps its partial name. */
   finish(context: RunContext): Promise<string>;
   /** Closes and removes the partial file. */
   abandon(): void;
@@ -139,7 +139,6 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
       await place.sync(partial);
       const found = await readBackDigest(place, partial, context);
       if (found !== expected) throw readBackError(place, file, bytesWritten, expected, found);
-      place.rename(partial, file);
       return expected;
     },
     abandon() {

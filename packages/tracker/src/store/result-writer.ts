@@ -15,6 +15,7 @@ import { sampleColumns } from './sample-columns.js';
 import { sampleStatistics } from './sample-statistics.js';
 import { openSpill, rowBytes, type Spill, spillBytes } from './spill.js';
 import { flagStuck } from './stuck.js';
+import { clearPartials, clearResult, swapIn, withEarlierResult } from './swap-result.js';
 import { transpose } from './transpose.js';
 
 /** What a result folder is made with. Lengths in units.length. */
@@ -69,49 +70,46 @@ export type ReportText = string | ((record: RunRecord) => string);
 
 /**
  * Makes one result folder: `add` blocks, `finish`, `writeGrid`, `complete`, in this order. Whatever fails removes the
- * partial files; the folder then holds no run.json and is no result. Codes: `store/disk-full`, `store/read-back`,
- * `store/not-writable`, `store/too-many-samples`, `store/bad-block`, `run/aborted`.
+ * partial files; the folder is then what it was before: no result, or the earlier one. Codes: `store/disk-full`,
+ * `store/read-back`, `store/not-writable`, `store/too-many-samples`, `store/bad-block`, `run/aborted`.
  */
 export interface ResultWriter {
   /** Frames in ascending order; takes the block. */
   add(block: SampleBlock): Promise<void>;
-  /** Hands out whole pathlines in the order of their numbers, then leaves pathlines.nc and frames.nc complete. */
+  /** Hands out whole pathlines in the order of their numbers, then leaves pathlines.nc and frames.nc written and read back. */
   finish(onPathlines: (rows: PathlineRows) => void | Promise<void>): Promise<FinishedSamples>;
   writeGrid(grid: GridResult, attributes: Attributes): Promise<void>;
-  /** Writes report.html, log.ndjson and, last of all, run.json; resolves to the record as written. */
+  /** Writes report.html, log.ndjson and run.json, then lets all files take their names; resolves to the record as written. */
   complete(record: Omit<RunRecord, 'digest'>, report: ReportText, logLines: readonly string[]): Promise<RunRecord>;
   /** Removes what was begun. To be called when anything else of the run fails; no error when all is done. */
   abandon(): void;
 }
 
-/** Files of a result folder in the order they are made. */
-export const RESULT_FILES = ['pathlines.nc', 'frames.nc', 'grid.nc', 'report.html', 'log.ndjson', 'run.json'] as const;
-
-/** Removes an old run.json first (the folder is no result from then on), then the other files of an old result and leftovers of a run that was killed. */
-function clear(place: ResultPlace): void {
-  place.remove('run.json');
-  for (const file of RESULT_FILES) place.remove(file);
-  for (const file of place.files()) if (file.startsWith(PARTIAL_PREFIX)) place.remove(file);
-}
-
 /**
- * Starts a result in the folder: from now on it is no result until `complete`. Memory: about 75 MB in the plane, of
- * which 25 bytes a pathline, whatever the number of samples. Disk while it works: 98 bytes a sample in scratch files,
- * beside 98 for pathlines.nc and 34 for frames.nc. Time: bench/cases/write-result.mjs.
+ * Starts a result in the folder. An earlier complete one stays as it is until `complete` puts the new one in its
+ * place; the disk holds both meanwhile. What is left of a run that was cut short goes at once. Memory: about 75 MB in
+ * the plane, of which 25 bytes a pathline, whatever the number of samples. Disk while it works: 98 bytes a sample in
+ * scratch files, beside 98 for pathlines.nc and 34 for frames.nc. Time: bench/cases/write-result.mjs.
  */
 export function openResultWriter(place: ResultPlace, options: ResultWriterOptions): ResultWriter {
   const { dims, pairs, units, context, keepPathlines, keepFrames } = options;
   const title = options.title ?? 'run';
   const columns = sampleColumns(dims, pairs);
   const frameColumns = FRAME_KEYS.flatMap((key) => columns.filter((column) => column.key === key));
-  clear(place);
+  clearPartials(place);
+  if (place.size('run.json') < 0) clearResult(place);
   const withFrames = keepFrames !== 'none';
   const fileBytes = (keepPathlines === 'none' ? 0 : rowBytes(columns)) + (withFrames ? rowBytes(frameColumns) + 8 : 0);
   if (options.expectedSamples !== undefined) {
-    checkRoom(place, options.expectedSamples * (spillBytes(columns, withFrames) + fileBytes));
+    try {
+      checkRoom(place, options.expectedSamples * (spillBytes(columns, withFrames) + fileBytes));
+    } catch (error) {
+      throw withEarlierResult(error, place);
+    }
   }
   let spill: Spill | null = openSpill(place, columns, withFrames, options.working?.batchRows);
   let pathlinesFile: PathlinesFile | null = null;
+  let swapping = false;
   let completed = false;
   const digests: Record<string, string> = {};
 
@@ -120,8 +118,10 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     pathlinesFile = null;
     spill?.discard();
     spill = null;
-    // Files that were done already are of no use without run.json, and take the room a rerun needs.
-    if (!completed) clear(place);
+    // Files that were done already are of no use without the others, and take the room a rerun needs.
+    if (completed) return;
+    if (swapping) clearResult(place);
+    else clearPartials(place);
   };
   const guard = async <T>(work: () => Promise<T>): Promise<T> => {
     try {
@@ -130,9 +130,9 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
       try {
         abandon();
       } catch {
-        // What went wrong first is what to tell; the folder has no run.json in any case.
+        // What went wrong first is what to tell; the folder has no new run.json in any case.
       }
-      throw error;
+      throw withEarlierResult(error, place);
     }
   };
   const inUse = (): Spill => {
@@ -188,13 +188,15 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
       checkRoom(place, text.length);
       place.writeText(PARTIAL_PREFIX + file, text);
       await place.sync(PARTIAL_PREFIX + file);
-      place.rename(PARTIAL_PREFIX + file, file);
     };
     const content = folderDigest(place.hasher, digests);
     const full: RunRecord = { ...record, digest: { content, files: { ...digests } } };
     await put('report.html', typeof report === 'string' ? report : report(full));
     await put('log.ndjson', logLines.map((line) => `${line}\n`).join(''));
     await put('run.json', `${JSON.stringify(full, null, 2)}\n`);
+    // From here on nothing waits: an abort comes before or not at all.
+    swapping = true;
+    swapIn(place, [...Object.keys(digests), 'report.html', 'log.ndjson', 'run.json']);
     completed = true;
     return full;
   };
