@@ -2,7 +2,9 @@ import { mkdirSync, mkdtempSync, readdirSync, rmSync, writeFileSync } from 'node
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { SETTING_TABLE } from '@wakeloom/tracker/run/options';
+import { resolveRun } from '@wakeloom/tracker/run/resolve';
 import { afterEach, beforeEach, describe, expect, it } from 'vitest';
+import { differencesFrom, type EarlierRecord } from '../../packages/cli/src/earlier-result.js';
 import { expandFiles, naturalOrder, safeName } from '../../packages/cli/src/files.js';
 import { summaryLines } from '../../packages/cli/src/messages.js';
 import { readNormalisation } from '../../packages/cli/src/normalise.js';
@@ -81,46 +83,105 @@ describe('files', () => {
 });
 
 describe('the out folder', () => {
-  it('is made when missing and left empty', () => {
+  const prepare = (out: string, replace = false, differences: string[] = []) =>
+    prepareOutFolder(out, replace, () => Promise.resolve(differences));
+  const refusal = (out: string, replace = false, differences: string[] = []) =>
+    prepare(out, replace, differences).then(
+      () => 'no error',
+      (error: { code: string }) => error.code,
+    );
+
+  it('is made when missing and left empty, and unmade when nothing came of the run', async () => {
     const out = join(folder, 'new', 'out');
-    prepareOutFolder(out, false);
+    const { earlier, undo } = await prepare(out);
     expect(readdirSync(out)).toEqual([]);
+    expect(earlier).toBeNull();
+    undo();
+    expect(readdirSync(folder)).toEqual([]);
   });
 
-  it('may hold an earlier result, a run that was cut short, or what systems leave behind', () => {
+  it('is not unmade when it was there before or holds something', async () => {
+    mkdirSync(join(folder, 'old'));
+    (await prepare(join(folder, 'old'))).undo();
+    const { undo } = await prepare(join(folder, 'new'));
+    put('new/results-of-somebody');
+    undo();
+    expect(readdirSync(folder).sort()).toEqual(['new', 'old']);
+  });
+
+  it('may hold an earlier result, a run that was cut short, or what systems leave behind', async () => {
     const ours = JSON.stringify({ program: { name: 'wakeloom' } });
     put('done/run.json', ours);
     put('done/my-plot.png');
     put('cut/.partial-pathlines.nc');
     put('cut/grid.nc');
     put('plain/.DS_Store');
-    for (const name of ['done', 'cut', 'plain'])
-      expect(codeOf(() => prepareOutFolder(join(folder, name), false))).toBe('no error');
+    for (const name of ['done', 'cut', 'plain']) expect(await refusal(join(folder, name))).toBe('no error');
   });
 
-  it('with other files is refused unless --replace, and then loses nothing', () => {
+  it('with the result of another run is refused unless --replace', async () => {
+    put('done/run.json', JSON.stringify({ program: { name: 'wakeloom' }, run: 'first' }));
+    const out = join(folder, 'done');
+    expect(await refusal(out, false, ['grid.bin'])).toBe('usage/out-other-run');
+    await expect(prepare(out, false, ['grid.bin'])).rejects.toThrow(/another run, "first" \(differs in grid\.bin\)/);
+    expect((await prepare(out, true, ['grid.bin'])).earlier?.run).toBe('first');
+  });
+
+  it('with other files is refused unless --replace, and then loses nothing', async () => {
     put('foreign/thesis.tex', 'years of work');
     put('fake/run.json', '{"program":{"name":"other"}}');
     put('fake/x.txt');
-    expect(codeOf(() => prepareOutFolder(join(folder, 'foreign'), false))).toBe('usage/out-not-empty');
-    expect(codeOf(() => prepareOutFolder(join(folder, 'fake'), false))).toBe('usage/out-not-empty');
-    prepareOutFolder(join(folder, 'foreign'), true);
+    expect(await refusal(join(folder, 'foreign'))).toBe('usage/out-not-empty');
+    expect(await refusal(join(folder, 'fake'))).toBe('usage/out-not-empty');
+    await prepare(join(folder, 'foreign'), true);
     expect(readdirSync(join(folder, 'foreign'))).toEqual(['thesis.tex']);
-    expect(codeOf(() => prepareOutFolder(join(folder, 'foreign', 'thesis.tex'), true))).toBe('usage/out-not-a-folder');
+    expect(await refusal(join(folder, 'foreign', 'thesis.tex'), true)).toBe('usage/out-not-a-folder');
   });
 
-  it('below a file is refused', () => {
-    expect(codeOf(() => prepareOutFolder(join(put('file'), 'out'), false))).toBe('usage/out-not-writable');
+  it('below a file is refused', async () => {
+    expect(await refusal(join(put('file'), 'out'))).toBe('usage/out-not-writable');
+  });
+});
+
+describe('a run over an earlier result', () => {
+  const options = { rate: '60 Hz', scale: '0.05 mm/px' };
+  const resolved = (more: Record<string, string> = {}) =>
+    resolveRun({ options: { ...options, ...more }, dumpFiles: ['dump.csv'] });
+  const record = (sha256: string): EarlierRecord => ({
+    run: 'first',
+    settings: resolved().records,
+    inputs: [{ name: 'elsewhere/dump.csv', bytes: 5, modified: new Date(0).toISOString(), sha256 }],
+  });
+  // Of coreutils: printf 'a,b\nc' | sha256sum
+  const SHA = '9352b95467bf40616cf74b44b11373df5bbeefd5b1b69f1d458451d6a1d7a0e9';
+
+  it('is the same with the same bytes and settings, whatever threads and memory', async () => {
+    const file = put('dump.csv', 'a,b\nc');
+    expect(await differencesFrom(record(SHA), resolved({ threads: '2', 'ram-limit': '1 GB' }), [file])).toEqual([]);
+  });
+
+  it('differs by its settings', async () => {
+    const file = put('dump.csv', 'a,b\nc');
+    const run = resolved({ bin: '2 mm', rate: '50 Hz' });
+    expect(await differencesFrom(record(SHA), run, [file])).toEqual(['clock.rate', 'grid.bin']);
+  });
+
+  it('differs by its detections: other bytes, another name, another number of files', async () => {
+    const other = put('dump.csv', 'a,b\nd');
+    expect(await differencesFrom(record(SHA), resolved(), [other])).toEqual(['other detections']);
+    const renamed = put('dump-2.csv', 'a,b\nc');
+    expect(await differencesFrom(record(SHA), resolved(), [renamed])).toEqual(['other detections']);
+    expect(await differencesFrom(record(SHA), resolved(), [other, other])).toEqual(['other detections']);
   });
 });
 
 describe('options', () => {
-  it('offer every setting of the table but files and notes, without clashing with those of the verbs', () => {
+  it('offer every setting of the table but files, without clashing with those of the verbs', () => {
     const left = SETTING_TABLE.filter((row) => !OPTION_ROWS.includes(row)).map(({ key }) => key);
-    expect(left).toEqual(['dump.files', 'notes']);
+    expect(left).toEqual(['dump.files']);
     const names = OPTION_ROWS.map(({ option }) => option);
     expect(new Set(names).size).toBe(names.length);
-    for (const own of ['out', 'replace', 'quiet', 'help', 'version', 'format', 'normalise'])
+    for (const own of ['out', 'replace', 'quiet', 'help', 'version', 'format', 'normalise', 'verify'])
       expect(names).not.toContain(own);
   });
 

@@ -1,5 +1,8 @@
 import { existsSync, readFileSync } from 'node:fs';
 import { fileURLToPath } from 'node:url';
+import { SETTING_TABLE } from '@wakeloom/tracker/run/options';
+import { readSetting } from '@wakeloom/tracker/run/read-setting';
+import { resolveRun } from '@wakeloom/tracker/run/resolve';
 import { parseRunSheet } from '@wakeloom/tracker/run/run-sheet';
 import { describe, expect, it } from 'vitest';
 import { DEMO } from '../../packages/cli/src/commands/demo.js';
@@ -46,6 +49,35 @@ describe('the README', () => {
   it('shows a run sheet that is valid', () => {
     const sheet = /```yaml\n([\s\S]*?)```/.exec(readme)![1]!;
     expect(parseRunSheet(sheet, 'README.md').values['run']).toBe('cylinder, 30 mm/s');
+  });
+
+  it('lists only settings that process takes as they stand there', () => {
+    const table = /<!-- settings:begin -->([\s\S]*)<!-- settings:end -->/.exec(readme)![1]!;
+    const rows = [...table.matchAll(/^\| `([a-z.-]+)` \| (.+?) \|/gm)].map(
+      ([, key, option]) => [key!, option!] as const,
+    );
+    expect(rows.map(([key]) => key)).toEqual(SETTING_TABLE.map(({ key }) => key));
+    for (const [key, option] of rows) {
+      const row = SETTING_TABLE.find((candidate) => candidate.key === key)!;
+      if (option === '(the words after `process`)') {
+        expect(key).toBe('dump.files');
+        continue;
+      }
+      const name = /^`(--[a-z-]+)`$/.exec(option)![1]!;
+      const { args, words } = parseVerb(verbParser(PROCESS, { columns: 80 }), ['dump.csv', name, row.example]);
+      expect(words).toEqual(['dump.csv']);
+      const given = givenSettings(args);
+      expect(Object.keys(given)).toEqual([name.slice(2)]);
+      expect(readSetting(row, given[row.option]), key).not.toBeNull();
+    }
+  });
+
+  it('lets repeatable settings be repeated', () => {
+    const words = ['d.csv', '--notes', 'operator: Me', '--notes', 'facility: B', '--body', 'circle 0, 0, 5 mm'];
+    const { args } = parseVerb(verbParser(PROCESS, { columns: 80 }), [...words, '--body', 'polygon 0 0; 5 0; 5 5 mm']);
+    const { settings } = resolveRun({ options: { ...givenSettings(args), scale: '1 mm/px' } });
+    expect(settings.notes).toEqual({ operator: 'Me', facility: 'B' });
+    expect(settings.body).toHaveLength(2);
   });
 
   it('links to files that are there', () => {

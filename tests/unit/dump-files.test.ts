@@ -38,11 +38,12 @@ describe('order and numbers of files', () => {
 describe('several files', () => {
   const run = (...files: [string, string][]) => files.map(([name, text]) => memorySource(name, text));
 
-  it('reads parts of one run in natural order and counts rows over all', async () => {
+  it('reads parts of one run in the order given and counts rows over all', async () => {
     const { scan, blocks } = await readDump(
-      run(['p10.csv', 'frame,y,x\n2,6,5\n'], ['p2.csv', 'frame,x,y\n0,1,2\n1,3,4\n']),
+      run(['p10.csv', 'frame,x,y\n0,1,2\n1,3,4\n'], ['p2.csv', 'frame,y,x\n2,6,5\n']),
     );
-    expect(scan.files.map(({ name }) => name)).toEqual(['p2.csv', 'p10.csv']);
+    expect(scan.files.map(({ name }) => name)).toEqual(['p10.csv', 'p2.csv']);
+    expect(scan.ordered).toBe(true);
     expect(flatRows(blocks).map((row) => [row[0], row[1], row[2], row[5]])).toEqual([
       [0, 1, 2, 0],
       [1, 3, 4, 1],
@@ -79,13 +80,18 @@ describe('several files', () => {
     expect(scan.remarks.join('\n')).toContain('1 files with a header and no row, first f_0007.csv');
   });
 
-  it('reads one file a frame, number from the order, without a header', async () => {
-    const { blocks } = await readDump(run(['b.csv', '5 6\n'], ['a.csv', '1 2\n3 4\n']), { layout: 'frame-from-order' });
+  it('reads one file a frame, number from the order given, without a header, and says when names count otherwise', async () => {
+    const given = run(['f2.csv', '5 6\n'], ['f11.csv', '7 8\n'], ['f1.csv', '1 2\n3 4\n']);
+    const { scan, blocks } = await readDump(given, { layout: 'frame-from-order' });
     expect(flatRows(blocks).map((row) => row.slice(0, 3))).toEqual([
-      [0, 1, 2],
-      [0, 3, 4],
-      [1, 5, 6],
+      [0, 5, 6],
+      [1, 7, 8],
+      [2, 1, 2],
+      [2, 3, 4],
     ]);
+    expect(scan.remarks.join('\n')).toContain('not that of the numbers in their names (f11.csv before f1.csv)');
+    const counted = await readDump(run(['f2.csv', '5 6\n'], ['f11.csv', '7 8\n']), { layout: 'frame-from-order' });
+    expect(counted.scan.remarks.join('\n')).not.toContain('order given');
   });
 
   it('says when two names give one frame', async () => {

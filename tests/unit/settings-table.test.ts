@@ -30,8 +30,10 @@ describe('table of settings', () => {
   it('has a line for every setting in the documentation', () => {
     const lines = settingsMarkdown().trimEnd().split('\n');
     expect(lines).toHaveLength(SETTING_TABLE.length + 2);
-    for (const row of SETTING_TABLE)
-      expect(lines.some((line) => line.startsWith(`| \`${row.key}\` | \`--${row.option}\` |`))).toBe(true);
+    for (const row of SETTING_TABLE) {
+      const option = row.key === 'dump.files' ? '(the words after `process`)' : `\`--${row.option}\``;
+      expect(lines.some((line) => line.startsWith(`| \`${row.key}\` | ${option} |`))).toBe(true);
+    }
   });
 
   it('records every setting with its origin', () => {
@@ -90,6 +92,17 @@ describe('options', () => {
       },
     ]);
     expect(settings.notes).toEqual({ operator: 'lab 3', 'run-number': '12' });
+  });
+
+  it('reads several bodies and notes from options given several times', () => {
+    const body = ['circle 0, 0, 5 mm', 'polygon 0 0; 5 0; 5 5 mm and circle 9, 9, 1 mm'];
+    const notes = ['operator: A; B', 'facility: tunnel: 2'];
+    const { settings } = resolveRun({ options: { scale: '1 mm/px', body, notes } });
+    expect(settings.body.map(({ kind }) => kind)).toEqual(['circle', 'polygon', 'circle']);
+    expect(settings.notes).toEqual({ operator: 'A; B', facility: 'tunnel: 2' });
+    const refused = (given: string[]) => () => resolveRun({ options: { notes: given } });
+    expect(refused(['operator: A', 'operator: B'])).toThrow(/--notes: got the note "operator" twice/);
+    expect(refused(['no colon'])).toThrow(/--notes: got "no colon", expected notes by name/);
   });
 
   it('fills in water from its temperature', () => {

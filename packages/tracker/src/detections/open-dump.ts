@@ -27,8 +27,8 @@ const BLOCK_ROWS = 65_536;
 const SCAN_ROWS = 16_384;
 
 /**
- * Opens the dump of one run. The sources (borrowed; the caller closes them) are read in natural order of their
- * names, rows counted over all of them. Nothing is read before `scan`.
+ * Opens the dump of one run. The sources (borrowed; the caller closes them) are read in the order given; where their
+ * names hold the frame numbers, in that of those. Rows are counted over all of them. Nothing is read before `scan`.
  *
  * `scan` reads the dump once: rows present, read and set aside, frames, bounds, SHA-256 of each file as on disk; it
  * tells each reason for setting rows aside and each remark as an event too. `blocks` reads it again by the same way.
@@ -62,7 +62,7 @@ class OpenDump implements Dump {
   #ordered: OrderedRows | null = null;
 
   constructor(sources: readonly ByteSource[], settings: DumpSettings, tools: DumpTools) {
-    this.#files = [...sources].sort((a, b) => naturalOrder(a.name, b.name));
+    this.#files = settings.layout === 'frame-from-name' ? byFrame(sources) : [...sources];
     this.#settings = settings;
     this.#tools = tools;
   }
@@ -106,7 +106,11 @@ class OpenDump implements Dump {
     }
     refuseBadRows(pass);
     refuseTimes(pass, finisher);
-    const remarks = [...this.#repeatedNames(), ...scanRemarks(pass, notes, finisher, outOfOrder)];
+    const remarks = [
+      ...this.#repeatedNames(),
+      ...this.#unusualOrder(),
+      ...scanRemarks(pass, notes, finisher, outOfOrder),
+    ];
     this.#shape = shape;
     this.#scan = {
       files: this.#files.map((file, i) => ({
@@ -175,6 +179,17 @@ class OpenDump implements Dump {
     return this.#settings.layout === 'frame-from-order' ? { frame: 'order of the files, from 0' } : {};
   }
 
+  /** Shells sort f10 before f2: whoever gave a list in such an order should know what it did to the frames. */
+  #unusualOrder(): string[] {
+    if (this.#settings.layout !== 'frame-from-order') return [];
+    const names = this.#files.map(({ name }) => name);
+    const at = names.findIndex((name, i) => i > 0 && naturalOrder(names[i - 1], name) > 0);
+    if (at < 0) return [];
+    return [
+      `files are taken in the order given, which is not that of the numbers in their names (${names[at - 1]} before ${names[at]}); give a quoted pattern with * to have them sorted`,
+    ];
+  }
+
   #repeatedNames(): string[] {
     if (this.#settings.layout !== 'frame-from-name') return [];
     const seen = new Map<number, string>();
@@ -191,6 +206,12 @@ class OpenDump implements Dump {
       `${repeated.length} files repeat a frame number, first ${name} and ${seen.get(frame)} (frame ${frame}): taken as one frame`,
     ];
   }
+}
+
+/** In ascending order of the frame numbers in the names; files of one number keep their order. */
+function byFrame(sources: readonly ByteSource[]): ByteSource[] {
+  const numbered = sources.map((source) => ({ source, frame: frameFromName(source.name) }));
+  return numbered.sort((a, b) => a.frame - b.frame).map(({ source }) => source);
 }
 
 function sameBytes(pass: DumpPass, hashes: readonly string[]): boolean {

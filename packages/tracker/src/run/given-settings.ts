@@ -3,7 +3,7 @@ import type { Quantity } from '../core/quantity.js';
 import { nearestWord } from './nearest.js';
 import { SETTING_TABLE } from './options.js';
 import { readSetting } from './read-setting.js';
-import type { QuantityVector, SettingRow, SettingValue } from './setting-kinds.js';
+import type { OptionValue, QuantityVector, SettingRow, SettingValue } from './setting-kinds.js';
 import { SettingProblem } from './setting-problem.js';
 import type { Origin } from './settings.js';
 import type { ParsedSheet } from './sheet-form.js';
@@ -22,7 +22,7 @@ export class GivenSettings {
   readonly #sheet: ParsedSheet | undefined;
   readonly #problems: { readonly text: string; readonly origin: Origin }[] = [];
 
-  constructor(sheet: ParsedSheet | undefined, options: Readonly<Record<string, string | number | boolean>>) {
+  constructor(sheet: ParsedSheet | undefined, options: Readonly<Record<string, OptionValue>>) {
     this.#sheet = sheet;
     const names = SETTING_TABLE.map((row) => row.option);
     for (const name of Object.keys(options)) {
@@ -34,7 +34,7 @@ export class GivenSettings {
     for (const row of SETTING_TABLE) this.#read(row, options[row.option]);
   }
 
-  #read(row: SettingRow, option: string | number | boolean | undefined): void {
+  #read(row: SettingRow, option: OptionValue | undefined): void {
     const inSheet = this.#sheet !== undefined && Object.hasOwn(this.#sheet.values, row.key);
     const origin: Origin = option !== undefined ? 'option' : inSheet ? 'sheet' : 'default';
     let raw: unknown = origin === 'option' ? option : origin === 'sheet' ? this.#sheet!.values[row.key] : row.default;

@@ -156,7 +156,7 @@ export const WORK_SETTINGS: readonly SettingRow[] = [
     'notes',
     { type: 'notes' },
     null,
-    'operator: lab 3; run-number: 12',
+    'operator: A. Name',
     'Free notes that go into the result: operator, facility, calibration-certificate, ...',
   ),
   row('seed', 'seed', { type: 'whole', least: 0, most: 4294967295 }, 1, '7', 'Seed of everything drawn at random'),

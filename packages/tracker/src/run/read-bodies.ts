@@ -67,10 +67,11 @@ function fromKeys(item: Readonly<Record<string, unknown>>, expected: string): Wr
 
 /**
  * Bodies from a sheet's list (`[ { circle: { centre: [0, 0] mm, diameter: 5 mm } } ]`) or from an option's text
- * (`circle 0, 0, 5 mm`; several joined by ` and `). Throws `SettingProblem`.
+ * (`circle 0, 0, 5 mm`; several joined by ` and `, or a list of such texts). Throws `SettingProblem`.
  */
 export function readBodies(raw: unknown, expected: string): readonly WrittenBody[] {
-  const items = typeof raw === 'string' ? raw.split(/\s+and\s+/) : Array.isArray(raw) ? raw : [raw];
+  const given: readonly unknown[] = Array.isArray(raw) ? raw : [raw];
+  const items = given.flatMap((item) => (typeof item === 'string' ? item.split(/\s+and\s+/) : [item]));
   return items.map((item: unknown) => {
     if (typeof item === 'string') return fromText(item, expected);
     if (typeof item === 'object' && item !== null && !Array.isArray(item)) {

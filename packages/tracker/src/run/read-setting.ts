@@ -45,7 +45,7 @@ export function expectedOf(kind: SettingKind): string {
     case 'points':
       return 'rows of dump x, dump y, true x, true y';
     case 'notes':
-      return 'notes by name, such as { operator: A. Name }';
+      return 'notes by name, such as "operator: A. Name" or { operator: A. Name }';
   }
 }
 
@@ -117,15 +117,19 @@ function readDirection(kind: SettingKind, raw: unknown): readonly number[] {
 
 function readNotes(kind: SettingKind, raw: unknown): Readonly<Record<string, string>> {
   const notes: Record<string, string> = {};
-  if (typeof raw === 'string') {
-    for (const part of raw.split(';').filter((piece) => piece.trim() !== '')) {
-      const colon = part.indexOf(':');
-      if (colon <= 0) return fail(kind, raw);
-      notes[part.slice(0, colon).trim()] = part.slice(colon + 1).trim();
+  // A text holds notes with semicolons between them; in a list each text is one note, semicolons and all.
+  const lines = typeof raw === 'string' ? raw.split(';').filter((piece) => piece.trim() !== '') : raw;
+  if (Array.isArray(lines)) {
+    for (const line of lines as readonly unknown[]) {
+      const colon = typeof line === 'string' ? line.indexOf(':') : -1;
+      if (colon <= 0) return fail(kind, line);
+      const name = (line as string).slice(0, colon).trim();
+      if (Object.hasOwn(notes, name)) throw new SettingProblem(`got the note "${name}" twice, expected each once`);
+      notes[name] = (line as string).slice(colon + 1).trim();
     }
     return notes;
   }
-  if (typeof raw !== 'object' || raw === null || Array.isArray(raw)) return fail(kind, raw);
+  if (typeof raw !== 'object' || raw === null) return fail(kind, raw);
   for (const [name, value] of Object.entries(raw)) {
     if (value !== null && typeof value === 'object')
       throw new SettingProblem(`got ${describeFound(value)} in ${name}, expected a text`);

@@ -4,6 +4,7 @@ import { quantityIn } from './parse-quantity.js';
 import { resolveClock, resolveFluid } from './resolve-clock.js';
 import { resolveBodies, resolveGeometry } from './resolve-geometry.js';
 import { chooseUnits, itemsOf, type RunUnits, sizeIn, speedIn } from './resolve-units.js';
+import type { OptionValue } from './setting-kinds.js';
 import { settingRecords } from './setting-records.js';
 import type { ColumnRef, DumpSettings, GridSettings, LinkingSettings, ResolvedRun, RunSettings } from './settings.js';
 import type { ParsedSheet } from './sheet-form.js';
@@ -11,7 +12,7 @@ import type { ParsedSheet } from './sheet-form.js';
 /** What a run is made from: a sheet, options by their name without dashes, files named beside them; any may be missing. */
 export interface ResolveInput {
   readonly sheet?: ParsedSheet;
-  readonly options?: Readonly<Record<string, string | number | boolean>>;
+  readonly options?: Readonly<Record<string, OptionValue>>;
   /** Files of the dump given beside the options; they take the place of those in the sheet. */
   readonly dumpFiles?: readonly string[];
 }

@@ -72,6 +72,9 @@ export type SettingValue =
   | readonly WrittenBody[]
   | Readonly<Record<string, string>>;
 
+/** An option as it was given; a list where it was given several times (see `isRepeatable`). */
+export type OptionValue = string | number | boolean | readonly string[];
+
 /** One setting: where it stands in the run sheet, what it is called as an option, what it takes, what it does. */
 export interface SettingRow {
   /** Dotted path in the run sheet. */
@@ -85,4 +88,9 @@ export interface SettingRow {
   readonly help: string;
   /** As a person would write it as an option's value. */
   readonly example: string;
+}
+
+/** Whether an option of this kind may be given several times: once a body, once a note. */
+export function isRepeatable(kind: SettingKind): boolean {
+  return kind.type === 'bodies' || kind.type === 'notes';
 }

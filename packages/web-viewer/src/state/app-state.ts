@@ -1,5 +1,6 @@
 import { computed, signal } from '@preact/signals';
 import { toPlainError } from '@wakeloom/tracker/core/errors';
+import { naturalOrder } from '@wakeloom/tracker/detections/file-order';
 import type { RunRecord } from '@wakeloom/tracker/store/run-record';
 import type { PathlinePreview } from '@wakeloom/tracker/workers/operation-table';
 import { filledOptions, SETTING_FIELDS } from './setting-fields.js';
@@ -46,7 +47,8 @@ export function createAppState(tracker: TrackerService) {
 
   function chooseFiles(chosen: Iterable<File>): void {
     if (busy.value) return;
-    const list = [...chosen];
+    // What is picked or dropped comes in no order of its own; the tracker reads files in the order given.
+    const list = [...chosen].sort((a, b) => naturalOrder(a.name, b.name));
     if (list.length === 0) return;
     files.value = list;
     phase.value = 'ready';
