@@ -46,8 +46,8 @@ export interface GridAccumulator {
 /**
  * Accumulator of grid statistics. A sample counts in every bin that covers it (half-open: a lower border belongs to
  * the bin, an upper one to the next). Samples with a flag of `EXCLUDED_FROM_GRID` take no part. Means and centred
- * products by Welford's update (B. P. Welford, Technometrics 4 (1962) 419-420). Memory: 288 bytes a bin in the plane,
- * 496 in a volume, whatever the number of samples. Cost about 0.05 us a sample and bin in the plane.
+ * products by Welford's update (B. P. Welford, Technometrics 4 (1962) 419-420). Memory: 296 bytes a bin in the plane,
+ * 504 in a volume, whatever the number of samples. Cost about 0.05 us a sample and bin in the plane.
  */
 export function createGridAccumulator(shape: GridShape, dims: Dims, options: GridOptions): GridAccumulator {
   return new Accumulator(shape, dims, options);

@@ -9,7 +9,7 @@ import type { Dims } from '../core/columns.js';
  * - first sample's velocity: a shift for the sums below
  * - sums over the samples of the current pathline: count, shifted components, their products
  * - sums over pathlines of products of those sums, for standard errors that respect that samples of one pathline
- *   go together (see `standard-errors.ts`)
+ *   go together (see `moments.ts`)
  */
 export interface BinLayout {
   readonly dims: Dims;
@@ -26,6 +26,8 @@ export interface BinLayout {
   readonly current: number;
   /** Per component: sum of S_a^2, S_a n; per pair the six or ten products it needs; first the sum of n^2. */
   readonly clusters: number;
+  /** Sum over pathlines of n^3, n their samples in the bin. */
+  readonly cubes: number;
   /** Components of each pair, in the order of `product`. */
   readonly pairs: readonly (readonly [number, number])[];
 }
@@ -52,6 +54,7 @@ export function binLayout(dims: Dims): BinLayout {
   const current = take(1 + dims + pairs.length);
   // n n, then n S_a, then S_a S_b, then four for each pair.
   const clusters = take(1 + dims + pairs.length + PAIR_ENTRIES * pairs.length);
+  const cubes = take(1);
   return {
     dims,
     stride: next,
@@ -64,6 +67,7 @@ export function binLayout(dims: Dims): BinLayout {
     shift,
     current,
     clusters,
+    cubes,
     pairs,
   };
 }

@@ -12,6 +12,7 @@ export function closePathline(layout: BinLayout, sums: Float64Array, at: number,
   if (n === 0) return;
   let to = at + layout.clusters;
   into[to] = into[to]! + n * n;
+  into[at + layout.cubes] = into[at + layout.cubes]! + n * n * n;
   to++;
   for (let a = 0; a < dims; a++, to++) into[to] = into[to]! + n * sums[current + 1 + a]!;
   const ofPairs = current + 1 + dims;

@@ -6,13 +6,18 @@ import { closePathline } from './close-pathline.js';
 export interface BinMoments {
   readonly samples: number;
   readonly pathlines: number;
+  /** Pathlines of equal length that would weigh as much: N^2 over the sum of n_g^2 (L. Kish, Survey Sampling (1965), from memory). */
+  readonly effectivePathlines: number;
   /** Mean of u, v, (w). */
   readonly mean: readonly number[];
   /** Standard error of each mean, samples of one pathline taken as going together; NaN with fewer than 2 pathlines. */
   readonly meanSe: readonly number[];
   /** Components of each stress: [0, 0] for uu, [0, 1] for uv ... */
   readonly pairs: readonly (readonly [number, number])[];
-  /** Sum of products of deviations over samples - 1. */
+  /**
+   * Covariances, free of bias: with one sample a pathline (or one pathline only) the sum of products of deviations over
+   * samples - 1; else see `momentsOf`.
+   */
   readonly product: readonly number[];
   readonly productSe: readonly number[];
   /** Mean squared standard error of the velocity per component: the noise part of the variance. */
@@ -21,11 +26,16 @@ export interface BinMoments {
 
 /**
  * Takes the figures of a bin from its sums. Standard errors are those of a mean over clusters: with S_g the sum over
- * the samples of pathline g of their deviations from the mean of the bin, var(mean) = G / (G - 1) sum(S_g^2) / N^2,
- * N samples of G pathlines (K.-Y. Liang & S. L. Zeger, Biometrika 73 (1986) 13-22, for a mean; from memory). Samples
- * of one pathline may be correlated in any way; different pathlines are taken as independent. For a stress the
- * deviations are those of the product of fluctuations; that the means in it are themselves estimated is neglected,
- * an error of relative size 1 / N. With one sample a pathline both reduce to s / sqrt(N).
+ * the samples of pathline g of their deviations from the mean of the bin, var(mean) = F sum(S_g^2) / N^2, N samples of
+ * G pathlines (K.-Y. Liang & S. L. Zeger, Biometrika 73 (1986) 13-22, for a mean; from memory). Samples
+ * of one pathline may be correlated in any way; different pathlines are taken as independent. F takes off the bias of
+ * few pathlines of unequal length: with p_g = n_g / N the share of pathline g, the expectation of sum(S_g^2) / N^2 for
+ * samples that are the same along each pathline is var(mean) (1 - 2 sum(p_g^3) / sum(p_g^2) + sum(p_g^2)), which is
+ * G / (G - 1) of equal shares. For samples that are less alike F is a little too large, never too small.
+ *
+ * The mean of products of deviations is too small by the (co)variance of the means that were taken off: that, estimated
+ * in the same way, is added back. For a stress's standard error the deviations are those of the product of fluctuations.
+ * With one sample a pathline all of it reduces to the plain s^2 with N - 1 and to s / sqrt(N).
  */
 export function momentsOf(layout: BinLayout, sums: Float64Array, bin: number): BinMoments {
   const { dims, pairs, stride } = layout;
@@ -34,8 +44,10 @@ export function momentsOf(layout: BinLayout, sums: Float64Array, bin: number): B
   closePathline(layout, bins, 0, closed);
   const n = closed[layout.samples]!;
   const pathlines = closed[layout.pathlines]!;
-  const factor = pathlines > 1 ? pathlines / (pathlines - 1) / (n * n) : Number.NaN;
   const nn = closed[layout.clusters]!;
+  const bias = 1 - (2 * closed[layout.cubes]!) / (nn * n) + nn / (n * n);
+  const factor = pathlines > 1 ? 1 / (bias * n * n) : Number.NaN;
+  const plain = pathlines < 2 || pathlines === n;
   const withN = layout.clusters + 1;
   const two = withN + dims;
   const four = two + pairs.length;
@@ -59,7 +71,6 @@ export function momentsOf(layout: BinLayout, sums: Float64Array, bin: number): B
     const nB = closed[withN + b]!;
     if (a === b) meanSe.push(rootOf(factor * (squareA - 2 * ma * nA + ma * ma * nn)));
     const raw = closed[layout.product + k]!;
-    product.push(n > 1 ? raw / (n - 1) : Number.NaN);
     // Deviation sum of pathline g: S_ab - ma S_b - mb S_a + n c, squared and summed.
     const c = ma * mb - raw / n;
     const at = four + PAIR_ENTRIES * k;
@@ -68,6 +79,8 @@ export function momentsOf(layout: BinLayout, sums: Float64Array, bin: number): B
     const sabB = closed[at + 2]!;
     const sabSab = closed[at + 3]!;
     const ab = closed[two + k]!;
+    const ofMeans = factor * (ab - ma * nB - mb * nA + ma * mb * nn);
+    product.push(n > 1 ? (plain ? raw / (n - 1) : raw / n + ofMeans) : Number.NaN);
     const square =
       sabSab +
       ma * ma * squareB +
@@ -83,7 +96,7 @@ export function momentsOf(layout: BinLayout, sums: Float64Array, bin: number): B
   }
   const noise: number[] = [];
   for (let a = 0; a < dims; a++) noise.push(n > 0 ? closed[layout.squaredSe + a]! / n : Number.NaN);
-  return { samples: n, pathlines, mean, meanSe, pairs, product, productSe, noise };
+  return { samples: n, pathlines, effectivePathlines: (n * n) / nn, mean, meanSe, pairs, product, productSe, noise };
 }
 
 /** Place of pair (a, b), a <= b, among uu, uv, (uw), vv, (vw, ww). */
