@@ -2,13 +2,37 @@ import { calibrationSummary } from '../detections/calibration-summary.js';
 import { type RunRecord, SCHEMA_VERSION } from '../store/run-record.js';
 import type { Board } from './board.js';
 
-/** Share of samples set aside by screening above which a person should look (1 to 5 % normal, above 10 % look; common practice, no source). */
-const MUCH_SET_ASIDE = 0.1;
+/** Share of samples set aside by screening above which a person should look (1 to 5 % is normal; common practice, no source). */
+const MUCH_SET_ASIDE = 0.05;
 /** Displacement ratio above which linking without knowledge of the flow gets doubtful (common practice, no source). */
 const LARGE_RATIO = 1;
 
-/** run.json of a finished run, without its digest. */
-export function runRecord(board: Board, started: string): Omit<RunRecord, 'digest'> {
+/** Tells what a person should look at in the finished run; to be called once, before `runRecord`. */
+export function tellConcerns(board: Board): void {
+  const finished = board.finished!;
+  const { prior } = board.look!;
+  const warn = (code: string, message: string, details: Readonly<Record<string, unknown>> = {}) =>
+    board.context.event({ code, level: 'warning', message, details });
+  const share = finished.samples > 0 ? 1 - finished.unflagged / finished.samples : 0;
+  if (share > MUCH_SET_ASIDE) {
+    const text = `${percent(share)} of the samples were set aside by screening (above ${percent(MUCH_SET_ASIDE)}): look at the recording; if the flow fluctuates from particle to particle, what was set aside may be turbulence, and stresses may come out too low`;
+    warn('screening/much-set-aside', text, { share });
+  }
+  const ratio = prior.displacementRatio;
+  if (ratio !== null && ratio > LARGE_RATIO) {
+    const text = `displacement ratio ${ratio.toFixed(2)}: particles move farther than they are apart; wrong links are likely, record at a higher rate or seed less`;
+    warn('linking/large-ratio', text, { ratio });
+  }
+  if (!prior.noiseMeasured && board.request.resolved.settings.clock.kind !== 'pairs') {
+    warn(
+      'noise/assumed',
+      'position noise could not be measured from the first pathlines; standard errors rest on an assumed value',
+    );
+  }
+}
+
+/** run.json of a finished run, without its digest. Its times end here: what is left is to write it down. */
+export function runRecord(board: Board): Omit<RunRecord, 'digest'> {
   const { request, tools, context } = board;
   const { settings, records, assumptions } = request.resolved;
   const scan = board.scan!;
@@ -26,22 +50,6 @@ export function runRecord(board: Board, started: string): Omit<RunRecord, 'diges
   const inPathlines = pairs ? 2 * finished.samples : finished.samples;
   const filled = countFilled(grid.fields.get('u')?.values);
   const warnings = board.events.filter((event) => event.level === 'warning').map((event) => event.message);
-  const asideShare = finished.samples > 0 ? 1 - finished.unflagged / finished.samples : 0;
-  if (asideShare > MUCH_SET_ASIDE) {
-    warnings.push(
-      `${percent(asideShare)} of the samples were set aside by screening (above ${percent(MUCH_SET_ASIDE)}, common practice: look at the recording)`,
-    );
-  }
-  if (prior.displacementRatio !== null && prior.displacementRatio > LARGE_RATIO) {
-    warnings.push(
-      `displacement ratio ${prior.displacementRatio.toFixed(2)}: particles move farther than they are apart; wrong links are likely, record at a higher rate or seed less`,
-    );
-  }
-  if (!prior.noiseMeasured && !pairs) {
-    warnings.push(
-      'position noise could not be measured from the first pathlines; standard errors rest on an assumed value',
-    );
-  }
   return {
     schema: SCHEMA_VERSION,
     program: { name: 'wakeloom', version: request.programVersion },
@@ -93,7 +101,7 @@ export function runRecord(board: Board, started: string): Omit<RunRecord, 'diges
     systematic: summary.systematic,
     warnings,
     verdict: null,
-    clockTimes: { started, finished: tools.clock.now(), seconds: { ...board.seconds } },
+    clockTimes: { started: board.started.at, finished: tools.clock.now(), seconds: { ...board.seconds } },
     host: { ...tools.host, threads: context.budget.threads },
   };
 }

@@ -1,6 +1,7 @@
 import type { Dims } from '../core/columns.js';
 import { medianOfFew } from '../math/median.js';
 import { NearestFew } from '../math/nearest-few.js';
+import { LocalSpread } from './local-spread.js';
 import { PlaneTest } from './plane-test.js';
 
 /** Fewest neighbours for a judgement: the median of three has no defence against two outliers. */
@@ -75,7 +76,9 @@ export interface MedianTest {
  * The published test takes its neighbours from a regular grid, where they lie evenly round the centre. Scattered ones
  * do not, so that in plain shear without any noise one sample in twenty would fail. Hence a component that fails the
  * published test is tested again on what is left after the plane through the neighbours (`PlaneTest`), and fails only
- * if it fails there too. With too few neighbours for that the published test decides.
+ * if it fails there too. With too few neighbours for that the published test decides. What has failed must also stand
+ * out of the spread round its neighbours (`LocalSpread`), so that turbulence which the seeding does not resolve is left
+ * in.
  *
  * Where more than half the neighbours lie within threshold times epsilon of the sample their median does too, and the
  * sample passes without any median being taken. Exact and the same whatever the cuts: neighbours follow from the
@@ -85,7 +88,10 @@ export class MedianScreen {
   private readonly test: MedianTest;
   private readonly search: NearestFew;
   private readonly plane: PlaneTest;
+  private readonly local: LocalSpread;
   private readonly values: Float64Array;
+  /** How far each component of the judged sample is off, NaN where it passes. */
+  private readonly deviation = new Float64Array(3);
   /** By slot of the search: velocity, and what its standard error is a multiple of. */
   private velocity: [Float64Array, Float64Array, Float64Array];
   private root = new Float64Array(0);
@@ -95,6 +101,7 @@ export class MedianScreen {
     this.test = test;
     this.search = new NearestFew(test.neighbours);
     this.plane = new PlaneTest(this.search, test.neighbours);
+    this.local = new LocalSpread(this.search, this.plane, test.neighbours);
     this.values = new Float64Array(test.neighbours);
     this.velocity = [this.root, this.root, this.root];
   }
@@ -112,7 +119,7 @@ export class MedianScreen {
     bit: number,
   ): number {
     if (count <= FEWEST_NEIGHBOURS) return 0;
-    const { search, test } = this;
+    const { search, test, deviation } = this;
     const { dims } = columns;
     search.build(columns, candidates, count, dims);
     this.gather(columns, candidates, count, judged);
@@ -128,11 +135,11 @@ export class MedianScreen {
       const speed = Math.abs(u[slot]!) + Math.abs(v[slot]!) + (dims === 3 ? Math.abs(w[slot]!) : 0);
       const floor = speed * ROUNDING_SHARE;
       const gain = root[slot]!;
-      const bad =
-        this.fails(u, slot, found, floor + (test.epsilon ?? gain * test.noise[0])) ||
-        this.fails(v, slot, found, floor + (test.epsilon ?? gain * test.noise[1])) ||
-        (dims === 3 && this.fails(w, slot, found, floor + (test.epsilon ?? gain * test.noise[2])));
-      if (bad) {
+      deviation[0] = this.off(u, slot, found, floor + (test.epsilon ?? gain * test.noise[0]));
+      deviation[1] = this.off(v, slot, found, floor + (test.epsilon ?? gain * test.noise[1]));
+      deviation[2] = dims === 3 ? this.off(w, slot, found, floor + (test.epsilon ?? gain * test.noise[2])) : Number.NaN;
+      if (!(deviation[0] >= 0 || deviation[1] >= 0 || deviation[2] >= 0)) continue;
+      if (this.local.standsOut(this.velocity, slot, found, deviation)) {
         flags[row] = flags[row]! | bit;
         failed++;
       }
@@ -162,7 +169,8 @@ export class MedianScreen {
     }
   }
 
-  private fails(velocity: Float64Array, slot: number, found: number, epsilon: number): boolean {
+  /** Distance of a component from what its neighbours imply, NaN where it passes. */
+  private off(velocity: Float64Array, slot: number, found: number, epsilon: number): number {
     const { values } = this;
     const { slots } = this.search;
     const threshold = this.test.threshold;
@@ -174,8 +182,15 @@ export class MedianScreen {
       values[i] = value;
       if (Math.abs(value - centre) <= close) within++;
     }
-    if (within > found >>> 1) return false;
-    if (normalisedMedianResidual(centre, values, found, epsilon) <= threshold) return false;
-    return !(this.plane.residual(velocity, slot, found, epsilon) <= threshold);
+    if (within > found >>> 1) return Number.NaN;
+    if (normalisedMedianResidual(centre, values, found, epsilon) <= threshold) return Number.NaN;
+    if (this.plane.residual(velocity, slot, found, epsilon) <= threshold) return Number.NaN;
+    // From their median (`values` stand in order now) or from their plane, whichever is less: a gradient widens the one,
+    // neighbours that lie to one side the other.
+    const half = found >>> 1;
+    const middle = found % 2 === 1 ? values[half]! : (values[half - 1]! + values[half]!) / 2;
+    const { deviation } = this.plane;
+    const fromMedian = Math.abs(centre - middle);
+    return Number.isNaN(deviation) ? fromMedian : Math.min(deviation, fromMedian);
   }
 }

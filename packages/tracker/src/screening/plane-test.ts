@@ -25,12 +25,21 @@ export class PlaneTest {
     this.sizes = new Float64Array(neighbours);
   }
 
+  /** Distance of the judged sample from the plane, of the last call of `residual`; NaN where there was none. */
+  deviation = Number.NaN;
+
   /** `velocity` by slot; the neighbours are those of the search's last query. NaN where they determine no plane. */
   residual(velocity: Float64Array, own: number, found: number, epsilon: number): number {
+    const spread = this.spread(velocity, own, found, -1);
+    return this.deviation / (spread + epsilon);
+  }
+
+  /** Widened median distance of the neighbours of `own` from their plane, neighbour `without` left out; NaN where there is none. */
+  spread(velocity: Float64Array, own: number, found: number, without: number): number {
     const { search, design, sizes, normal } = this;
     const { slots, px, py, pz, dims } = search;
     const p = dims + 1;
-    if (found < p + LEAST_REDUNDANCY) return Number.NaN;
+    this.deviation = Number.NaN;
     const far = slots[found - 1]!;
     let reach = Math.abs(px[far]! - px[own]!) + Math.abs(py[far]! - py[own]!);
     if (dims === 3) reach += Math.abs(pz[far]! - pz[own]!);
@@ -38,27 +47,30 @@ export class PlaneTest {
     const scale = 1 / reach;
     normal.fill(0);
     const q = p + 1;
+    let n = 0;
     for (let i = 0; i < found; i++) {
       const slot = slots[i]!;
-      const at = 4 * i;
+      if (slot === without) continue;
+      const at = 4 * n;
       design[at] = 1;
       design[at + 1] = (px[slot]! - px[own]!) * scale;
       design[at + 2] = (py[slot]! - py[own]!) * scale;
       if (dims === 3) design[at + 3] = (pz[slot]! - pz[own]!) * scale;
       const value = velocity[slot]! - velocity[own]!;
+      sizes[n++] = value;
       for (let a = 0; a < p; a++) {
         for (let b = a; b < p; b++) normal[a * q + b] = normal[a * q + b]! + design[at + a]! * design[at + b]!;
         normal[a * q + p] = normal[a * q + p]! + design[at + a]! * value;
       }
     }
-    if (!eliminate(normal, p)) return Number.NaN;
-    for (let i = 0; i < found; i++) {
-      let value = velocity[slots[i]!]! - velocity[own]!;
+    if (n < p + LEAST_REDUNDANCY || !eliminate(normal, p)) return Number.NaN;
+    for (let i = 0; i < n; i++) {
+      let value = sizes[i]!;
       for (let a = 0; a < p; a++) value -= normal[a * q + p]! * design[4 * i + a]!;
       sizes[i] = Math.abs(value);
     }
-    const widened = medianOfFew(sizes, found) * Math.sqrt(found / (found - p));
-    return Math.abs(normal[p]!) / (widened + epsilon);
+    this.deviation = Math.abs(normal[p]!);
+    return medianOfFew(sizes, n) * Math.sqrt(n / (n - p));
   }
 }
 
