@@ -112,6 +112,7 @@ export function scanOf(block: DetectionBlock, firstFrame = block.number[0] ?? 0)
     setAside: [],
     frameNumbers: Int32Array.of(firstFrame),
     frameCounts: Uint32Array.of(rows),
+    timeStep: Number.NaN,
     ordered: true,
     bounds: { min: [0, 0, 0], max: [0, 0, 0] },
     remarks: [],

@@ -75,9 +75,15 @@ export function single(option: string, value: unknown, expected: string): string
   return text;
 }
 
+/** Options that a bare `--option` turns on. */
+const YES_NO: ReadonlySet<string> = new Set(
+  OPTION_ROWS.filter(({ kind }) => kind.type === 'yes-no').map(({ option }) => option),
+);
+
 /**
  * Joins `--option value` into `--option=value` for options that take a value, so that a value may start with a minus
- * sign (`--origin "-5, 3 px"`, `--direction -y`), which the parser would take for an option.
+ * sign (`--origin "-5, 3 px"`, `--direction -y`), which the parser would take for an option. A yes-or-no option
+ * without its word means yes.
  */
 export function joinValues(argv: readonly string[], withValue: ReadonlySet<string>): string[] {
   const joined: string[] = [];
@@ -85,6 +91,10 @@ export function joinValues(argv: readonly string[], withValue: ReadonlySet<strin
     const word = argv[i]!;
     if (word === '--') return [...joined, ...argv.slice(i)];
     const next = argv[i + 1];
+    if (word.startsWith('--') && YES_NO.has(word.slice(2)) && !/^(yes|no|true|false)$/.test(next ?? '')) {
+      joined.push(`${word}=yes`);
+      continue;
+    }
     if (word.startsWith('--') && withValue.has(word.slice(2)) && next !== undefined && !next.startsWith('--')) {
       joined.push(`${word}=${next}`);
       i++;

@@ -1,7 +1,7 @@
 import { WakeloomError } from '../core/errors.js';
 import type { ColumnRef, DumpSettings } from '../run/settings.js';
 import { KNOWN_NAMES, nearestName, plainName } from './column-names.js';
-import { ROLES, type Role } from './row-batch.js';
+import { ROLE, ROLES, type Role } from './row-batch.js';
 
 /** Which column of a file carries which role. */
 export interface ColumnPlan {
@@ -9,6 +9,8 @@ export interface ColumnPlan {
   readonly index: Int32Array;
   /** How each was found, for people: `x: column 3 "x_px"`, columns counted from 1. */
   readonly described: Readonly<Record<string, string>>;
+  /** True when there is no frame column and frames are numbered by the distinct times instead. */
+  readonly framesFromTimes: boolean;
 }
 
 /** What is known of a file's columns before any row is read. */
@@ -21,12 +23,15 @@ export interface FileColumns {
   readonly firstIsWhole: boolean;
   /** False when each file is one frame and its number comes from the name or the order. */
   readonly needsFrame: boolean;
+  /** True when the time column is the clock: then it goes before others that share a name, and can stand in for frame numbers. */
+  readonly timesAreClock?: boolean;
 }
 
 /**
  * Finds the columns of a file by the settings: by name, by 0-based position, or for `auto` by KNOWN_NAMES. Without a
  * header and without any position given, three columns are frame, x, y (two are x, y in one file a frame); anything
- * else would be a guess.
+ * else would be a guess. Where the time column is the clock and nothing is a frame column, frames are numbered by the
+ * distinct times, and three columns without a header are time, x, y.
  *
  * Throws `dump/no-such-column` (with the nearest name) and `dump/columns-unclear` (telling how to name columns).
  */
@@ -37,7 +42,10 @@ export function planColumns(columns: FileColumns, settings: DumpSettings['column
     const reference = settings[role];
     if (reference !== 'auto' && reference !== null) index[ROLES.indexOf(role)] = explicit(role, reference, columns);
   }
+  const timesAreClock = columns.timesAreClock === true;
   const open = wanted.filter((role) => settings[role] === 'auto');
+  // A column "t" could be both: the clock needs it more.
+  if (timesAreClock && open.includes('time')) open.unshift(...open.splice(open.indexOf('time'), 1));
   if (columns.names !== null) {
     const taken = new Set(index);
     for (const role of open) {
@@ -47,7 +55,10 @@ export function planColumns(columns: FileColumns, settings: DumpSettings['column
     }
   } else if (wanted.every((role) => index[ROLES.indexOf(role)] < 0)) byPosition(index, open, columns);
 
+  const framesFromTimes =
+    timesAreClock && columns.needsFrame && settings.frame === 'auto' && index[ROLE.frame] < 0 && index[ROLE.time] >= 0;
   for (const role of ['frame', 'x', 'y'] as const) {
+    if (role === 'frame' && framesFromTimes) continue;
     if (wanted.includes(role) && index[ROLES.indexOf(role)] < 0) throw missing(role, columns);
   }
   const users = new Map<number, Role>();
@@ -68,7 +79,8 @@ export function planColumns(columns: FileColumns, settings: DumpSettings['column
   for (const [at, role] of users) {
     described[role] = `column ${at + 1}${columns.names === null ? '' : ` "${columns.names[at]}"`}`;
   }
-  return { index, described };
+  if (framesFromTimes) described['frame'] = 'place among the distinct times, from 0';
+  return { index, described, framesFromTimes };
 }
 
 function explicit(role: Role, reference: Exclude<ColumnRef, null>, columns: FileColumns): number {
@@ -128,11 +140,12 @@ function automatic(role: Role, names: readonly string[], taken: ReadonlySet<numb
 
 /** Positions where nothing but the number of columns speaks; leaves `index` alone when that is not enough. */
 function byPosition(index: Int32Array, open: readonly Role[], columns: FileColumns): void {
-  const order: Role[] = columns.needsFrame ? ['frame', 'x', 'y'] : ['x', 'y'];
+  const first: Role = columns.timesAreClock === true ? 'time' : 'frame';
+  const order: Role[] = columns.needsFrame ? [first, 'x', 'y'] : ['x', 'y'];
   const clear =
     columns.count === order.length &&
     order.every((role) => open.includes(role)) &&
-    (!columns.needsFrame || columns.firstIsWhole);
+    (!columns.needsFrame || first === 'time' || columns.firstIsWhole);
   if (!clear) {
     const example = columns.needsFrame ? 'columns: { frame: 0, x: 1, y: 2 }' : 'columns: { x: 0, y: 1 }';
     throw new WakeloomError(

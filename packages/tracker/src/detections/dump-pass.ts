@@ -17,6 +17,8 @@ export interface PassOptions {
   readonly context: RunContext;
   /** Whether SHA-256 of the files is taken on the way. */
   readonly hashing: boolean;
+  /** Distinct times of the dump, ascending: what frames are numbered by where there is no frame column. Borrowed. */
+  readonly times?: Float64Array | null;
 }
 
 /** One reading of the whole dump from the first file to the last: what is carried from file to file, and the books. */
@@ -26,6 +28,7 @@ export class DumpPass {
   readonly tools: DumpTools;
   readonly context: RunContext;
   readonly hashing: boolean;
+  readonly times: Float64Array | null;
   readonly ledger = new RowLedger();
   readonly batch = createRowBatch();
   readonly oddities = { pathlineNumbers: 0 };
@@ -36,6 +39,8 @@ export class DumpPass {
   /** Files with nothing in them, and files with a header but no row. */
   readonly emptyFiles: string[] = [];
   readonly headerOnlyFiles: string[] = [];
+  /** Whether frames are numbered by times; known once the first file's columns are. */
+  framesFromTimes = false;
   format: FileFormat | null = null;
   /** Layout of the first text file that holds something. */
   layout: TextLayout | null = null;
@@ -52,6 +57,7 @@ export class DumpPass {
     this.tools = options.tools;
     this.context = options.context;
     this.hashing = options.hashing;
+    this.times = options.times ?? null;
     this.#total = options.files.reduce((sum, file) => sum + file.size, 0);
   }
 
@@ -98,10 +104,11 @@ export class DumpPass {
    */
   agreeColumns(file: string, plan: ColumnPlan): void {
     const used = this.batch.used;
-    const framed = this.settings.layout !== 'one-file-a-run';
+    const framed = this.settings.layout !== 'one-file-a-run' || plan.framesFromTimes;
     const now = ROLES.map((_, role) => (plan.index[role] >= 0 || (framed && role === ROLE.frame) ? 1 : 0));
     if (this.columns === null) {
       this.columns = plan.described;
+      this.framesFromTimes = plan.framesFromTimes;
       this.#shapeFile = file;
       used.set(now);
       return;

@@ -43,6 +43,8 @@ export interface DumpScan {
   /** Distinct frame numbers with at least one detection, ascending, and detections in each. */
   readonly frameNumbers: Int32Array;
   readonly frameCounts: Uint32Array;
+  /** Median step of the time column a frame number, in s as written; NaN without that column or a second frame. */
+  readonly timeStep: number;
   /** True when rows already stand in frame order, so that the dump can be streamed. */
   readonly ordered: boolean;
   /** Smallest and largest coordinate, dump units; NaN for z in the plane. */

@@ -11,8 +11,15 @@ export interface OutOfOrder {
   readonly line: number;
 }
 
-/** Called when a frame is whole: its number, its rows in the store, the number of the frame before (null: none). */
-export type FrameSeen = (store: RowStore, frame: number, from: number, to: number, previous: number | null) => void;
+/** Called when a frame is whole: its number, its rows in the store, the number of the frame before (null: none), its time. */
+export type FrameSeen = (
+  store: RowStore,
+  frame: number,
+  from: number,
+  to: number,
+  previous: number | null,
+  time: number,
+) => void;
 
 /**
  * Puts batches of rows that stand in frame order together to whole frames. Memory: the frames since the last
@@ -77,7 +84,7 @@ export class FrameGatherer {
     if (!this.#open) return;
     this.#open = false;
     this.#rows = this.#finisher.finish(this.#store, this.#current, this.#frameStart, this.#rows);
-    this.#seen(this.#store, this.#current, this.#frameStart, this.#rows, this.#previous);
+    this.#seen(this.#store, this.#current, this.#frameStart, this.#rows, this.#previous, this.#finisher.time);
     this.#previous = this.#current;
     this.#numbers.push(this.#current);
     this.#times.push(this.#finisher.time);

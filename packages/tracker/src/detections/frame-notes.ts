@@ -1,4 +1,4 @@
-import type { RowStore } from './row-store.js';
+import type { FrameSeen } from './frame-gatherer.js';
 
 /**
  * A step of the frame number that is taken for a jump rather than for missing frames: no recording loses that many
@@ -14,7 +14,7 @@ export interface FramePlace {
   readonly line: number;
 }
 
-/** What the first reading learns frame by frame. Memory: 8 to 16 bytes a frame. */
+/** What the first reading learns frame by frame. Memory: 8 to 32 bytes a frame. */
 export class FrameNotes {
   /** Extremes of the coordinates x, y, z; NaN while there are none. */
   readonly min: [number, number, number] = [Number.NaN, Number.NaN, Number.NaN];
@@ -28,6 +28,7 @@ export class FrameNotes {
   #frames = 0;
   #numbers = new Int32Array(256);
   #counts = new Uint32Array(256);
+  #times = new Float64Array(0);
 
   get numbers(): Int32Array {
     return this.#numbers.slice(0, this.#frames);
@@ -37,8 +38,13 @@ export class FrameNotes {
     return this.#counts.slice(0, this.#frames);
   }
 
+  /** Time of each frame as its finisher settled it; empty without a time column. */
+  get times(): Float64Array {
+    return this.#times.slice(0, Math.min(this.#frames, this.#times.length));
+  }
+
   /** A whole frame, to be told in ascending order (see FrameSeen). */
-  readonly seen = (store: RowStore, frame: number, from: number, to: number, previous: number | null): void => {
+  readonly seen: FrameSeen = (store, frame, from, to, previous, time) => {
     if (this.#frames === this.#numbers.length) {
       const numbers = new Int32Array(2 * this.#frames);
       numbers.set(this.#numbers);
@@ -46,6 +52,14 @@ export class FrameNotes {
       const counts = new Uint32Array(2 * this.#frames);
       counts.set(this.#counts);
       this.#counts = counts;
+    }
+    if (store.shape.time) {
+      if (this.#times.length < this.#numbers.length) {
+        const times = new Float64Array(this.#numbers.length);
+        times.set(this.#times);
+        this.#times = times;
+      }
+      this.#times[this.#frames] = time;
     }
     this.#numbers[this.#frames] = frame;
     this.#counts[this.#frames] = to - from;

@@ -11,12 +11,14 @@ import { FrameFinisher } from './frame-finisher.js';
 import { FrameGatherer, type OutOfOrder } from './frame-gatherer.js';
 import { FrameNotes } from './frame-notes.js';
 import { FrameTable } from './frame-table.js';
+import { distinctTimes } from './frames-from-times.js';
 import { changed, OrderedRows, refuseOverLimit } from './ordered-rows.js';
 import { readBatches } from './read-batches.js';
 import { ROLE, type RowBatch } from './row-batch.js';
 import { place } from './row-ledger.js';
 import { type RowShape, shapeOf } from './row-store.js';
 import { refuseBadRows, refuseEmpty, refuseTimes, scanRemarks } from './scan-outcome.js';
+import { timeStep } from './time-column.js';
 
 export type { DumpTools } from './dump-tools.js';
 
@@ -60,6 +62,8 @@ class OpenDump implements Dump {
   #scan: DumpScan | null = null;
   #shape: RowShape | null = null;
   #ordered: OrderedRows | null = null;
+  /** Distinct times that frames are numbered by, where there is no frame column. */
+  #times: Float64Array | null = null;
 
   constructor(sources: readonly ByteSource[], settings: DumpSettings, tools: DumpTools) {
     this.#files = settings.layout === 'frame-from-name' ? byFrame(sources) : [...sources];
@@ -68,10 +72,12 @@ class OpenDump implements Dump {
   }
 
   #pass(context: RunContext, hashing: boolean): DumpPass {
-    return new DumpPass({ files: this.#files, settings: this.#settings, tools: this.#tools, context, hashing });
+    const times = this.#times;
+    return new DumpPass({ files: this.#files, settings: this.#settings, tools: this.#tools, context, hashing, times });
   }
 
   async scan(context: RunContext): Promise<DumpScan> {
+    if (this.#settings.timesAreClock === true) this.#times = await distinctTimes(this.#pass(context, false));
     const pass = this.#pass(context, true);
     const table = new FrameTable();
     let notes = new FrameNotes();
@@ -88,7 +94,7 @@ class OpenDump implements Dump {
       }
     }
     refuseEmpty(pass);
-    const shape = shapeOf(pass.batch.used);
+    let shape = shapeOf(pass.batch.used);
     this.#ordered = null;
     if (outOfOrder === null) gatherer?.endFrame();
     else {
@@ -111,6 +117,14 @@ class OpenDump implements Dump {
       ...this.#unusualOrder(),
       ...scanRemarks(pass, notes, finisher, outOfOrder),
     ];
+    const plane = notes.max[2];
+    if (shape.z && notes.min[2] === plane) {
+      // Nothing can be measured along an axis that no detection moves on, its noise least of all.
+      shape = { ...shape, z: false };
+      this.#ordered?.flatten();
+      notes.min[2] = notes.max[2] = Number.NaN;
+      remarks.push(`z is ${plane} in every row: taken as a light sheet, in the plane`);
+    }
     this.#shape = shape;
     this.#scan = {
       files: this.#files.map((file, i) => ({
@@ -128,6 +142,7 @@ class OpenDump implements Dump {
       setAside: pass.ledger.list(),
       frameNumbers: notes.numbers,
       frameCounts: notes.counts,
+      timeStep: timeStep(notes.numbers, notes.times),
       ordered: outOfOrder === null,
       bounds: { min: notes.min, max: notes.max },
       remarks,

@@ -17,10 +17,10 @@ const BYTES_A_FRAME = 64;
 export function refuseOverLimit(rows: number, frames: number, shape: RowShape, limit: number, where: string): void {
   const need = rows * bytesARow(shape) + frames * BYTES_A_FRAME;
   if (need <= limit) return;
-  const mib = (bytes: number) => `${Math.ceil(bytes / 2 ** 20)} MiB`;
+  const mb = (bytes: number) => `${Math.ceil(bytes / 1e6)} MB`;
   throw new WakeloomError(
     'dump/order-needs-ram',
-    `rows not in frame order: got ${rows} rows that need ${mib(need)} to be put in order, expected at most ${mib(limit)}; raise --ram-limit or sort the dump by frame (${where})`,
+    `rows not in frame order: got ${rows} rows that need ${mb(need)} to be put in order, expected at most ${mb(limit)}, half of the RAM limit; give --ram-limit "${mb(2 * need)}" or sort the dump by frame (${where})`,
     { rows, need, limit },
   );
 }
@@ -81,7 +81,7 @@ export class OrderedRows {
     let write = 0;
     for (let k = 0; k < numbers.length; k++) {
       const end = finisher.finish(store, numbers[k], starts[k], starts[k + 1]);
-      seen(store, numbers[k], starts[k], end, k === 0 ? null : numbers[k - 1]);
+      seen(store, numbers[k], starts[k], end, k === 0 ? null : numbers[k - 1], finisher.time);
       times[k] = finisher.time;
       if (write === starts[k]) write = end;
       else for (let row = starts[k]; row < end; row++) store.move(row, write++);
@@ -90,6 +90,11 @@ export class OrderedRows {
     }
     store.line = new Uint32Array(0);
     return new OrderedRows(numbers, times, offsets, store);
+  }
+
+  /** Forgets z, for rows that turned out to lie in one plane. */
+  flatten(): void {
+    this.#store.flatten();
   }
 
   /** New block of whole frames from frame index `first` on, at most `rows` rows unless one frame holds more. */

@@ -4,6 +4,7 @@ import type { DumpPass } from './dump-pass.js';
 import { FILE_MAGIC, fileFormat, HEAD_BYTES, hasMagic } from './file-kind.js';
 import { frameFromName } from './file-order.js';
 import { judgeRows } from './judge-rows.js';
+import { numberFrames } from './number-frames.js';
 import { readHdf5 } from './read-hdf5.js';
 import { readNpy } from './read-npy.js';
 import { readParquet } from './read-parquet.js';
@@ -28,6 +29,10 @@ export async function* readBatches(pass: DumpPass): AsyncGenerator<void> {
     else if (settings.layout === 'frame-from-order') frame = at;
     for await (const _ of readFile(file, buffer, pass)) {
       if (frame !== null) batch.columns[ROLE.frame].fill(frame, 0, batch.rows);
+      else if (pass.framesFromTimes) {
+        if (pass.times === null) batch.columns[ROLE.frame].fill(0, 0, batch.rows);
+        else numberFrames(batch, pass.times);
+      }
       judgeRows(batch, file.name, ledger, pass.oddities);
       if (batch.rows > 0) yield;
       batch.rows = 0;

@@ -41,6 +41,7 @@ export async function* readHdf5(source: ByteSource, pass: DumpPass): AsyncGenera
         count: found.count,
         firstIsWhole: found.names === null && (await guard(file, async () => firstColumnIsWhole(first, found.count))),
         needsFrame: pass.settings.layout === 'one-file-a-run',
+        timesAreClock: pass.settings.timesAreClock,
       },
       pass.settings.columns,
     );

@@ -41,6 +41,7 @@ export async function* readNpy(source: ByteSource, pass: DumpPass): AsyncGenerat
       count: header.columns.length,
       firstIsWhole: first !== undefined && (await columnIsWhole(source, header.dataStart, header, first)),
       needsFrame: pass.settings.layout === 'one-file-a-run',
+      timesAreClock: pass.settings.timesAreClock,
     },
     pass.settings.columns,
   );

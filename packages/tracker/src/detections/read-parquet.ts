@@ -40,7 +40,14 @@ export async function* readParquet(source: ByteSource, pass: DumpPass): AsyncGen
   const schema = await guard(file, async () => parquetSchema(metadata).children);
   const names = schema.map((child) => String(child.element.name));
   const plan = planColumns(
-    { file, names, count: names.length, firstIsWhole: false, needsFrame: pass.settings.layout === 'one-file-a-run' },
+    {
+      file,
+      names,
+      count: names.length,
+      firstIsWhole: false,
+      needsFrame: pass.settings.layout === 'one-file-a-run',
+      timesAreClock: pass.settings.timesAreClock,
+    },
     pass.settings.columns,
   );
   pass.agreeColumns(file, plan);

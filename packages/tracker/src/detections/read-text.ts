@@ -62,6 +62,7 @@ export async function* readText(
             count: layout.fields,
             firstIsWhole: layout.firstIsWhole,
             needsFrame: settings.layout === 'one-file-a-run',
+            timesAreClock: settings.timesAreClock,
           },
           settings.columns,
         );

@@ -26,7 +26,7 @@ export function bytesARow(shape: RowShape): number {
 
 /** Rows of a dump as columns, without frame numbers: who holds it knows where each frame starts. */
 export class RowStore {
-  readonly shape: RowShape;
+  shape: RowShape;
   capacity: number;
   x: Float64Array;
   y: Float64Array;
@@ -110,6 +110,12 @@ export class RowStore {
     if (this.shape.time) this.time[to] = this.time[from];
     this.row[to] = this.row[from];
     this.line[to] = this.line[from];
+  }
+
+  /** Forgets z: blocks are in the plane from now on. */
+  flatten(): void {
+    this.shape = { ...this.shape, z: false };
+    this.z = new Float64Array(0);
   }
 
   /** New block of rows `from .. to - 1`; `number`, `time` and `offsets` (starting at 0) become the block's own. */

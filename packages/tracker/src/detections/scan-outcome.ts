@@ -41,9 +41,29 @@ export function refuseBadRows(pass: DumpPass): void {
   );
   throw new WakeloomError(
     'dump/too-many-bad-rows',
-    `too many bad rows: got ${bad} of ${present} set aside (${reasons.join('; ')}), expected at most a share of ${limit}; check separator, decimal mark and columns`,
+    `too many bad rows: got ${bad} of ${present} set aside (${reasons.join('; ')}), expected at most a share of ${limit}; ${likelyCause(pass, bad)}`,
     { ...details, examples },
   );
+}
+
+/** What most rows set aside point to, and what to do about it. */
+function likelyCause(pass: DumpPass, bad: number): string {
+  const { ledger } = pass;
+  const present = ledger.rowsPresent;
+  const twice = ledger.count('same-place');
+  if (twice > bad / 2) {
+    // Each place that holds k rows sets k - 1 aside: half of all rows where each stands twice. A few odd ones may differ.
+    const copies = Math.round(present / (present - twice));
+    const whole = copies > 1 && Math.abs(present / (present - twice) / copies - 1) < 0.01;
+    const times = copies === 2 ? 'twice' : `${copies} times`;
+    const what = whole ? `every row stands ${times}` : 'rows stand more than once';
+    const percent = Math.ceil((100 * bad) / present);
+    return `${what}, as when a file is written or given ${whole ? times : 'twice'}: leave the copies out, or keep one row of each place with --bad-rows-limit ${percent}%`;
+  }
+  if (ledger.count('frame-not-whole') > bad / 2) {
+    return 'if the frame column holds times, add --times yes; else check columns and decimal mark';
+  }
+  return 'check separator, decimal mark and columns';
 }
 
 /** Throws `dump/times-differ` when more rows than the bad-row limit allows contradict the time of their frame. */
@@ -66,6 +86,11 @@ export function scanRemarks(
   outOfOrder: OutOfOrder | null,
 ): string[] {
   const remarks = [...pass.remarks];
+  if (pass.framesFromTimes) {
+    remarks.push(
+      `no frame column: ${notes.numbers.length} frames are numbered from 0 by their distinct times; a frame without any detection does not count`,
+    );
+  }
   const at = (row: number, line: number) => place(pass.fileOf(row), line);
   if (outOfOrder !== null) {
     const { frame, after, row, line } = outOfOrder;

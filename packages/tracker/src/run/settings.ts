@@ -49,6 +49,8 @@ export interface DumpSettings {
   readonly layout: 'one-file-a-run' | 'frame-from-name' | 'frame-from-order';
   /** HDF5: path of the group or table that holds the columns. */
   readonly dataset: string | null;
+  /** Whether the time column is the clock; without a frame column frames are then numbered by the distinct times. Absent: no. */
+  readonly timesAreClock?: boolean;
   /** Share of bad rows above which the run fails. */
   readonly badRowsLimit: number;
   /** What to do with pathline numbers in the dump: keep them, check them against the linker, or link anew. */
