@@ -10,6 +10,7 @@ import {
   newFarAwayTally,
 } from '../detections/far-away.js';
 import { openDump } from '../detections/open-dump.js';
+import { timeColumnWords } from '../detections/time-column.js';
 import type { Board, Stage } from './board.js';
 import { FIRST_LOOK, firstLook } from './first-look.js';
 import { countInSteps, frameStep } from './frame-step.js';
@@ -34,6 +35,9 @@ export const scanStage: Stage = {
     for (const remark of board.scan.remarks) {
       context.event({ code: 'dump/remark', level: 'note', message: remark, details: {} });
     }
+    const { note, warning } = timeColumnWords(board.scan, settings.clock, frameStep(board.scan.frameNumbers, settings.clock));
+    if (note !== null) context.event({ code: 'dump/time-column', level: 'note', message: note, details: {} });
+    if (warning !== null) context.event({ code: 'dump/rate-differs', level: 'warning', message: warning, details: {} });
     if (settings.dump.given !== 'ignore' && !board.scan.has.pathline) {
       throw new WakeloomError(
         'dump/no-pathline-column',

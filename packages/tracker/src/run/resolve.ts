@@ -117,11 +117,12 @@ export function resolveRun(input: ResolveInput): ResolvedRun {
   const given = new GivenSettings(input.sheet, input.options ?? {});
   const units = chooseUnits(given);
   const dump = resolveDump(given, input.dumpFiles);
+  const clock = resolveClock(given);
   const ramLimit = given.quantity('results.ram-limit');
   const settings: RunSettings = {
     run: (given.value('run') as string | null) ?? (dump.files.length > 0 ? baseName(dump.files[0]!) : 'run'),
-    dump,
-    clock: resolveClock(given),
+    dump: { ...dump, timesAreClock: clock.kind === 'times' },
+    clock,
     geometry: resolveGeometry(given, units),
     fluid: resolveFluid(given),
     stream: resolveStream(given, units),
