@@ -201,7 +201,7 @@ describe('pathline numbers in the dump', () => {
     writeFileSync(dump, `frame,x,y\n${rows.line.slice(0, 2000).join('\n')}\n`);
     const options = ['--rate', '80 Hz', '--pathline-numbers', 'keep', '--out', join(folder, 'bare')];
     const { code, stderr } = await runCli(['process', dump, ...options]);
-    expect(code).toBe(1);
+    expect(code).toBe(2);
     expect(stderr).toContain('no column of pathline numbers');
   });
 

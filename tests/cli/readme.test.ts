@@ -51,6 +51,18 @@ describe('the README', () => {
     expect(parseRunSheet(sheet, 'README.md').values['run']).toBe('cylinder, 30 mm/s');
   });
 
+  it('shows bodies, one of them a polygon, that a run sheet and options take alike', () => {
+    const yaml = [...readme.matchAll(/```yaml\n([\s\S]*?)```/g)]
+      .map(([, text]) => text!)
+      .find((text) => text.startsWith('body'))!;
+    const sheet = parseRunSheet(`geometry: { scale: 1 mm/px }\n${yaml}`, 'README.md');
+    const body = [...readme.matchAll(/--body "([^"]+)"/g)].map(([, text]) => text!);
+    expect(body).toHaveLength(2);
+    const fromOptions = resolveRun({ options: { scale: '1 mm/px', body } }).settings.body;
+    expect(resolveRun({ sheet }).settings.body).toEqual(fromOptions);
+    expect(fromOptions.map(({ kind }) => kind)).toEqual(['circle', 'polygon']);
+  });
+
   it('lists only settings that process takes as they stand there', () => {
     const table = /<!-- settings:begin -->([\s\S]*)<!-- settings:end -->/.exec(readme)![1]!;
     const rows = [...table.matchAll(/^\| `([a-z.-]+)` \| (.+?) \|/gm)].map(

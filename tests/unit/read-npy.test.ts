@@ -70,7 +70,7 @@ it('sets rows aside and names them by number where there are no lines', async ()
     {
       reason: 'not-finite',
       count: 1,
-      examples: [{ file: 'run.npy', line: 0, found: 'x is NaN in row 1 (counted from 0)' }],
+      examples: [{ file: 'run.npy', line: 0, found: 'x is not a number in row 1 (counted from 0)' }],
     },
   ]);
 });

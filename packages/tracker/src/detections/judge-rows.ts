@@ -34,7 +34,7 @@ export function judgeRows(batch: RowBatch, file: string, ledger: RowLedger, oddi
       const [reason, role] = why(batch, i);
       ledger.setAside(reason, file, batch.line[i], () => {
         const where = batch.line[i] > 0 ? '' : ` in row ${batch.row[i]} (counted from 0)`;
-        return `${role} is ${batch.columns[ROLE[role]][i]}${where}`;
+        return `${role} is ${inWords(batch.columns[ROLE[role]][i])}${where}`;
       });
       continue;
     }
@@ -53,6 +53,12 @@ export function judgeRows(batch: RowBatch, file: string, ledger: RowLedger, oddi
     if (number > 0) oddities.pathlineNumbers++;
     pathline[i] = -1;
   }
+}
+
+/** A value as found; what is written in many ways (inf, Infinity, 1e999, nan, nothing) by what it means. */
+function inWords(value: number): string {
+  if (Number.isNaN(value)) return 'not a number';
+  return Number.isFinite(value) ? String(value) : value > 0 ? 'infinite' : 'minus infinite';
 }
 
 function why(batch: RowBatch, i: number): readonly [RowReason, Role] {

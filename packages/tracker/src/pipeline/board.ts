@@ -41,6 +41,11 @@ export interface LinkCounts extends LinkTally {
   given: (GivenTally & { agreed: number | null }) | null;
 }
 
+/** An event and when it came, s after the start of the run. */
+export interface TimedEvent extends RunEvent {
+  readonly seconds: number;
+}
+
 /** Smallest and largest coordinates. */
 export interface Extremes {
   readonly min: [number, number, number];
@@ -62,7 +67,11 @@ export interface Board {
   readonly request: RunRequest;
   readonly tools: RunTools;
   readonly context: RunContext;
-  readonly events: RunEvent[];
+  /** Start of the run: ISO 8601, and on the clock's monotonic seconds. */
+  readonly started: { readonly at: string; readonly seconds: number };
+  /** Everything that was told, in order: log.ndjson. */
+  readonly events: TimedEvent[];
+  /** Durations for run.json, s: scan, look, stream, write, total. */
   readonly seconds: Record<string, number>;
   dump?: Dump;
   scan?: DumpScan;
@@ -90,5 +99,10 @@ export interface Stage {
   readonly name: string;
   readonly needs: readonly (keyof Board)[];
   readonly gives: readonly (keyof Board)[];
+  /**
+   * True where the work is done when `run` is: its duration is then noted under the stage's name. A stage that opens
+   * a stream has done nothing yet; its work is drawn by the store stage, whose parts are timed there.
+   */
+  readonly timed: boolean;
   run(board: Board): Promise<void> | void;
 }

@@ -10,6 +10,7 @@ import { estimateNoise } from '../noise/position-noise.js';
 import type { RunSettings } from '../run/settings.js';
 import { linkDisplacements } from './displacements.js';
 import { linkBlock } from './link-block.js';
+import { spacingOfNeighbours } from './spacing.js';
 import type { Prior } from './stages.js';
 
 /** Pairs of frames that vote for the flow: few, because the flow may change meanwhile. */
@@ -61,7 +62,8 @@ export async function firstLook(
       'linking: got no detection in the first frames, expected some (after the region of interest and bodies were applied); check geometry, region and body',
     );
   }
-  const spacing = meanSpacing(box, dims, perFrame);
+  const local = spacingOfNeighbours(blocks, dims);
+  const spacing = local > 0 ? local : meanSpacing(box, dims, perFrame);
   const linkSpacing = dims === 3 ? spacing / Math.cbrt(depthNoise) : spacing;
   const pairsClock = settings.clock.kind === 'pairs';
   const pairs = framePairs(blocks, pairsClock ? VOTING_IMAGE_PAIRS : VOTING_PAIRS);
@@ -145,7 +147,7 @@ function extent(blocks: readonly DetectionBlock[]): { box: Box; perFrame: number
   return { box: { min, max }, perFrame: frames > 0 ? rows / frames : 0 };
 }
 
-/** n^(-1/D) with n the particles per area or volume of one frame; along an axis without extent the others decide. */
+/** n^(-1/D) from the box, for frames of a few particles; along an axis without extent the others decide. */
 function meanSpacing(box: Box, dims: Dims, perFrame: number): number {
   let size = 1;
   let axes = 0;

@@ -19,6 +19,6 @@ export async function runStages(stages: readonly Stage[], board: Board): Promise
     }
     const started = board.tools.clock.seconds();
     await stage.run(board);
-    board.seconds[stage.name] = board.tools.clock.seconds() - started;
+    if (stage.timed) board.seconds[stage.name] = board.tools.clock.seconds() - started;
   }
 }

@@ -10,6 +10,7 @@ export const samplesStage: Stage = {
   name: 'fit',
   needs: ['scan', 'look', 'linked'],
   gives: ['samples', 'extent'],
+  timed: false,
   run(board) {
     const { settings } = board.request.resolved;
     const input = { settings, scan: board.scan!, prior: board.look!.prior, context: board.context };

@@ -12,6 +12,7 @@ export const linkStage: Stage = {
   name: 'link',
   needs: ['scan', 'look', 'detections'],
   gives: ['linked', 'linkCounts'],
+  timed: false,
   run(board) {
     const { context, request } = board;
     const { settings } = request.resolved;

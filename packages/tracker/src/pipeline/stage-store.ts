@@ -4,7 +4,7 @@ import { gridShape, withoutNoise } from '../eulerian/grid-shape.js';
 import { reportHtml } from '../figures/report.js';
 import { openResultWriter } from '../store/result-writer.js';
 import type { Stage } from './board.js';
-import { runRecord } from './run-record.js';
+import { runRecord, tellConcerns } from './run-record.js';
 
 /** Pathlines longer than this share the last bar of the length histogram. */
 const LONGEST_BAR = 100_000;
@@ -23,13 +23,13 @@ export const storeStage: Stage = {
   name: 'store',
   needs: ['scan', 'look', 'calibration', 'farAway', 'linkCounts', 'samples', 'extent'],
   gives: ['finished', 'grid', 'samplesInGrid', 'pathlinesBySamples', 'record'],
+  timed: false,
   async run(board) {
     const { context, tools, request, seconds } = board;
     const { settings } = request.resolved;
     const { dims, rowsRead, frameNumbers, frameCounts } = board.scan!;
     const { prior } = board.look!;
     const pairs = settings.clock.kind === 'pairs';
-    const started = tools.clock.now();
     const writer = openResultWriter(tools.place, {
       dims,
       pairs,
@@ -52,6 +52,13 @@ export const storeStage: Stage = {
       for await (const block of board.samples!) await writer.add(block);
       seconds['stream'] = tools.clock.seconds() - streamed;
       if (board.extent!.samples === 0) throw nothingLinked();
+      const { detections } = board.calibration!;
+      context.event({
+        code: 'run/streamed',
+        level: 'info',
+        message: `${detections} detections, ${board.linkCounts!.links} links, ${board.extent!.samples} samples`,
+        details: { detections, ...board.linkCounts!, samples: board.extent!.samples },
+      });
       const { trusted, all } = board.extent!;
       const { bounds, tolerance } = withoutNoise(trusted.min[0] <= trusted.max[0] ? trusted : all, prior.noise);
       const shape = gridShape(settings.grid, dims, bounds, prior.spacing, frameNumbers.length);
@@ -78,9 +85,23 @@ export const storeStage: Stage = {
       board.grid = bins.finish();
       board.samplesInGrid = bins.taken;
       await writer.writeGrid(board.grid, {});
-      seconds['write'] = tools.clock.seconds() - written;
       if (finished.pathlines === 0) throw nothingLinked();
-      const record = runRecord(board, started);
+      seconds['write'] = tools.clock.seconds() - written;
+      context.event({
+        code: 'run/written',
+        level: 'info',
+        message: `${finished.pathlines} pathlines, ${finished.samples} samples, ${shape.count.join(' x ')} bins`,
+        details: { pathlines: finished.pathlines, samples: finished.samples, bins: shape.count },
+      });
+      tellConcerns(board);
+      seconds['total'] = tools.clock.seconds() - board.started.seconds;
+      context.event({
+        code: 'run/finished',
+        level: 'info',
+        message: `done after ${seconds['total'].toFixed(2)} s`,
+        details: { seconds },
+      });
+      const record = runRecord(board);
       const data = {
         grid: board.grid,
         bodies: settings.body,

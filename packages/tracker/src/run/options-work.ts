@@ -141,7 +141,7 @@ export const WORK_SETTINGS: readonly SettingRow[] = [
     { type: 'quantity', dimension: 'bytes', sign: 'positive' },
     '256 MB',
     '1 GB',
-    'Working memory the run may take',
+    'Working memory for data: half for the frames being fitted, half for rows being put in order; the program itself takes about 180 MB beside it',
   ),
   row(
     'results.threads',

@@ -17,10 +17,23 @@ export interface ResolveInput {
   readonly dumpFiles?: readonly string[];
 }
 
-/** The name of a file without folders and without what follows its first dot. */
-function baseName(file: string): string {
-  const name = file.split(/[\\/]/).pop() ?? file;
-  return name.replace(/(?<=.)\..*$/, '').replace(/[*?]/g, '') || 'run';
+/**
+ * Least working memory, bytes: half of it must hold a block of 40 000 detections with all columns of its fit (about
+ * 250 bytes each, 10 MB) and its neighbours in time.
+ */
+const LEAST_RAM = 32e6;
+
+/**
+ * The name of a dump: that of its file without folders and without what follows its first dot; of a pattern, or of one
+ * file a frame, that of the folder they lie in.
+ */
+function baseName(files: readonly string[], layout: DumpSettings['layout']): string {
+  const parts = files[0]!.split(/[\\/]/);
+  const file = parts.pop()!;
+  const wild = /[*?]/.test(file);
+  const folder = parts.filter((part) => !/^(|\.|\.\.)$|[*?]/.test(part)).pop();
+  if (folder !== undefined && (wild || (files.length > 1 && layout !== 'one-file-a-run'))) return folder;
+  return file.replace(/(?<=.)\..*$/, '').replace(/[*?]/g, '') || 'run';
 }
 
 function resolveDump(given: GivenSettings, dumpFiles: readonly string[] | undefined): DumpSettings {
@@ -120,7 +133,7 @@ export function resolveRun(input: ResolveInput): ResolvedRun {
   const clock = resolveClock(given);
   const ramLimit = given.quantity('results.ram-limit');
   const settings: RunSettings = {
-    run: (given.value('run') as string | null) ?? (dump.files.length > 0 ? baseName(dump.files[0]!) : 'run'),
+    run: (given.value('run') as string | null) ?? (dump.files.length > 0 ? baseName(dump.files, dump.layout) : 'run'),
     dump: { ...dump, timesAreClock: clock.kind === 'times' },
     clock,
     geometry: resolveGeometry(given, units),
@@ -149,6 +162,13 @@ export function resolveRun(input: ResolveInput): ResolvedRun {
     seed: given.number('seed'),
     units: { length: units.length, time: units.time },
   };
+  const { ramLimit: bytes } = settings.results;
+  if (bytes < LEAST_RAM) {
+    given.problem(
+      'results.ram-limit',
+      `got ${bytes / 1e6} MB, expected at least ${LEAST_RAM / 1e6} MB: half of it holds the frames being fitted, half the rows being put in order; the program itself takes about 180 MB beside it`,
+    );
+  }
   const { span, order } = settings.smoothing;
   if (span !== 'auto' && span !== null && span <= order) {
     given.problem('smoothing.span', `got ${span} frames, expected more than the order ${order} of the polynomial`);
