@@ -1,10 +1,14 @@
+import { execFileSync } from 'node:child_process';
 import { existsSync, mkdtempSync, readFileSync, rmSync, writeFileSync } from 'node:fs';
 import { createRequire } from 'node:module';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
 import { fileURLToPath } from 'node:url';
+import { openNodeResultPlace } from '@wakeloom/tracker/node';
 import { processInWorker } from '@wakeloom/tracker/node/process-in-worker';
 import { resolveRun } from '@wakeloom/tracker/run/resolve';
+import { parseRunSheet } from '@wakeloom/tracker/run/run-sheet';
+import { openResult } from '@wakeloom/tracker/store/read-result';
 import type { RunRecord } from '@wakeloom/tracker/store/run-record';
 import * as h5wasm from 'h5wasm/node';
 import type { Browser, BrowserContext, Page } from 'playwright-core';
@@ -207,6 +211,53 @@ describe.skipIf(!here)('the page', { timeout: 240_000 }, () => {
     const file = new h5wasm.File(join(folder, 'pathlines.nc'), 'r');
     expect((file.get('x') as h5wasm.Dataset).shape).toEqual([record.counts.samples]);
     file.close();
+  });
+
+  it('saves all files at once as an archive', async () => {
+    await page.setInputFiles('input[type=file]', small);
+    await fillSettings();
+    await processAndWait();
+    const digest = await page.locator('#digest').textContent();
+    const [download] = await Promise.all([
+      page.waitForEvent('download'),
+      page.getByRole('button', { name: 'Save all as one archive' }).click(),
+    ]);
+    expect(download.suggestedFilename()).toBe('vortex.zip');
+    const archive = join(folder, 'vortex.zip');
+    await download.saveAs(archive);
+    if (!needs('python3')) return;
+    const script =
+      'import sys, zipfile; z = zipfile.ZipFile(sys.argv[1]); assert z.testzip() is None; z.extractall(sys.argv[2])';
+    execFileSync('/usr/bin/python3', ['-c', script, archive, join(folder, 'unpacked')]);
+    const result = await openResult(await openNodeResultPlace(join(folder, 'unpacked'), { create: false }));
+    expect(result.record.digest.content).toBe(digest);
+    expect(result.pathlines!.samples).toBe(result.record.counts.samples);
+    result.close();
+  });
+
+  it('takes a run sheet dropped beside the dump; fields overrule it, what nobody said is assumed aloud', async () => {
+    const sheet = 'run: vortex, again\nclock: { rate: 50 Hz }\ngeometry: { scale: 0.05 mm/px }\ngrid: { bin: 4 mm }\n';
+    await drop('vortex.csv', readFileSync(small));
+    await drop('vortex.yaml', Buffer.from(sheet));
+    await page.getByText('run sheet; what is filled in below overrules it').waitFor();
+    await page.getByLabel('Frame rate').fill('100 Hz');
+    await processAndWait();
+    await page.getByText('y as written in the dump counts as up.').waitFor();
+    const parsed = parseRunSheet(sheet, 'vortex.yaml');
+    const resolved = resolveRun({ sheet: parsed, options: { rate: '100 Hz' }, dumpFiles: [small] });
+    const out = join(folder, 'node-sheet');
+    const limits = { threads: 1, ramLimit: 256 * 1024 * 1024 };
+    const record = await processInWorker({ resolved, programVersion: 'test' }, [small], out, limits);
+    expect(await page.locator('#digest').textContent()).toBe(record.digest.content);
+
+    await drop('vortex.yml', Buffer.from('clock: { rat: 50 Hz }\n'));
+    await page.getByRole('button', { name: 'Process' }).click();
+    await status('The run failed.');
+    expect(await page.getByRole('alert').textContent()).toMatch(/vortex\.yml:1:10: .*rat.*nearest is "rate"/s);
+    await page.getByRole('button', { name: 'Leave out vortex.yml' }).click();
+    await page.getByLabel('y axis').selectOption('down');
+    await processAndWait();
+    expect(await page.getByText('y as written in the dump counts as up.').count()).toBe(0);
   });
 
   it('stops on request and works again afterwards', async () => {

@@ -4,6 +4,7 @@ import { existsSync } from 'node:fs';
 /** External things a test may need, and how to look for each. */
 const LOOK: Record<string, () => boolean> = {
   chromium: () => existsSync('/usr/bin/chromium'),
+  python3: () => runs('/usr/bin/python3', ['-c', 'import zipfile']),
   'python3-netcdf4': () => runs('/usr/bin/python3', ['-c', 'import netCDF4']),
   'python3-h5py': () => runs('/usr/bin/python3', ['-c', 'import h5py']),
   'hdf5-tools': () => runs('h5dump', ['--version']),

@@ -50,9 +50,13 @@ export interface PathlinePreview {
  * that needs more than it may hold ends with `store/memory-full` or `store/scratch-full`.
  */
 export type PageOperations = RunOperations & {
-  /** Settings from options by their names on the command line. Code `usage/settings`. */
+  /** Settings from options by their names on the command line and a run sheet's text, or none. Codes `usage/settings`, `sheet/invalid`. */
   resolve: {
-    readonly args: { readonly options: Readonly<Record<string, string>>; readonly dumpFiles: readonly string[] };
+    readonly args: {
+      readonly options: Readonly<Record<string, string>>;
+      readonly dumpFiles: readonly string[];
+      readonly sheet?: { readonly name: string; readonly text: string } | null;
+    };
     readonly value: ResolvedRun;
   };
   /** Pathlines of the last run, at most about `most` samples. Code `store/not-a-result` when there is none. */

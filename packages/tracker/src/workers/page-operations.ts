@@ -44,9 +44,13 @@ export const pageBodies: OperationBodies<PageOperations, PagePlatform> = {
     }
   },
 
-  async resolve({ options, dumpFiles }) {
+  async resolve({ options, dumpFiles, sheet = null }) {
     const { resolveRun } = await import('../run/resolve.js');
-    return { value: resolveRun({ options, dumpFiles }), transfer: [] };
+    if (sheet === null) return { value: resolveRun({ options, dumpFiles }), transfer: [] };
+    // YAML and schema are fetched by those only who have a sheet.
+    const { parseRunSheet } = await import('../run/run-sheet.js');
+    const parsed = parseRunSheet(sheet.text, sheet.name);
+    return { value: resolveRun({ sheet: parsed, options, dumpFiles }), transfer: [] };
   },
 
   async preview({ most }, context, platform) {

@@ -6,6 +6,7 @@ import type { AppState } from '../state/app-state.js';
 export function DumpPanel({ state }: { state: AppState }) {
   const over = useSignal(false);
   const chosen = state.files.value;
+  const sheet = state.sheet.value;
   return (
     <section aria-labelledby="dump-title">
       <h2 id="dump-title">Dump</h2>
@@ -35,7 +36,9 @@ export function DumpPanel({ state }: { state: AppState }) {
           }}
         />
         <strong>Choose or drop the dump</strong>
-        <span>Positions of one run: text (also gzip, zstd), NPY, HDF5 or Parquet</span>
+        <span>
+          Positions of one run: text (also gzip, zstd), NPY, HDF5 or Parquet; its run sheet (YAML) too if there is one
+        </span>
       </label>
       {chosen.length > 0 && (
         <ul class="chosen" aria-label="Files of the dump">
@@ -45,6 +48,21 @@ export function DumpPanel({ state }: { state: AppState }) {
             </li>
           ))}
         </ul>
+      )}
+      {sheet !== null && (
+        <p class="sheet">
+          <span>
+            {sheet.name} <span class="quiet">run sheet; what is filled in below overrules it</span>
+          </span>
+          <button
+            type="button"
+            aria-label={`Leave out ${sheet.name}`}
+            disabled={state.busy.value}
+            onClick={state.dropSheet}
+          >
+            Leave out
+          </button>
+        </p>
       )}
     </section>
   );

@@ -4,6 +4,7 @@ import { naturalOrder } from '@wakeloom/tracker/detections/file-order';
 import type { RunRecord } from '@wakeloom/tracker/store/run-record';
 import type { PathlinePreview } from '@wakeloom/tracker/workers/operation-table';
 import { filledOptions, SETTING_FIELDS } from './setting-fields.js';
+import { StoreZip } from './store-zip.js';
 import type { TrackerService } from './tracker-service.js';
 
 /** What the page is at. */
@@ -31,9 +32,16 @@ const PREVIEW_SAMPLES = 200_000;
 /** Working memory given to a run in the page, bytes. */
 const RUN_BYTES = 256 * 1024 * 1024;
 
+/** What tells a run sheet from a dump. */
+const SHEET_NAME = /\.ya?ml$/i;
+
+/** No run sheet is longer; a dump under a wrong name would be read whole. */
+const MOST_SHEET_BYTES = 1_000_000;
+
 /** All state of the page as signals, and what may be done to it. */
 export function createAppState(tracker: TrackerService) {
   const files = signal<readonly File[]>([]);
+  const sheet = signal<File | null>(null);
   const options = signal<Readonly<Record<string, string>>>(
     Object.fromEntries(SETTING_FIELDS.map((field) => [field.option, field.start])),
   );
@@ -50,7 +58,15 @@ export function createAppState(tracker: TrackerService) {
     // What is picked or dropped comes in no order of its own; the tracker reads files in the order given.
     const list = [...chosen].sort((a, b) => naturalOrder(a.name, b.name));
     if (list.length === 0) return;
-    files.value = list;
+    const sheets = list.filter((file) => SHEET_NAME.test(file.name));
+    const dump = list.filter((file) => !SHEET_NAME.test(file.name));
+    if (sheets.length > 1) {
+      failure.value = `run sheet: got ${sheets.map((file) => file.name).join(', ')}, expected one`;
+      return;
+    }
+    // A sheet alone joins the dump that is there, and a new dump keeps the sheet that is shown beside it.
+    if (dump.length > 0) files.value = dump;
+    if (sheets.length === 1) sheet.value = sheets[0];
     phase.value = 'ready';
     failure.value = null;
   }
@@ -68,7 +84,11 @@ export function createAppState(tracker: TrackerService) {
       const dump = files.value;
       const resolved = await client.run(
         'resolve',
-        { options: filledOptions(options.value), dumpFiles: dump.map((file) => file.name) },
+        {
+          options: filledOptions(options.value),
+          dumpFiles: dump.map((file) => file.name),
+          sheet: sheet.value === null ? null : { name: sheet.value.name, text: await sheetText(sheet.value) },
+        },
         { signal },
       );
       const record = await client.run(
@@ -112,20 +132,65 @@ export function createAppState(tracker: TrackerService) {
   /** Hands a file of the result to the browser's downloads. */
   async function save(name: string): Promise<void> {
     try {
-      const bytes = await tracker().run('file', { name });
-      const address = URL.createObjectURL(new Blob([bytes]));
-      const link = document.createElement('a');
-      link.href = address;
-      link.download = name;
-      link.click();
-      // The download has been handed over once the click has returned; a moment's grace costs nothing.
-      setTimeout(() => URL.revokeObjectURL(address), 10_000);
+      hand(name, [await tracker().run('file', { name })]);
     } catch (error) {
       failure.value = toPlainError(error).message;
     }
   }
 
-  return { files, options, threads, phase, progress, failure, result, busy, chooseFiles, process, abort, save };
+  /** Hands all files of the result to the browser's downloads as one archive. */
+  async function saveAll({ record, files }: ShownResult): Promise<void> {
+    try {
+      const zip = new StoreZip(new Date(record.clockTimes.finished));
+      for (const { name } of files) zip.add(name, await tracker().run('file', { name }));
+      hand(`${fileName(record.run)}.zip`, zip.finish());
+    } catch (error) {
+      failure.value = toPlainError(error).message;
+    }
+  }
+
+  function dropSheet(): void {
+    if (!busy.value) sheet.value = null;
+  }
+
+  return {
+    files,
+    sheet,
+    dropSheet,
+    saveAll,
+    options,
+    threads,
+    phase,
+    progress,
+    failure,
+    result,
+    busy,
+    chooseFiles,
+    process,
+    abort,
+    save,
+  };
+}
+
+/** Gives bytes to the browser's downloads. */
+function hand(name: string, parts: readonly Uint8Array<ArrayBuffer>[]): void {
+  const address = URL.createObjectURL(new Blob([...parts]));
+  const link = document.createElement('a');
+  link.href = address;
+  link.download = name;
+  link.click();
+  // The download has been handed over once the click has returned; a moment's grace costs nothing.
+  setTimeout(() => URL.revokeObjectURL(address), 10_000);
+}
+
+async function sheetText(sheet: File): Promise<string> {
+  if (sheet.size <= MOST_SHEET_BYTES) return sheet.text();
+  throw new Error(`run sheet ${sheet.name}: got ${sheet.size} bytes, expected at most ${MOST_SHEET_BYTES}`);
+}
+
+/** The name of a run as a file's name: letters and digits, else a dash. */
+function fileName(run: string): string {
+  return run.replace(/[^\p{L}\p{N}._-]+/gu, '-').replace(/^[-.]+|[-.]+$/g, '') || 'result';
 }
 
 export type AppState = ReturnType<typeof createAppState>;

@@ -19,10 +19,11 @@ export const SETTING_FIELDS: readonly SettingField[] = [
     label: 'Dump’s y axis',
     hint: 'images: mostly down',
     choices: [
+      { value: '', words: 'not said (up)' },
       { value: 'up', words: 'points up' },
       { value: 'down', words: 'points down' },
     ],
-    start: 'up',
+    start: '',
   },
 ];
 
