@@ -4,7 +4,7 @@ import { ActivePathlines } from './active-pathlines.js';
 import { GroupedAssignment } from './assign-exact.js';
 import { assignQuickly } from './assign-quick.js';
 import { Candidates } from './candidates.js';
-import { decay, linkRisk } from './link-risk.js';
+import { decay, linkRisk, loneRivals } from './link-risk.js';
 import type { FlowPictures } from './pictures.js';
 import { GUESS_SIZE, Predictors } from './predictors.js';
 import { Rescue } from './rescue.js';
@@ -70,7 +70,7 @@ export class Linker {
   private edgeOfRow = new Int32Array(0);
   private queue = new Int32Array(0);
   private rowOfColumn = new Int32Array(0);
-  private columnDensity = new Float64Array(0);
+  private loneDensity = new Float64Array(0);
   private columnRisk = new Float64Array(0);
   private readonly rescue: Rescue;
   private guessOfRow = new Float64Array(0);
@@ -142,11 +142,10 @@ export class Linker {
 
   /** Gathers the candidates of every active pathline. */
   private collect(block: DetectionBlock, from: number, to: number, time: number): void {
-    const { active, candidates, predictors, near, depth, columnDensity, options } = this;
+    const { active, candidates, predictors, near, depth, options } = this;
     const { search, dims } = options;
     const reachSquare = options.reach * options.reach;
     candidates.begin(active.count, to - from);
-    columnDensity.fill(0, 0, to - from);
     if (this.guessOfRow.length < active.count * GUESS_SIZE) {
       this.guessOfRow = new Float64Array(active.count * GUESS_SIZE * 2);
       this.cellOfRow = new Int32Array(active.count * 2);
@@ -181,7 +180,6 @@ export class Linker {
         // In space the exponent is 3/2 q; a newborn may itself be a stray detection.
         const density = peak * decay(dims === 2 ? q : 1.5 * q) * (newborn ? 0.5 : 1);
         candidates.density[e] = density;
-        columnDensity[row - from] += density;
       }
       candidates.start[i + 1] = candidates.edges;
     }
@@ -194,24 +192,21 @@ export class Linker {
     else this.grouped.assign(candidates, GATE + NEWBORN_HANDICAP, edgeOfRow, rowOfColumn);
   }
 
-  /** States the risk of every link chosen and leaves out those above the limit. */
+  /** States the risk of every link chosen, then leaves out those above the limit. */
   private judge(columns: number): void {
-    const { candidates, edgeOfRow, rowOfColumn, columnDensity, columnRisk, options, tally } = this;
+    const { candidates, edgeOfRow, rowOfColumn, columnRisk, loneDensity, options, tally } = this;
+    const assignment = { edgeOfRow, rowOfColumn };
     const stray = this.strayDensity();
+    loneRivals(candidates, assignment, loneDensity);
     for (let column = 0; column < columns; column++) {
-      const i = rowOfColumn[column];
-      if (i === -1) continue;
-      const e = edgeOfRow[i];
-      let rowSum = 0;
-      for (let other = candidates.start[i]; other < candidates.start[i + 1]; other++) {
-        rowSum += candidates.density[other];
-      }
-      const risk = linkRisk(candidates.density[e], rowSum, columnDensity[column], stray);
-      columnRisk[column] = risk;
-      if (risk <= options.riskLimit) continue;
+      const row = rowOfColumn[column];
+      columnRisk[column] = row === -1 ? 0 : linkRisk(candidates, assignment, row, stray, loneDensity);
+    }
+    for (let column = 0; column < columns; column++) {
+      if (rowOfColumn[column] === -1 || columnRisk[column] <= options.riskLimit) continue;
       tally.leftOutForRisk++;
       // The detection starts a pathline of its own; the old one must not contend with it for the next ones.
-      edgeOfRow[i] = ENDED;
+      edgeOfRow[rowOfColumn[column]] = ENDED;
       rowOfColumn[column] = -1;
     }
   }
@@ -372,7 +367,7 @@ export class Linker {
     if (this.rowOfColumn.length < columns) {
       const size = columns * 2;
       this.rowOfColumn = new Int32Array(size);
-      this.columnDensity = new Float64Array(size);
+      this.loneDensity = new Float64Array(size);
       this.columnRisk = new Float64Array(size);
       this.near = new Int32Array(size);
     }

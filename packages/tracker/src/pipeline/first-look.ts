@@ -5,6 +5,8 @@ import { chooseSpan } from '../kinematics/choose-span.js';
 import { createLinker, type LinkPrior } from '../linking/create-linker.js';
 import type { Box } from '../linking/flow-grid.js';
 import { chooseReach } from '../linking/reach.js';
+import { StuckLinks, withoutPlaces } from '../linking/stuck-links.js';
+import { findStuckPlaces, type StuckPlace, withinFlow } from '../linking/stuck-places.js';
 import { type FramePair, voteFlow } from '../linking/vote-flow.js';
 import { estimateNoise } from '../noise/position-noise.js';
 import type { RunSettings } from '../run/settings.js';
@@ -35,6 +37,8 @@ const DEFAULT_SPAN = 7;
 export interface FirstLook {
   readonly prior: Prior;
   readonly link: LinkPrior;
+  /** Places that hold a detection in most frames: what stands there takes no part in the linking of the flow. */
+  readonly stuck: readonly StuckPlace[];
 }
 
 /** Frames that the first look wants to see at most, and rows. Whoever feeds it may stop there. */
@@ -66,7 +70,12 @@ export async function firstLook(
   const spacing = local > 0 ? local : meanSpacing(box, dims, perFrame);
   const linkSpacing = dims === 3 ? spacing / Math.cbrt(depthNoise) : spacing;
   const pairsClock = settings.clock.kind === 'pairs';
-  const pairs = framePairs(blocks, pairsClock ? VOTING_IMAGE_PAIRS : VOTING_PAIRS);
+  // What stands still would vote for fluid at rest, and answer a prediction now and then.
+  const suspects = pairsClock
+    ? []
+    : await findStuckPlaces(blocks, dims, spacing, depthNoise, async () => context.breathe());
+  const moving = withoutStuck(blocks, suspects, settings.linking.bridge);
+  const pairs = framePairs(moving, pairsClock ? VOTING_IMAGE_PAIRS : VOTING_PAIRS);
   const options = { dims, box, spacing: linkSpacing, depthNoise };
   const flow = await voteFlow(pairs, options, context);
   const voted = chooseReach(pairs, flow, options);
@@ -81,7 +90,21 @@ export async function firstLook(
     flow: flow.toData(),
     pairs: pairsClock,
   });
-  const trial = await trialLinking(blocks, settings, start(ASSUMED_NOISE * spacing), context);
+  const at = new Float64Array(3);
+  const stuck = withinFlow(suspects, (x, y, z) => {
+    flow.at(x, y, z, at);
+    return Math.sqrt(at[0] * at[0] + at[1] * at[1] + (dims === 3 ? at[2] * at[2] : 0));
+  });
+  if (stuck.length > 0) {
+    context.event({
+      code: 'linking/stuck-places',
+      level: 'warning',
+      message: `${stuck.length} places hold a detection in most frames although the flow passes them (dirt, reflections, particles on a wall): what stands there is linked apart and flagged "stuck"`,
+      details: { places: stuck.length, x: stuck[0].at[0], y: stuck[0].at[1] },
+    });
+  }
+  const free = stuck.length === suspects.length ? moving : withoutStuck(blocks, stuck, settings.linking.bridge);
+  const trial = await trialLinking(free, settings, start(ASSUMED_NOISE * spacing), context);
   await context.breathe();
   const measured = estimateNoise(leading(trial, NOISE_ROWS));
   await context.breathe();
@@ -114,7 +137,19 @@ export async function firstLook(
     },
     // No real detection is better than a thousandth of a spacing; a gate of rounding errors would lose links.
     link: start(Math.max(noise[0], LEAST_NOISE * spacing)),
+    stuck,
   };
+}
+
+/** The blocks without what stands at the places; themselves where there are none. */
+function withoutStuck(
+  blocks: readonly DetectionBlock[],
+  places: readonly StuckPlace[],
+  bridge: number,
+): readonly DetectionBlock[] {
+  if (places.length === 0) return blocks;
+  const links = new StuckLinks(places, blocks[0].dims, bridge);
+  return blocks.map((block) => withoutPlaces(block, links.take(block)).block);
 }
 
 /** Share of detections at either end of each axis that do not count for the box: strays of the detection software. */
