@@ -1,7 +1,7 @@
 // Builds the web viewer into packages/web-viewer/dist and says how much a browser has to fetch.
 // Run after `tsc -b`, which checks the types; this step only bundles, from the tracker's sources.
 import { readdirSync, readFileSync } from 'node:fs';
-import { dirname, join, relative, sep } from 'node:path';
+import { dirname, join } from 'node:path';
 import { fileURLToPath } from 'node:url';
 import { gzipSync } from 'node:zlib';
 import { build, defaultClientConditions } from 'vite';
@@ -33,14 +33,9 @@ await build({
   },
 });
 
-const files = readdirSync(outDir, { recursive: true, withFileTypes: true })
+const sizes = readdirSync(outDir, { recursive: true, withFileTypes: true })
   .filter((entry) => entry.isFile())
-  .map((entry) => join(entry.parentPath, entry.name))
-  .sort();
-for (const file of files) {
-  const bytes = readFileSync(file);
-  const name = relative(outDir, file).split(sep).join('/');
-  console.log(
-    `${name}: ${(bytes.length / 1000).toFixed(1)} kB, ${(gzipSync(bytes).length / 1000).toFixed(1)} kB gzipped`,
-  );
-}
+  .map((entry) => readFileSync(join(entry.parentPath, entry.name)))
+  .map((bytes) => [bytes.length, gzipSync(bytes).length]);
+const [all, zipped] = [0, 1].map((k) => sizes.reduce((sum, size) => sum + size[k], 0) / 1e6);
+console.log(`page built: ${sizes.length} files, ${all.toFixed(1)} MB, ${zipped.toFixed(1)} MB gzipped`);
