@@ -1,8 +1,8 @@
 import type { DetectionBlock, Dims } from '../core/columns.js';
 import { CellIndex } from '../math/cell-index.js';
 import type { ActivePathlines } from './active-pathlines.js';
+import { peakDensity, surpriseDecay } from './candidate-search.js';
 import type { FlowGrid } from './flow-grid.js';
-import { decay } from './link-risk.js';
 import type { Predictors } from './predictors.js';
 
 /** A third detection may lie this many expected squares from the straight continuation of the first two. */
@@ -91,7 +91,6 @@ export class Rescue {
     picture.at(x, y, z, flow);
     const bend = predictors.bendIn(picture.cellAt(x, y, z));
     const gate = Math.min(BEND_GATE * bend, reach * reach);
-    const peak = dims === 2 ? 1 / (Math.PI * bend) : 0.329843 / (bend * Math.sqrt(bend));
     const firsts = this.older.near(x - step * flow[0], y - step * flow[1], z - step * flow[2], this.nearOlder);
     let bestColumn = -1;
     let bestFirst = -1;
@@ -121,8 +120,7 @@ export class Rescue {
       }
     }
     if (bestColumn === -1 || least > gate) return;
-    const q = least / bend;
-    const own = 0.5 * peak * decay(dims === 2 ? q : 1.5 * q);
+    const own = 0.5 * peakDensity(dims, bend) * surpriseDecay(dims, least / bend);
     const against = density * tried;
     const risk = against / (own + against);
     if (this.given[bestColumn] !== -1 && this.risk[bestColumn] <= risk) return;

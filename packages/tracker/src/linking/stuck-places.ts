@@ -29,7 +29,7 @@ const MOST_SCATTER = 1 / 3;
 const EXTENT = 4;
 const LEAST_RADIUS = 0.004;
 /** A drift of the place in so many of its standard errors shows that it is a slow particle. */
-const DRIFT = 4;
+const DRIFT = 5;
 /** Scatter about the median over that from one frame to the next: what wanders is no speck. */
 const WANDER = 2;
 
@@ -37,7 +37,7 @@ const WANDER = 2;
  * Places that hold a detection in at least 60 % of the frames and do not drift, among up to 100 frames spread over
  * `blocks` (at least 30, else none is named). Such detections vanish as short fragments where they are linked with the
  * prediction of the flow, or drag the mean down where they are not. Slow particles are told by their drift: over n frames
- * one of 4 sqrt(12 / n) noise standard deviations shows; and see `withinFlow`.
+ * one of 5 sqrt(12 / n) noise standard deviations shows; and see `withinFlow`.
  *
  * Pure and deterministic, + - * / sqrt. Memory: the detections of five frames. Cost: about 0.2 us a detection of the frames
  * frames looked at; `breathe` is awaited between frames.
@@ -165,14 +165,15 @@ function judge(
   const scratch = new Float64Array(n);
   const mean = time.reduce((sum, t) => sum + t, 0) / n;
   const timeSquares = time.reduce((sum, t) => sum + (t - mean) * (t - mean), 0);
+  // One scatter for both axes of the plane: from 60 differences along one alone it would be good to 15 % only.
+  const inPlane = scatterOf([at[0], at[1]]);
   for (let axis = 0; axis < dims; axis++) {
     const values = at[axis];
     for (let i = 0; i < n; i++) scratch[i] = values[i];
     centre[axis] = medianInPlace(scratch, n);
     for (let i = 0; i < n; i++) scratch[i] = Math.abs(values[i] - centre[axis]);
     const about = SIGMA_PER_MEDIAN * medianInPlace(scratch, n);
-    for (let i = 1; i < n; i++) scratch[i - 1] = Math.abs(values[i] - values[i - 1]);
-    const scatter = (SIGMA_PER_MEDIAN * medianInPlace(scratch, n - 1)) / Math.SQRT2;
+    const scatter = axis === 2 ? scatterOf([at[2]]) : inPlane;
     const least = LEAST_RADIUS * spacing * (axis === 2 ? depthNoise : 1);
     if (scatter > MOST_SCATTER * gather[axis] || about > Math.max(WANDER * scatter, least / EXTENT)) return null;
     radius[axis] = Math.max(EXTENT * scatter, least);
@@ -189,4 +190,11 @@ function judge(
     if (Math.abs(slope) > DRIFT * Math.max(scatter, least / EXTENT) * Math.sqrt(timeSquares)) return null;
   }
   return { at: centre, radius, seen: time[n - 1] - time[0] };
+}
+
+/** Standard deviation of white noise on values, from the median of differences of successive ones: a drift does not show. */
+function scatterOf(columns: readonly (readonly number[])[]): number {
+  const sizes: number[] = [];
+  for (const values of columns) for (let i = 1; i < values.length; i++) sizes.push(Math.abs(values[i] - values[i - 1]));
+  return (SIGMA_PER_MEDIAN * medianInPlace(Float64Array.from(sizes), sizes.length)) / Math.SQRT2;
 }
