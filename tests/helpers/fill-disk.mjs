@@ -57,7 +57,7 @@ async function run() {
     });
     for (const block of blocks(Number(samples))) await writer.add(block);
     await writer.finish(() => {});
-    const record = { schema: '1.0', program: { name: 'wakeloom', version: '0' }, counts: {}, figures: {} };
+    const record = { schema: '1.1', program: { name: 'wakeloom', version: '0' }, counts: {}, figures: {} };
     await writer.complete(record, '<!doctype html><title>made</title>', []);
     return { code: null };
   } catch (error) {

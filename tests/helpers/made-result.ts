@@ -36,7 +36,7 @@ export function madeGrid(dims: 2 | 3): GridResult {
 /** A record with nothing in it but what its shape asks for. */
 export function madeRecord(finished: FinishedSamples): Omit<RunRecord, 'digest'> {
   return {
-    schema: '1.0',
+    schema: '1.1',
     program: { name: 'wakeloom', version: '0.1.0' },
     run: 'made',
     settings: [],

@@ -4,7 +4,7 @@ import type { ReportData } from '@wakeloom/tracker/figures/report-data';
 /** An invented run record, for tests of texts that are made from one. Not from any real measurement. */
 export function sampleRecord(overrides: Partial<RunRecord> = {}): RunRecord {
   return {
-    schema: '1.0',
+    schema: '1.1',
     program: { name: 'wakeloom', version: '0.1.0' },
     run: 'cylinder, 30 mm/s, repeat 2',
     settings: [

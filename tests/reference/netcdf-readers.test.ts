@@ -141,6 +141,7 @@ describe.each([2, 3] as Dims[])('readers not written by us, %i dimensions', (dim
         const there = variables['pathlines_row'].values[row];
         expect(oracle.columns['frame'][there]).toBe(variables['frame'].values[frame]);
         expect(oracle.columns['time'][there]).toBe(variables['time'].values[frame]);
+        expect(variables['sample_time'].values[row]).toBe(variables['time'].values[frame]);
         expect(oracle.columns['x'][there]).toBe(variables['x'].values[row]);
         expect(oracle.columns['flags'][there]).toBe(variables['flags'].values[row]);
       }
@@ -150,6 +151,22 @@ describe.each([2, 3] as Dims[])('readers not written by us, %i dimensions', (dim
     seen.ragged.indexed.forEach((sum, k) => {
       expect(sum).toBeCloseTo(seen.ragged.contiguous[k], 6);
     });
+  });
+
+  it.skipIf(!python)('netCDF4 finds time and place of every sample variable among its coordinates, as CF asks', () => {
+    for (const name of ['pathlines.nc', 'frames.nc']) {
+      const { variables } = seen.netcdf[name];
+      const time = name === 'frames.nc' ? 'sample_time' : 'time';
+      const wanted = [time, 'x', 'y', ...(dims === 3 ? ['z'] : [])].sort();
+      for (const key of ['u', 'v', 'flags']) {
+        const { attributes, dimensions } = variables[key];
+        const named = String(attributes['coordinates']).split(' ');
+        expect([...named].sort(), `${name} ${key}`).toEqual(wanted);
+        // A coordinate spans no dimension that the variable has not (CF conventions, chapter 5).
+        for (const each of named) expect(dimensions, `${name} ${each}`).toEqual(variables[each].dimensions);
+      }
+      expect(variables[time].attributes['units']).toBe('s');
+    }
   });
 
   it.skipIf(!python)('netCDF4 sees the grid with coordinates, bounds, fields and empty bins', () => {

@@ -1,7 +1,7 @@
 import { cpSync, mkdtempSync, readdirSync, rmSync } from 'node:fs';
 import { tmpdir } from 'node:os';
 import { join } from 'node:path';
-import { createContext, FLAG } from '@wakeloom/tracker';
+import { createContext, FLAG, SCHEMA_VERSION } from '@wakeloom/tracker';
 import { openNodeResultPlace } from '@wakeloom/tracker/node/result-place-node';
 import { folderDigest } from '@wakeloom/tracker/store/digest';
 import { readBackDigest } from '@wakeloom/tracker/store/read-back';
@@ -21,8 +21,9 @@ function expected(provisional: number) {
   return rows.map((row) => ({ ...row, flags: row.flags | (provisional === 5 ? FLAG.stuck : 0) }));
 }
 
-it('there is a golden folder', () => {
+it('there is a golden folder of the first version and of this one', () => {
   expect(folders).toContain('golden-1.0');
+  expect(folders).toContain(`golden-${SCHEMA_VERSION}`);
 });
 
 describe.each(folders)('%s', (name) => {

@@ -289,7 +289,7 @@ describe('a result that is not complete', () => {
     for (const [text, code] of [
       ['{', 'store/not-a-result'],
       ['{"schema":"1.0"}', 'store/not-a-result'],
-      [JSON.stringify({ ...record, schema: '1.1' }), 'store/newer-schema'],
+      [JSON.stringify({ ...record, schema: '1.2' }), 'store/newer-schema'],
       [JSON.stringify({ ...record, schema: '2.0' }), 'store/newer-schema'],
       [JSON.stringify({ ...record, schema: '0.9' }), 'store/older-schema'],
     ]) {

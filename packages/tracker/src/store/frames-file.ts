@@ -36,7 +36,8 @@ export function inOverview(row: number, rows: number): boolean {
 }
 
 /**
- * Writes frames.nc from the spill: CF indexed ragged array, `first_row` and `row_size` by frame. Walks the spill
+ * Writes frames.nc from the spill: CF indexed ragged array, so that each sample has its own `sample_time`;
+ * `first_row` and `row_size` by frame. Walks the spill
  * twice (the first time the pathline numbers only). Resolves to the content digest.
  */
 export async function writeFramesFile(place: ResultPlace, input: FramesInput, context: RunContext): Promise<string> {
@@ -151,6 +152,7 @@ async function writeSamples(
   const picked = new Int32Array(most);
   const numbers = new Int32Array(most);
   const fileRows = new Int32Array(most);
+  const times = new Float64Array(most);
   const [read, gathered] = [new ArrayBuffer(8 * most), new ArrayBuffer(8 * most)];
   const few = columns.map((column) => columnOf(column.stored, overview));
   const fewPathline = new Int32Array(overview);
@@ -171,6 +173,7 @@ async function writeSamples(
         if (!show) continue;
         picked[used] = order[i];
         numbers[used] = number;
+        times[used] = spilled.frameTime.array[frame];
         const shift = kept === null || kept.shift === null ? 0 : kept.shift[number];
         fileRows[used++] = shift === LEFT_OUT ? -1 : fullRow + shift;
         if (inOverview(row++, samples)) {
@@ -192,6 +195,7 @@ async function writeSamples(
     });
     file.append('pathline_index', numbers.subarray(0, used));
     if (kept !== null) file.append('pathlines_row', fileRows.subarray(0, used));
+    file.append('sample_time', times.subarray(0, used));
   }
   columns.forEach((column, index) => {
     file.append(`overview_${column.name}`, few[index]);
@@ -214,7 +218,7 @@ function declare(file: NetcdfWriter, input: FramesInput, frames: number, samples
   integers('row_size', 'frame', { long_name: 'samples in the frame' });
   integers('first_row', 'frame', { long_name: 'row of the first sample of the frame' }, 'i64');
   integers('pathline', 'pathline', { long_name: 'pathline number', cf_role: 'trajectory_id' });
-  const coordinates = columns.some((column) => column.key === 'z') ? 'x y z' : 'x y';
+  const coordinates = columns.some((column) => column.key === 'z') ? 'sample_time x y z' : 'sample_time x y';
   const attributesOf = (column: SampleColumn) =>
     // The standard errors stand in pathlines.nc.
     columnAttributes({ ...column, standardError: null }, units, coordinates);
@@ -229,6 +233,10 @@ function declare(file: NetcdfWriter, input: FramesInput, frames: number, samples
     const meaning = 'row of the sample in pathlines.nc, -1 for a pathline that is not kept there';
     integers('pathlines_row', 'sample', { long_name: meaning });
   }
+  // CF conventions, chapter 5: a coordinate spans no dimension that its variable has not, so that the time by frame
+  // does not place a sample.
+  const sampleTime = { long_name: 'elapsed time of the sample', units: units.time };
+  file.variable({ name: 'sample_time', type: 'f64', dimensions: ['sample'], attributes: sampleTime });
   for (const column of columns) {
     const { coordinates: _, axis: __, ...attributes } = attributesOf(column);
     file.variable({ name: `overview_${column.name}`, type: column.type, dimensions: ['overview'], attributes });

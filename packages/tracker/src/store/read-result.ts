@@ -168,7 +168,8 @@ function framesReader(file: Hdf5Reader, where: string): FramesReader {
   const rowSize = wholeVariable(file, 'row_size', where) as Int32Array;
   const all = variablesOf(file);
   const few = all.filter((name) => name.startsWith('overview_'));
-  const own = new Set(['frame', 'time', 'first_row', 'row_size', 'pathline']);
+  // The time of an instant is one; its copy in each sample is for other software.
+  const own = new Set(['frame', 'time', 'first_row', 'row_size', 'pathline', 'sample_time']);
   const columns = all.filter((name) => !own.has(name) && !few.includes(name));
   const last = number.length - 1;
   return {

@@ -89,7 +89,7 @@ export interface ResultWriter {
  * Starts a result in the folder. An earlier complete one stays as it is until `complete` puts the new one in its
  * place; the disk holds both meanwhile. What is left of a run that was cut short goes at once. Memory: about 75 MB in
  * the plane, of which 25 bytes a pathline, whatever the number of samples. Disk while it works: 98 bytes a sample in
- * scratch files, beside 98 for pathlines.nc and 34 for frames.nc. Time: bench/cases/write-result.mjs.
+ * scratch files, beside 98 for pathlines.nc and 42 for frames.nc. Time: bench/cases/write-result.mjs.
  */
 export function openResultWriter(place: ResultPlace, options: ResultWriterOptions): ResultWriter {
   const { dims, pairs, units, context, keepPathlines, keepFrames } = options;
@@ -99,7 +99,7 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
   clearPartials(place);
   if (place.size('run.json') < 0) clearResult(place);
   const withFrames = keepFrames !== 'none';
-  const fileBytes = (keepPathlines === 'none' ? 0 : rowBytes(columns)) + (withFrames ? rowBytes(frameColumns) + 8 : 0);
+  const fileBytes = (keepPathlines === 'none' ? 0 : rowBytes(columns)) + (withFrames ? rowBytes(frameColumns) + 16 : 0);
   if (options.expectedSamples !== undefined) {
     try {
       checkRoom(place, options.expectedSamples * (spillBytes(columns, withFrames) + fileBytes));

@@ -2,8 +2,11 @@ import type { DumpFile, SetAside } from '../detections/dump.js';
 import type { Prior } from '../pipeline/stages.js';
 import type { SettingRecord } from '../run/settings.js';
 
-/** Version of the result folder's layout, major.minor: readers take their own and older minors of the same major. */
-export const SCHEMA_VERSION = '1.0';
+/**
+ * Version of the result folder's layout, major.minor: readers take their own and older minors of the same major.
+ * 1.1: `sample_time` in frames.nc.
+ */
+export const SCHEMA_VERSION = '1.1';
 
 /** How many of what went in and came out, in the order of the data. Nothing is dropped without standing here. */
 export interface RunCounts {
