@@ -36,12 +36,11 @@ export function sampleOracle(
   const short = sorted.filter((rows) => rows.length > 1 && rows.length < rule.shortest);
   const axes = (['x', 'y', 'z'] as const).slice(0, made.dims ?? 2);
   for (const rows of kept) {
-    const extents = axes.map((axis) => {
-      const along = rows.map((row) => row.values[axis]);
-      return Math.max(...along) - Math.min(...along);
-    });
-    const still = extents.every((extent, i) => extent <= rule.stuckFactor * rule.noise[i]);
-    if (still) for (const row of rows) row.values.flags |= FLAG.stuck;
+    const middle = axes.map((axis) => median(rows.map((row) => row.values[axis])));
+    const near = rows.filter((row) =>
+      axes.every((axis, i) => Math.abs(row.values[axis] - middle[i]) <= (rule.stuckFactor * rule.noise[i]) / 2),
+    );
+    if (near.length >= 0.8 * rows.length) for (const row of rows) row.values.flags |= FLAG.stuck;
   }
   const all = kept.flat();
   const good = all.filter((row) => (row.values.flags & EXCLUDED_FROM_GRID) === 0);

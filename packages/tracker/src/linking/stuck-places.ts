@@ -21,6 +21,8 @@ const SEED_FRAMES = 5;
 /** Frames of the first sieve, and in how many of them a place must be occupied: 1 in 80 of such specks is lost. */
 const SIEVE_FRAMES = 10;
 const SIEVE_HITS = 3;
+/** Detections of the seed frames that may pass the sieve: with more it is the fluid that stands still, not some specks. */
+const MOST_SEEDS = 4000;
 /** Where hits are gathered, in mean spacings: 12 times the usual noise; chance detections fall there once in 100 frames. */
 const GATHER = 0.05;
 /** Positions of a place scatter by at most this share of that radius: more is chance. */
@@ -35,7 +37,7 @@ const WANDER = 2;
 
 /**
  * Places that hold a detection in at least 60 % of the frames and do not drift, among up to 100 frames spread over
- * `blocks` (at least 30, else none is named). Such detections vanish as short fragments where they are linked with the
+ * `blocks` (at least 30, else none is named; nor with more than about 800 of them, when it must be the fluid that is at rest). Such detections vanish as short fragments where they are linked with the
  * prediction of the flow, or drag the mean down where they are not. Slow particles are told by their drift: over n frames
  * one of 5 sqrt(12 / n) noise standard deviations shows; and see `withinFlow`.
  *
@@ -93,6 +95,7 @@ export async function findStuckPlaces(
     await breathe();
   }
   seeds = seeds.filter((_, s) => hits[s] >= SIEVE_HITS);
+  if (seeds.length > MOST_SEEDS) return [];
   // One seed a place: the others of the same speck lie within the radius in which hits are gathered.
   seeds = seeds.filter(
     (seed, s) =>

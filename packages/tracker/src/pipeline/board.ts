@@ -84,6 +84,8 @@ export interface Board {
   calibration?: CalibrationTally;
   linked?: AsyncIterable<LinkedBlock>;
   linkCounts?: LinkCounts;
+  /** Provisional numbers of pathlines at stuck places, noted while they are linked. */
+  stuckPathlines?: ReadonlySet<number>;
   samples?: AsyncIterable<SampleBlock>;
   extent?: SampleExtent;
   finished?: FinishedSamples;

@@ -1,5 +1,5 @@
 import type { SampleBlock } from '../core/columns.js';
-import { EXCLUDED_FROM_GRID } from '../core/columns.js';
+import { EXCLUDED_FROM_GRID, FLAG } from '../core/columns.js';
 import { addFrameVelocity } from '../detections/frame-velocity.js';
 import { fitStage } from '../kinematics/fit-stage.js';
 import type { Extremes, SampleExtent, Stage } from './board.js';
@@ -8,7 +8,7 @@ import { restoreNumbers } from './frame-step.js';
 /** Turns linked detections into samples: fit, screening, velocity of a towed frame; notes their extent. */
 export const samplesStage: Stage = {
   name: 'fit',
-  needs: ['scan', 'look', 'linked'],
+  needs: ['scan', 'look', 'linked', 'stuckPathlines'],
   gives: ['samples', 'extent'],
   timed: false,
   run(board) {
@@ -19,7 +19,7 @@ export const samplesStage: Stage = {
     const fitted = fitStage(input, board.linked!, board.tools.fit);
     const { frameNumbers } = board.scan!;
     const restore = (block: SampleBlock) => restoreNumbers(block.number, frameNumbers[0], board.look!.prior.frameStep);
-    board.samples = finishSamples(fitted, settings.geometry.frame.velocity, restore, extent);
+    board.samples = finishSamples(fitted, settings.geometry.frame.velocity, restore, extent, board.stuckPathlines!);
   },
 };
 
@@ -28,14 +28,20 @@ async function* finishSamples(
   frameVelocity: readonly [number, number, number] | null,
   restore: (block: SampleBlock) => void,
   extent: SampleExtent,
+  stuck: ReadonlySet<number>,
 ): AsyncGenerator<SampleBlock> {
   for await (const block of blocks) {
     restore(block);
+    if (stuck.size > 0) flagStuck(block, stuck);
     if (frameVelocity !== null) addFrameVelocity(block, frameVelocity);
     extent.samples += block.flags.length;
     noteExtremes(block, extent);
     yield block;
   }
+}
+
+function flagStuck({ pathline, flags }: SampleBlock, stuck: ReadonlySet<number>): void {
+  for (let row = 0; row < flags.length; row++) if (stuck.has(pathline[row])) flags[row] |= FLAG.stuck;
 }
 
 function nowhere(): Extremes {
