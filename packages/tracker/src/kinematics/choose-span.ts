@@ -56,7 +56,11 @@ export function chooseSpan(
   noise: readonly [number, number, number],
   order: 1 | 2 | 3,
 ): number {
-  const forecasts = forecastSpans(blocks, noise, order);
+  return bestSpan(forecastSpans(blocks, noise, order));
+}
+
+/** The span with the least forecast of noise and bias together; 5 where there is none. */
+export function bestSpan(forecasts: readonly SpanForecast[]): number {
   let best = SHORTEST_SPAN;
   let least = Number.POSITIVE_INFINITY;
   for (const { span, noise: random, bias } of forecasts) {

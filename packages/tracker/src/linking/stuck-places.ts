@@ -37,12 +37,13 @@ const WANDER = 2;
 
 /**
  * Places that hold a detection in at least 60 % of the frames and do not drift, among up to 100 frames spread over
- * `blocks` (at least 30, else none is named; nor with more than about 800 of them, when it must be the fluid that is at rest). Such detections vanish as short fragments where they are linked with the
- * prediction of the flow, or drag the mean down where they are not. Slow particles are told by their drift: over n frames
- * one of 5 sqrt(12 / n) noise standard deviations shows; and see `withinFlow`.
+ * `blocks` (at least 30, else none is named; nor with more than about 800 of them, when it must be the fluid that is at
+ * rest). Such detections vanish as short fragments where they are linked with the prediction of the flow, or drag the mean
+ * down where they are not. Slow particles are told by their drift: over n frames one of 5 sqrt(12 / n) noise standard
+ * deviations shows; and see `withinFlow`. Specks that come later than the blocks are left to the look at whole pathlines.
  *
- * Pure and deterministic, + - * / sqrt. Memory: the detections of five frames. Cost: about 0.2 us a detection of the frames
- * frames looked at; `breathe` is awaited between frames.
+ * Deterministic, + - * / sqrt. Memory: the detections of five frames. Cost: about 0.2 us a detection of the frames looked
+ * at; `breathe` is awaited between frames.
  */
 export async function findStuckPlaces(
   blocks: readonly DetectionBlock[],

@@ -1,7 +1,7 @@
 import type { DetectionBlock, Dims, LinkedBlock } from '../core/columns.js';
 import type { RunContext } from '../core/context.js';
 import { WakeloomError } from '../core/errors.js';
-import { chooseSpan } from '../kinematics/choose-span.js';
+import { bestSpan, forecastSpans } from '../kinematics/choose-span.js';
 import { createLinker, type LinkPrior } from '../linking/create-linker.js';
 import type { Box } from '../linking/flow-grid.js';
 import { chooseReach } from '../linking/reach.js';
@@ -39,6 +39,11 @@ export interface FirstLook {
   readonly link: LinkPrior;
   /** Places that hold a detection in most frames: what stands there takes no part in the linking of the flow. */
   readonly stuck: readonly StuckPlace[];
+  /**
+   * Root mean square by which the local fit over the span is forecast to err for its stiffness, one velocity component,
+   * length per time; null where the first pathlines do not tell it (image pairs; too few, or too short for the span).
+   */
+  readonly smoothing: number | null;
 }
 
 /** Frames that the first look wants to see at most, and rows. Whoever feeds it may stop there. */
@@ -114,8 +119,9 @@ export async function firstLook(
     noise[axis] = sigma > 0 ? sigma : ASSUMED_NOISE * spacing;
   }
   const { span: wanted, order } = settings.smoothing;
-  const span =
-    wanted === 'auto' ? (pairsClock ? DEFAULT_SPAN : chooseSpan(leading(trial, SPAN_ROWS), noise, order)) : wanted;
+  const forecasts = pairsClock ? [] : forecastSpans(leading(trial, SPAN_ROWS), noise, order);
+  const span = wanted !== 'auto' ? wanted : pairsClock ? DEFAULT_SPAN : bestSpan(forecasts);
+  const forecast = forecasts.find((one) => one.span === span);
   await context.breathe();
   const moved = linkDisplacements(trial, spacing);
   context.event({
@@ -138,7 +144,22 @@ export async function firstLook(
     // No real detection is better than a thousandth of a spacing; a gate of rounding errors would lose links.
     link: start(Math.max(noise[0], LEAST_NOISE * spacing)),
     stuck,
+    smoothing: forecast === undefined ? null : Math.sqrt(forecast.bias) / meanInterval(trial),
   };
+}
+
+/** Mean time from frame number to frame number within segments; NaN where no two frames follow one another. */
+function meanInterval(blocks: readonly LinkedBlock[]): number {
+  let time = 0;
+  let steps = 0;
+  for (const { number, segment, time: times } of blocks) {
+    for (let k = 1; k < number.length; k++) {
+      if (segment[k] !== segment[k - 1]) continue;
+      time += times[k] - times[k - 1];
+      steps += number[k] - number[k - 1];
+    }
+  }
+  return time / steps;
 }
 
 /** The blocks without what stands at the places; themselves where there are none. */

@@ -1,5 +1,5 @@
 import { calibrationSummary } from '../detections/calibration-summary.js';
-import { type RunRecord, SCHEMA_VERSION } from '../store/run-record.js';
+import { type RunRecord, SCHEMA_VERSION, type SystematicLine } from '../store/run-record.js';
 import type { Board } from './board.js';
 
 /** Share of samples set aside by screening above which a person should look (1 to 5 % is normal; common practice, no source). */
@@ -55,7 +55,7 @@ export function runRecord(board: Board): Omit<RunRecord, 'digest'> {
     program: { name: 'wakeloom', version: request.programVersion },
     run: settings.run,
     settings: records,
-    assumptions: [...assumptions, ...summary.remarks],
+    assumptions: [...assumptions, ...summary.remarks, ...smoothingRemarks(board)],
     notes: settings.notes,
     inputs: scan.files,
     format: scan.format,
@@ -98,12 +98,42 @@ export function runRecord(board: Board): Omit<RunRecord, 'digest'> {
       noise: prior.noise.slice(0, scan.dims),
       medianVelocitySe: finished.medianVelocitySe,
     },
-    systematic: summary.systematic,
+    systematic: [...summary.systematic, ...smoothingLines(board)],
     warnings,
     verdict: null,
     clockTimes: { started: board.started.at, finished: tools.clock.now(), seconds: { ...board.seconds } },
     host: { ...tools.host, threads: context.budget.threads },
   };
+}
+
+/**
+ * What the local fit takes from velocities that change within its span. It is no random error and does not stand in the
+ * `_se` columns, though it grows with the acceleration's change from place to place: here its mean over the field.
+ */
+function smoothingLines(board: Board): SystematicLine[] {
+  const { prior, smoothing } = board.look!;
+  if (smoothing === null || !Number.isFinite(smoothing)) return [];
+  const { units, smoothing: chosen } = board.request.resolved.settings;
+  const { length, time } = units;
+  const closed =
+    chosen.order === 3
+      ? ''
+      : `; what is left of a motion that turns by theta a frame is sum(k sin(k theta)) / (theta sum(k^2)), k = -${(prior.span - 1) / 2} .. ${(prior.span - 1) / 2}`;
+  return [
+    {
+      source: 'smoothing.span',
+      standardUncertainty: smoothing,
+      unit: `${length}/${time}`,
+      effect: `smoothing: attenuation of velocity over the span of ${prior.span} frames, root mean square of one component forecast from the first pathlines; not in the _se columns, larger where the flow changes fast${closed}`,
+    },
+  ];
+}
+
+function smoothingRemarks(board: Board): string[] {
+  if (board.look!.smoothing !== null || board.request.resolved.settings.clock.kind === 'pairs') return [];
+  return [
+    `How much the fit over ${board.look!.prior.span} frames smooths the velocities could not be forecast from the first pathlines; the standard errors do not hold it.`,
+  ];
 }
 
 function countFilled(values: Float32Array | undefined): number {
