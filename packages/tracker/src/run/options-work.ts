@@ -109,7 +109,7 @@ export const WORK_SETTINGS: readonly SettingRow[] = [
     { type: 'whole', least: 1, most: 1e9 },
     5,
     '10',
-    'Fewest samples in a bin for a mean',
+    'Fewest samples in a bin for a mean; its standard error also wants 3 pathlines',
   ),
   row(
     'grid.fewest-for-stress',
@@ -117,7 +117,7 @@ export const WORK_SETTINGS: readonly SettingRow[] = [
     { type: 'whole', least: 2, most: 1e9 },
     50,
     '100',
-    'Fewest samples in a bin for Reynolds stresses',
+    'Fewest samples in a bin for Reynolds stresses, which also want 10 pathlines',
   ),
   row(
     'results.keep-pathlines',
