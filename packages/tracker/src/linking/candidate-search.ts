@@ -5,8 +5,12 @@ import { Candidates } from './candidates.js';
 import { decay } from './link-risk.js';
 import { GUESS_SIZE, type Predictors } from './predictors.js';
 
-/** Gate: a candidate farther than this many times its expected square (mean over axes) is none. exp(-16) = 1e-7. */
-const GATE = 16;
+/**
+ * Gate: a candidate farther than this many times its expected square is none. Wide (7 standard deviations an axis),
+ * because expected squares are averages over a cell and surprises have heavier tails than Gaussian ones; what lies
+ * near the gate carries a high risk and is left out by that.
+ */
+const GATE = 25;
 /** Handicap of a pathline with a single detection against one that has proved itself, in units of expected squares. */
 const NEWBORN_HANDICAP = 3;
 /** Cost above which a pathline had better stay without a detection: no candidate within the gate costs more. */

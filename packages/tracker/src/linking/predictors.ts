@@ -16,7 +16,7 @@ const WITH_MORE = Array.from({ length: GUESSES }, (_, g) => g);
 const WITH_TWO = WITH_MORE.filter((g) => g !== CONSTANT_CHANGE);
 
 /** Links from which records are kept: enough to compare, few enough to follow a changing flow. */
-const RECORD_PRIOR = 6;
+const RECORD_PRIOR = 12;
 
 /**
  * Predicts where a pathline goes, from simple guesses weighted by how well each has done lately at this place. For

@@ -14,6 +14,8 @@ const REFINEMENTS = 3;
  * votes as the true one, and the shortest is by far the likeliest.
  */
 const LONG_VOTE_DISCOUNT = 0.25;
+/** Moves towards the mean under the kernel: enough to forget which vote they began at. */
+const MEAN_SHIFTS = 10;
 /** Votes of a cell beyond which only every n-th is tried as a centre: a peak holds many, one of them is near its top. */
 const MOST_CENTRES = 5000;
 /** A window whose best displacement gathers fewer than this many votes is left to its neighbours. */
@@ -247,7 +249,7 @@ class VoteTable {
     let cv = v[best];
     let cw = w[best];
     let weight = 0;
-    for (let turn = 0; turn < 3; turn++) {
+    for (let turn = 0; turn < MEAN_SHIFTS; turn++) {
       let su = 0;
       let sv = 0;
       let sw = 0;

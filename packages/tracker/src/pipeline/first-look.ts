@@ -118,6 +118,8 @@ export async function firstLook(
     const sigma = measured.sigma[axis];
     noise[axis] = sigma > 0 ? sigma : ASSUMED_NOISE * spacing;
   }
+  // One figure for both axes of the plane: gates must not depend on how the camera was turned.
+  const inPlane = Math.sqrt(0.5 * (noise[0] * noise[0] + noise[1] * noise[1]));
   const { span: wanted, order } = settings.smoothing;
   const forecasts = pairsClock ? [] : forecastSpans(leading(trial, SPAN_ROWS), noise, order);
   const span = wanted !== 'auto' ? wanted : pairsClock ? DEFAULT_SPAN : bestSpan(forecasts);
@@ -142,7 +144,7 @@ export async function firstLook(
       displacementRatio95: Number.isNaN(moved.p95) ? null : moved.p95,
     },
     // No real detection is better than a thousandth of a spacing; a gate of rounding errors would lose links.
-    link: start(Math.max(noise[0], LEAST_NOISE * spacing)),
+    link: start(Math.max(inPlane, LEAST_NOISE * spacing)),
     stuck,
     smoothing: forecast === undefined ? null : Math.sqrt(forecast.bias) / meanInterval(trial),
   };
