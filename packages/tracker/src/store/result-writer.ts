@@ -89,7 +89,7 @@ export interface ResultWriter {
  * Starts a result in the folder. An earlier complete one stays as it is until `complete` puts the new one in its
  * place; the disk holds both meanwhile. What is left of a run that was cut short goes at once. Memory: about 75 MB in
  * the plane, of which 25 bytes a pathline, whatever the number of samples. Disk while it works: 98 bytes a sample in
- * scratch files, beside 98 for pathlines.nc and 42 for frames.nc. Time: bench/cases/write-result.mjs.
+ * scratch files, beside 98 for pathlines.nc and 42 for frames.nc. Time: bench/cases/store.mjs.
  */
 export function openResultWriter(place: ResultPlace, options: ResultWriterOptions): ResultWriter {
   const { dims, pairs, units, context, keepPathlines, keepFrames } = options;
