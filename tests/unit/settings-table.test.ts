@@ -1,4 +1,4 @@
-import { editDistance, nearestWord } from '@wakeloom/tracker/run/nearest';
+import { editDistance, nearestWord } from '@wakeloom/tracker/core/nearest-word';
 import { SETTING_TABLE } from '@wakeloom/tracker/run/options';
 import { readSetting } from '@wakeloom/tracker/run/read-setting';
 import { resolveRun } from '@wakeloom/tracker/run/resolve';

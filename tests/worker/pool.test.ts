@@ -1,5 +1,3 @@
-import { createContext } from '@wakeloom/tracker';
-import { createLocalRunner } from '@wakeloom/tracker/workers/local-runner';
 import { createPool, type KernelRunner } from '@wakeloom/tracker/workers/pool';
 import { buffersOf } from '@wakeloom/tracker/workers/transfer';
 import { afterEach, describe, expect, it } from 'vitest';
@@ -124,24 +122,5 @@ describe('pool', () => {
     })();
     setTimeout(() => controller.abort(), 50);
     await expect(reading).rejects.toMatchObject({ code: 'run/aborted' });
-  });
-});
-
-describe('local runner', () => {
-  it('answers as a pool does, in the calling thread', async () => {
-    const context = createContext();
-    type Doubles = { double: { args: { value: number }; value: number } };
-    const runner = createLocalRunner<Doubles, null>(
-      { double: ({ value }) => ({ value: 2 * value, transfer: [] }) },
-      context,
-      null,
-    );
-    async function* tasks() {
-      for (let value = 0; value < 5; value++) yield { args: { value } };
-    }
-    const got: number[] = [];
-    for await (const value of runner.mapOrdered('double', tasks())) got.push(value);
-    expect(got).toEqual([0, 2, 4, 6, 8]);
-    expect(runner.width).toBe(1);
   });
 });

@@ -1,5 +1,5 @@
 import { isWakeloomError, WakeloomError } from '@wakeloom/tracker/core/errors';
-import { nearestWord } from '@wakeloom/tracker/run/nearest';
+import { nearestWord } from '@wakeloom/tracker/core/nearest-word';
 import { DEMO } from './commands/demo.js';
 import { EXPORT } from './commands/export.js';
 import { PROCESS } from './commands/process.js';

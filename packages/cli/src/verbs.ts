@@ -1,5 +1,5 @@
 import { WakeloomError } from '@wakeloom/tracker/core/errors';
-import { nearestWord } from '@wakeloom/tracker/run/nearest';
+import { nearestWord } from '@wakeloom/tracker/core/nearest-word';
 import yargs, { type Argv } from 'yargs';
 import { joinValues } from './options.js';
 import type { Terminal } from './terminal.js';

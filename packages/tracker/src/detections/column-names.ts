@@ -74,30 +74,3 @@ export function plainName(name: string): string {
   if (parts.length > 1 && UNIT_ENDINGS.has(parts[parts.length - 1])) parts.pop();
   return parts.join('_');
 }
-
-/** Edits (insert, delete, replace) that turn one word into the other. Cost: product of the lengths. */
-function editDistance(a: string, b: string): number {
-  let row = Array.from({ length: b.length + 1 }, (_, j) => j);
-  for (let i = 1; i <= a.length; i++) {
-    const next = [i];
-    for (let j = 1; j <= b.length; j++) {
-      next[j] = Math.min(row[j] + 1, next[j - 1] + 1, row[j - 1] + (a[i - 1] === b[j - 1] ? 0 : 1));
-    }
-    row = next;
-  }
-  return row[b.length];
-}
-
-/** The name nearest to `wanted`, or null when none is within half of its letters. */
-export function nearestName(wanted: string, names: readonly string[]): string | null {
-  let best: string | null = null;
-  let distance = Number.POSITIVE_INFINITY;
-  for (const name of names) {
-    const d = editDistance(wanted.toLowerCase(), name.toLowerCase());
-    if (d < distance) {
-      distance = d;
-      best = name;
-    }
-  }
-  return best !== null && distance <= Math.max(1, Math.floor(wanted.length / 2)) ? best : null;
-}

@@ -1,6 +1,7 @@
 import { WakeloomError } from '../core/errors.js';
+import { nearestWord } from '../core/nearest-word.js';
 import type { ColumnRef, DumpSettings } from '../run/settings.js';
-import { KNOWN_NAMES, nearestName, plainName } from './column-names.js';
+import { KNOWN_NAMES, plainName } from './column-names.js';
 import { ROLE, ROLES, type Role } from './row-batch.js';
 
 /** Which column of a file carries which role. */
@@ -111,7 +112,7 @@ function explicit(role: Role, reference: Exclude<ColumnRef, null>, columns: File
       { file, role, name: reference },
     );
   }
-  const near = nearestName(reference, names);
+  const near = nearestWord(reference, names);
   throw new WakeloomError(
     'dump/no-such-column',
     `no such column for ${role}: got the name "${reference}", expected one of ${list(names)}${near === null ? '' : `; did you mean "${near}"?`} (header of ${file})`,
@@ -159,7 +160,7 @@ function byPosition(index: Int32Array, open: readonly Role[], columns: FileColum
 
 function missing(role: Role, columns: FileColumns): WakeloomError {
   const { file, names } = columns;
-  const near = names === null ? null : nearestName(role, names);
+  const near = names === null ? null : nearestWord(role, names);
   const got = names === null ? 'no position for it' : `the names ${list(names)}`;
   const advice = near === null ? `columns: { ${role}: NAME }` : `columns: { ${role}: ${JSON.stringify(near)} }`;
   return new WakeloomError(

@@ -46,7 +46,7 @@ export interface LinkTally {
 }
 
 /**
- * Links frame after frame. State is one entry for each pathline in view, a coarse picture of the flow and the
+ * Links frame after frame. State is one entry for each pathline in view, coarse pictures of the flow and the
  * record of earlier surprises: memory does not grow with the number of frames. Uses only + - * / and sqrt.
  */
 export class Linker {

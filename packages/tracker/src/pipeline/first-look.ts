@@ -1,6 +1,7 @@
 import type { DetectionBlock, Dims, LinkedBlock } from '../core/columns.js';
 import type { RunContext } from '../core/context.js';
 import { WakeloomError } from '../core/errors.js';
+import { formatNumber, formatQuantity } from '../figures/number-format.js';
 import { bestSpan, forecastSpans } from '../kinematics/choose-span.js';
 import { createLinker, type LinkPrior } from '../linking/create-linker.js';
 import type { Box } from '../linking/flow-grid.js';
@@ -129,7 +130,7 @@ export async function firstLook(
   context.event({
     code: 'linking/first-look',
     level: 'info',
-    message: `reach ${reach} ${settings.units.length}, span ${span} frames, position noise ${noise[0]} ${settings.units.length}, displacement ratio ${moved.mean}`,
+    message: `reach ${formatQuantity(reach, settings.units.length)}, span ${span} frames, position noise ${formatQuantity(inPlane, settings.units.length, 3)}, displacement ratio ${formatNumber(moved.mean, 3)}`,
     details: { reach, span, noise, ratio: moved.mean, ratio95: moved.p95, pairs: pairs.length },
   });
   return {

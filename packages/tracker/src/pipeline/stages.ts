@@ -1,6 +1,4 @@
-import type { DetectionBlock, LinkedBlock, SampleBlock } from '../core/columns.js';
 import type { RunContext } from '../core/context.js';
-import type { CalibrationTally } from '../detections/calibrate.js';
 import type { DumpScan } from '../detections/dump.js';
 import type { RunSettings } from '../run/settings.js';
 
@@ -30,11 +28,3 @@ export interface StageInput {
   readonly prior: Prior;
   readonly context: RunContext;
 }
-
-/** Stages of the data path, each a transform of a stream of blocks; later ones are added to the list in pipeline/list.ts. */
-export type CalibrateStage = (
-  input: Omit<StageInput, 'prior'> & { readonly tally: CalibrationTally },
-  blocks: AsyncIterable<DetectionBlock>,
-) => AsyncGenerator<DetectionBlock>;
-export type LinkStage = (input: StageInput, blocks: AsyncIterable<DetectionBlock>) => AsyncGenerator<LinkedBlock>;
-export type FitStage = (input: StageInput, blocks: AsyncIterable<LinkedBlock>) => AsyncGenerator<SampleBlock>;

@@ -1,6 +1,6 @@
 import { isWakeloomError, WakeloomError } from '../core/errors.js';
+import { nearestWord } from '../core/nearest-word.js';
 import type { Quantity } from '../core/quantity.js';
-import { nearestWord } from './nearest.js';
 import { SETTING_TABLE } from './options.js';
 import { readSetting } from './read-setting.js';
 import type { OptionValue, QuantityVector, SettingRow, SettingValue } from './setting-kinds.js';

@@ -1,6 +1,6 @@
 import { WakeloomError } from '../core/errors.js';
+import { nearestWord } from '../core/nearest-word.js';
 import type { Quantity } from '../core/quantity.js';
-import { nearestWord } from './nearest.js';
 import { convertUnit, type Dimension, dimensionOf, findUnit, type Unit, unitNames } from './units.js';
 
 /** How each dimension is named and shown in messages. */

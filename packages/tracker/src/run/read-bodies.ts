@@ -1,5 +1,5 @@
 import { isWakeloomError } from '../core/errors.js';
-import { nearestWord } from './nearest.js';
+import { nearestWord } from '../core/nearest-word.js';
 import { parseQuantity } from './parse-quantity.js';
 import { readRows } from './read-points.js';
 import { readVector } from './read-vector.js';

@@ -1,5 +1,5 @@
 import { isWakeloomError } from '../core/errors.js';
-import { nearestWord } from './nearest.js';
+import { nearestWord } from '../core/nearest-word.js';
 import { DIMENSION_WORDS, parseQuantity } from './parse-quantity.js';
 import { readBodies } from './read-bodies.js';
 import { readPoints } from './read-points.js';

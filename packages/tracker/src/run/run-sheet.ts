@@ -1,6 +1,6 @@
 import { type Document, isMap, isScalar, LineCounter, type Node, parseDocument } from 'yaml';
+import { nearestWord } from '../core/nearest-word.js';
 import { problemError } from './given-settings.js';
-import { nearestWord } from './nearest.js';
 import { SETTING_TABLE } from './options.js';
 import { describeFound } from './setting-problem.js';
 import type { ParsedSheet, Place } from './sheet-form.js';

@@ -3,7 +3,7 @@ import type { RunOptions, WorkerClient } from './client.js';
 import { mapOrdered, type Task } from './map-ordered.js';
 import type { OperationName, OperationTable } from './protocol.js';
 
-/** Runs pure operations somewhere: in the workers of a pool, or in the calling thread (`local-runner.ts`). */
+/** Runs pure operations in the workers of a pool. */
 export interface KernelRunner<Table extends OperationTable> {
   /** Operations that run at the same time. */
   readonly width: number;
