@@ -20,6 +20,12 @@ import { countInSteps, frameStep } from './frame-step.js';
 /** Rows a block holds: small enough to live in the cache's neighbourhood, large enough to cost nothing. */
 const BLOCK_ROWS = 40_000;
 
+/**
+ * Frames a block of the first look holds at least, rows permitting: it pairs frames, measures noise and chooses the span
+ * within blocks, and a block of one large frame would show it no pair at all.
+ */
+const LOOK_FRAMES = 12;
+
 /** Reads the whole dump once: columns, frames, rows set aside, hash. */
 export const scanStage: Stage = {
   name: 'scan',
@@ -116,7 +122,9 @@ export const lookStage: Stage = {
     let frames = 0;
     // Its own tally and silent events: the same frames are read again by the run proper.
     const quiet = createContext({ signal: context.signal, bytes: context.budget.bytes });
-    for await (const block of calibrated(board, quiet, newTally())) {
+    const { rowsRead, frameNumbers } = board.scan!;
+    const several = Math.min(FIRST_LOOK.rows, Math.ceil((LOOK_FRAMES * rowsRead) / frameNumbers.length));
+    for await (const block of calibrated(board, quiet, newTally(), Math.max(BLOCK_ROWS, several))) {
       first.push(block);
       rows += block.x.length;
       frames += block.number.length;
@@ -148,7 +156,7 @@ export const detectionsStage: Stage = {
   run(board) {
     board.calibration = newTally();
     board.farAway = newFarAwayTally();
-    const blocks = calibrated(board, board.context, board.calibration);
+    const blocks = calibrated(board, board.context, board.calibration, BLOCK_ROWS);
     board.detections = withinField(blocks, board.limits!, board.farAway, board.context);
   },
 };
@@ -157,11 +165,12 @@ async function* calibrated(
   board: Board,
   context: Board['context'],
   tally: CalibrationTally,
+  rows: number,
 ): AsyncGenerator<DetectionBlock> {
   const { settings } = board.request.resolved;
   const scan = board.scan!;
   const step = frameStep(scan.frameNumbers, settings.clock);
-  for await (const block of calibrate({ settings, scan, context, tally }, board.dump!.blocks(context, BLOCK_ROWS))) {
+  for await (const block of calibrate({ settings, scan, context, tally }, board.dump!.blocks(context, rows))) {
     countInSteps(block, scan.frameNumbers[0], step);
     yield block;
   }
