@@ -6,7 +6,7 @@ import { afterAll, describe, expect, it } from 'vitest';
 import { demoTruth } from '../helpers/demo-truth.js';
 import { readTable } from '../helpers/read-table.js';
 import { runCli } from '../helpers/run-cli.js';
-import { scoreLinks } from '../helpers/truth.js';
+import { scoreLinks } from '../helpers/score-links.js';
 
 const folder = mkdtempSync(join(tmpdir(), 'demo-links-'));
 afterAll(() => rmSync(folder, { recursive: true, force: true }));

@@ -6,7 +6,10 @@ import { firstLook } from '@wakeloom/tracker/pipeline/first-look';
 import { resolveRun } from '@wakeloom/tracker/run/resolve';
 import type { LinkingSettings } from '@wakeloom/tracker/run/settings';
 
-/** Links one block as a run would (canonical order, first look, linker) and gives the pathline of every row of the block as it came. */
+/**
+ * Links one block as a run would (canonical order, first look, linker) and gives the pathline of every row of the block
+ * as it came, and the risk of the link into it.
+ */
 export async function linkBlock(
   block: DetectionBlock,
   options: Record<string, string | number> = {},
@@ -21,8 +24,12 @@ export async function linkBlock(
   const risk = new Float32Array(sorted.x.length);
   for (let k = 0; k < sorted.number.length; k++) linker.frame(sorted, k, pathline, risk);
   const byRow = new Int32Array(pathline.length);
-  for (let row = 0; row < pathline.length; row++) byRow[sorted.row[row]] = pathline[row];
-  return { pathline: byRow, prior: look.prior, tally: linker.tally };
+  const riskByRow = new Float32Array(pathline.length);
+  for (let row = 0; row < pathline.length; row++) {
+    byRow[sorted.row[row]] = pathline[row];
+    riskByRow[sorted.row[row]] = risk[row];
+  }
+  return { pathline: byRow, risk: riskByRow, prior: look.prior, tally: linker.tally };
 }
 
 /** Links as `row>row` pairs, whatever the numbering of the pathlines. */

@@ -15,7 +15,7 @@ import { burgersVortex, lambOseen, rankineVortex } from '@wakeloom/tracker/synth
 import { rungeKutta } from '@wakeloom/tracker/synthesis/runge-kutta';
 import { describe, expect, it } from 'vitest';
 import reference from '../../data/reference/flows.json' with { type: 'json' };
-import { carry } from '../helpers/truth.js';
+import { carry } from '../helpers/true-motion.js';
 
 function at(flow: Flow, x: number, y: number, z = 0, t = 0): number[] {
   const velocity = new Float64Array(3);

@@ -5,7 +5,8 @@ import { poiseuilleChannel, uniformFlow } from '@wakeloom/tracker/synthesis/flow
 import { burgersVortex } from '@wakeloom/tracker/synthesis/flows-vortices';
 import { describe, expect, it } from 'vitest';
 import { linkBlock } from '../helpers/link-block';
-import { scoreLinks, truthBlock, truthDump } from '../helpers/truth';
+import { scoreLinks } from '../helpers/score-links';
+import { truthBlock, truthDump } from '../helpers/truth';
 
 /**
  * Links against known truth, advected by separate code with a finer step: 5 % losses, 5 % false detections, noise

@@ -6,7 +6,7 @@ import { parseRunSheet } from '@wakeloom/tracker/run/run-sheet';
 import { DEMO_NAMES, type DemoName, demoSynthesis, writeDemo } from '@wakeloom/tracker/synthesis/demo';
 import { type SynthesisOptions, synthesise } from '@wakeloom/tracker/synthesis/make-dump';
 import { describe, expect, it } from 'vitest';
-import { carry } from '../helpers/truth.js';
+import { carry } from '../helpers/true-motion.js';
 
 const wake = new Uint8Array(readFileSync(new URL('../../data/wake-re150.bin.gz', import.meta.url)));
 

@@ -6,7 +6,7 @@ import { burgersVortex } from '@wakeloom/tracker/synthesis/flows-vortices';
 import { type SynthesisOptions, synthesise } from '@wakeloom/tracker/synthesis/make-dump';
 import { randomStream } from '@wakeloom/tracker/synthesis/random-stream';
 import { describe, expect, it } from 'vitest';
-import { carry } from '../helpers/truth.js';
+import { carry } from '../helpers/true-motion.js';
 
 const cylinder: SynthesisOptions = {
   flow: potentialCylinder(30, 2.5),

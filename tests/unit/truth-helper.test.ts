@@ -1,6 +1,8 @@
 import { shearFlow, solidRotation } from '@wakeloom/tracker/synthesis/flows-elementary';
 import { describe, expect, it } from 'vitest';
-import { carry, scoreLinks, truthDump } from '../helpers/truth.js';
+import { scoreLinks } from '../helpers/score-links.js';
+import { carry } from '../helpers/true-motion.js';
+import { truthDump } from '../helpers/truth.js';
 
 describe('truth for tests', () => {
   it('carries a particle round a circle and back, with an error of the fifth order', () => {
