@@ -13,6 +13,17 @@ export interface Hdf5Build {
 /** Files of a result folder while they are made carry this before their name; nothing so named is a result. */
 export const PARTIAL_PREFIX = '.partial-';
 
+/** A file of a result folder open for reading and writing anywhere in it. Throws as its place does. */
+export interface PlaceFile {
+  /** Fills `into` from `position`; returns the bytes read, fewer only at the end. */
+  read(position: number, into: Uint8Array): number;
+  /** Writes all of `bytes`, which are borrowed. */
+  write(position: number, bytes: Uint8Array): void;
+  /** Makes the file this long, new bytes being 0; true where their room is taken from now on, false where writing may still find none. */
+  setSize(bytes: number): boolean;
+  close(): void;
+}
+
 /**
  * Where a result folder's files are made and found: a real folder in Node, a folder of the HDF5 build's
  * in-memory file system in the browser. File names are plain names without separators. Every method throws a
@@ -27,6 +38,8 @@ export interface ResultPlace {
   readonly hasher: HasherFactory;
   /** Path under which the HDF5 build opens the file. */
   hdf5Path(file: string): string;
+  /** Opens a file that is there. */
+  open(file: string): PlaceFile;
   /** Bytes that can still be written, null where the system does not say. */
   freeBytes(): number | null;
   /** Names of the files in the folder, sorted; empty when there is no such folder. */

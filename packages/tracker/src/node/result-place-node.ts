@@ -1,20 +1,23 @@
 import {
   closeSync,
   fsyncSync,
+  ftruncateSync,
   mkdirSync,
   openSync,
   readdirSync,
   readFileSync,
+  readSync,
   renameSync,
   rmSync,
   statfsSync,
   statSync,
   writeFileSync,
+  writeSync,
 } from 'node:fs';
 import { open } from 'node:fs/promises';
 import { join } from 'node:path';
 import { WakeloomError } from '../core/errors.js';
-import type { ResultPlace } from '../core/result-place.js';
+import type { PlaceFile, ResultPlace } from '../core/result-place.js';
 import { writeError } from './file-errors.js';
 import { nodeHasher } from './hasher.js';
 import { nodeHdf5Build } from './hdf5-build.js';
@@ -41,6 +44,7 @@ export async function openNodeResultPlace(folder: string, options: { create: boo
     scratch: nodeScratch(folder),
     hasher: nodeHasher,
     hdf5Path: path,
+    open: (file) => openPlaceFile(path(file), guard),
     freeBytes() {
       try {
         const { bavail, bsize } = statfsSync(folder);
@@ -90,6 +94,40 @@ export async function openNodeResultPlace(folder: string, options: { create: boo
       if (statSync(path(file), { throwIfNoEntry: false }) === undefined) return;
       guard(path(file), 0, () => rmSync(path(file), { force: true }));
       syncFolder(folder);
+    },
+  };
+}
+
+type Guard = <T>(path: string, need: number, work: () => T) => T;
+
+function openPlaceFile(path: string, guard: Guard): PlaceFile {
+  const descriptor = guard(path, 0, () => openSync(path, 'r+'));
+  let open = true;
+  return {
+    read: (position, into) =>
+      guard(path, 0, () => {
+        let done = 0;
+        while (done < into.length) {
+          const got = readSync(descriptor, into, done, into.length - done, position + done);
+          if (got === 0) break;
+          done += got;
+        }
+        return done;
+      }),
+    write: (position, bytes) =>
+      guard(path, bytes.length, () => {
+        let done = 0;
+        // A disk that fills takes a part and says so only at the next call.
+        while (done < bytes.length) done += writeSync(descriptor, bytes, done, bytes.length - done, position + done);
+      }),
+    setSize(bytes) {
+      guard(path, bytes, () => ftruncateSync(descriptor, bytes));
+      return false;
+    },
+    close() {
+      if (!open) return;
+      open = false;
+      guard(path, 0, () => closeSync(descriptor));
     },
   };
 }

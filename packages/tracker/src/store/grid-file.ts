@@ -1,4 +1,5 @@
 import type { RunContext } from '../core/context.js';
+import type { NumericArray } from '../core/hdf5.js';
 import type { ResultPlace } from '../core/result-place.js';
 import type { GridResult, GridShape } from '../eulerian/grid.js';
 import type { AttributeValue } from './digest.js';
@@ -28,6 +29,7 @@ export async function writeGridFile(
       file.dimension(axis, shape.count[index]);
     });
     file.dimension('edge', 2);
+    const values = new Map<string, () => NumericArray>();
     axes.forEach((axis, index) => {
       const coordinate = { long_name: `${axis} of the bin centre`, units: units.length, axis: axis.toUpperCase() };
       file.variable({
@@ -36,14 +38,14 @@ export async function writeGridFile(
         dimensions: [axis],
         attributes: { ...coordinate, bounds: `${axis}_bounds` },
       });
-      file.append(axis, centres(shape, index));
+      values.set(axis, () => centres(shape, index));
       file.variable({ name: `${axis}_bounds`, type: 'f64', dimensions: [axis, 'edge'], attributes: {} });
-      file.append(`${axis}_bounds`, bounds(shape, index));
+      values.set(`${axis}_bounds`, () => bounds(shape, index));
     });
     const dimensions = [...axes].reverse();
-    const count = (name: string, longName: string, values: Float64Array) => {
+    const count = (name: string, longName: string, counts: Float64Array) => {
       file.variable({ name, type: 'i32', dimensions, attributes: { long_name: longName, units: '1' } });
-      file.append(name, Int32Array.from(values));
+      values.set(name, () => Int32Array.from(counts));
     };
     count('samples', 'samples in the bin', grid.samples);
     count('pathlines', 'distinct pathlines with samples in the bin', grid.pathlines);
@@ -55,7 +57,10 @@ export async function writeGridFile(
       if (field.standardError !== null) own['ancillary_variables'] = field.standardError;
       own['_FillValue'] = { type: 'f32', values: [Number.NaN] };
       file.variable({ name, type: 'f32', dimensions, attributes: own });
-      file.append(name, field.values);
+      values.set(name, () => field.values);
+    }
+    for (const [name, make] of values) {
+      file.append(name, make());
       await context.breathe();
     }
     return await file.finish(context);

@@ -3,32 +3,17 @@ import type { Hdf5Type } from '../core/hdf5.js';
 import type { Hdf5Build } from '../core/result-place.js';
 import { type AttributeValue, TYPE_SIZE } from './digest.js';
 
-/** Rows a chunk holds at most: 32 kB of Float64, so that one instant or one pathline costs few bytes over HTTP. */
-export const CHUNK_ROWS = 4096;
-
-/** Bytes a chunk holds at most where rows are long (planes of a grid): what HDF5 caches by default for a dataset. */
-const CHUNK_BYTES = 1 << 20;
-
-/** Values that cross into the HDF5 build's memory at once, bytes, unless one row is longer. */
-export const WINDOW = 1 << 20;
-
 const DTYPE: Readonly<Record<Hdf5Type, string>> = { f32: '<f', f64: '<d', u8: '<B', u16: '<H', i32: '<i', i64: '<q' };
 
 /** What an attribute can be given to: a dataset or the file. */
 export type AttributeTarget = Pick<H5.Dataset, 'create_attribute'>;
 
-/** Where a slab of rows goes: whole rows of the first dimension. */
-export interface Slab {
-  readonly file: bigint;
-  readonly name: string;
-  readonly shape: readonly number[];
-  readonly first: number;
-  readonly rows: number;
-}
+/** Rows of a chunk that is never written; any number serves. */
+const CHUNK_ROWS = 4096;
 
 /**
- * A dataset of this shape without values, little-endian, uncompressed, attribute order tracked. Chunked and grown from
- * zero rows: this build makes a contiguous dataset only from all its values at once.
+ * A dataset of this shape without values and without room for them: a dimension's scale, or a variable that has none.
+ * Attribute order tracked. Grown from zero rows, since the build makes any other only with values.
  */
 export function createEmpty(
   hdf5: Hdf5Build,
@@ -37,49 +22,59 @@ export function createEmpty(
   type: Hdf5Type,
   shape: readonly number[],
 ): void {
+  const sizes = {
+    shape: shape.map((size, index) => (index === 0 ? 0n : BigInt(size))),
+    maxshape: shape.map((size) => BigInt(Math.max(size, 1))),
+    chunks: shape.map((size, index) => BigInt(Math.max(1, index === 0 ? Math.min(CHUNK_ROWS, size) : size))),
+  };
+  create(hdf5, file, name, type, sizes, 0);
+  hdf5.module.resize_dataset(file, `/${name}`, shape.map(BigInt));
+}
+
+/**
+ * A contiguous dataset of one value, in as many dimensions as `rank`, whose bytes tell `index`: to be given its shape and
+ * place by `placeValues`. Little-endian, uncompressed, attribute order tracked. At most 256 of them are told apart where
+ * a type has one byte.
+ */
+export function createPlaceholder(
+  hdf5: Hdf5Build,
+  file: bigint,
+  name: string,
+  type: Hdf5Type,
+  rank: number,
+  index: number,
+): void {
+  const ones = Array.from({ length: rank }, () => 1n);
+  create(hdf5, file, name, type, { shape: ones, maxshape: ones, chunks: null }, index);
+}
+
+interface Sizes {
+  readonly shape: bigint[];
+  readonly maxshape: bigint[];
+  readonly chunks: bigint[] | null;
+}
+
+function create(hdf5: Hdf5Build, file: bigint, name: string, type: Hdf5Type, sizes: Sizes, value: number): void {
+  const { module } = hdf5;
   const float = type === 'f32' || type === 'f64';
-  const rowBytes = TYPE_SIZE[type] * shape.slice(1).reduce((product, size) => product * size, 1);
-  const most = Math.max(1, Math.min(CHUNK_ROWS, Math.floor(CHUNK_BYTES / Math.max(1, rowBytes))));
-  const chunks = shape.map((size, index) => Math.max(1, index === 0 ? Math.min(most, size) : size));
   const metadata = {
+    ...sizes,
     type: float ? 1 : 0,
     size: TYPE_SIZE[type],
     signed: type === 'i32' || type === 'i64',
     vlen: false,
     littleEndian: true,
-    total_size: 0,
-    shape: shape.map((size, index) => (index === 0 ? 0n : BigInt(size))),
-    maxshape: shape.map((size) => BigInt(Math.max(size, 1))),
-    chunks: chunks.map(BigInt),
+    total_size: sizes.chunks === null ? 1 : 0,
     compression: 0,
     compression_opts: [],
     track_order: true,
   };
-  // An address is needed although no row is written yet.
-  const nothing = hdf5.module._malloc(8);
-  hdf5.module.create_dataset(file, `/${name}`, BigInt(nothing), metadata);
-  hdf5.module._free(nothing);
-  hdf5.module.resize_dataset(file, `/${name}`, shape.map(BigInt));
-}
-
-/** Writes the bytes of whole rows, through `window` (an address with WINDOW bytes) or memory of its own where that is too small. */
-export function writeRows(hdf5: Hdf5Build, slab: Slab, bytes: Uint8Array, window: number): void {
-  const { module } = hdf5;
-  const own = bytes.length > WINDOW ? module._malloc(bytes.length) : 0;
-  const address = own === 0 ? window : own;
-  const rest = slab.shape.slice(1).map(BigInt);
-  const count = [BigInt(slab.rows), ...rest];
-  const offset = [BigInt(slab.first), ...rest.map(() => 0n)];
-  module.HEAPU8.set(bytes, address);
-  module.set_dataset_data(
-    slab.file,
-    `/${slab.name}`,
-    count,
-    offset,
-    count.map(() => 1n),
-    BigInt(address),
-  );
-  if (own !== 0) module._free(own);
+  // An address is needed although no row may be written yet.
+  const address = module._malloc(8);
+  module.HEAPU8.fill(0, address, address + 8);
+  for (let i = 0; i < 4; i++) module.HEAPU8[address + i] = (value >>> (8 * i)) & 0xff;
+  module.create_dataset(file, `/${name}`, BigInt(address), metadata);
+  module._free(address);
 }
 
 /** Text as fixed-length characters (what CF calls a char attribute), numbers as a row of their type. */

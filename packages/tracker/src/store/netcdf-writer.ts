@@ -1,12 +1,13 @@
 import type { RunContext } from '../core/context.js';
 import { WakeloomError } from '../core/errors.js';
 import type { Hdf5Type, NumericArray } from '../core/hdf5.js';
-import type { ResultPlace } from '../core/result-place.js';
+import type { PlaceFile, ResultPlace } from '../core/result-place.js';
 import { PARTIAL_PREFIX } from '../core/result-place.js';
 import { type AttributeValue, openLedger, TYPE_SIZE, type VariableDigest } from './digest.js';
 import { checkRoom, diskFull } from './disk-space.js';
-import { type AttributeTarget, createEmpty, WINDOW, writeAttribute, writeRows } from './netcdf-datasets.js';
+import { type AttributeTarget, createEmpty, createPlaceholder, writeAttribute } from './netcdf-datasets.js';
 import { SIZE_ONLY } from './netcdf-names.js';
+import { placeValues, type ValueArea } from './place-values.js';
 import { readBackDigest } from './read-back.js';
 import { canonicalBytes } from './value-bytes.js';
 
@@ -20,7 +21,10 @@ export interface VariableOptions {
   readonly attributes: Attributes;
 }
 
-/** A NetCDF-4 file in the making, under its partial name. */
+/** Variables start at multiples of this many bytes: a page of memory, so that no page is written twice. */
+const ALIGNMENT = 4096;
+
+/** A NetCDF-4 file in the making, under its partial name. Dimensions and variables first, then values. */
 export interface NetcdfWriter {
   dimension(name: string, size: number): void;
   /** A variable that bears the name of its only dimension is that dimension's coordinate. */
@@ -40,10 +44,15 @@ interface OpenVariable {
   /** Values of one row, and rows written. */
   readonly rowValues: number;
   written: number;
+  /** Where its values start in the file; known once all variables are. */
+  position: number;
 }
 
 /**
- * Starts `file` in the folder. Values are little-endian, uncompressed, in chunks (see netcdf-datasets.ts). Attribute order and dimension order are tracked, as the NetCDF-4 library needs for writing to the file later.
+ * Starts `file` in the folder. Values are little-endian, uncompressed, each variable in one piece: HDF5 makes
+ * the file with all that is not values, is closed, and the values are written at their places as plain bytes (see
+ * place-values.ts). Attribute order and dimension order are tracked, as the NetCDF-4 library needs for writing to the
+ * file later.
  * Codes: `store/disk-full`, `store/read-back`, `store/not-writable`.
  */
 export function createNetcdf(place: ResultPlace, file: string, attributes: Attributes): NetcdfWriter {
@@ -56,22 +65,47 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
   place.writeText(partial, '');
   const handle = new hdf5.File(place.hdf5Path(partial), 'w', { track_order: true });
   let open = true;
-  const window = hdf5.module._malloc(WINDOW);
+  let body: PlaceFile | null = null;
+  let reserved = false;
+  let placeholders = 0;
   let bytesWritten = 0;
 
-  const put = (owner: string, values: Attributes) => {
-    for (const [name, value] of Object.entries(values)) {
+  const put = (owner: string, attributes: Attributes) => {
+    for (const [name, value] of Object.entries(attributes)) {
       // HDF5 has no text without characters.
       if (value === '') continue;
       writeAttribute(owner === '/' ? handle : (handle.get(owner) as AttributeTarget), name, value);
       ledger.attribute(owner, name, value);
     }
   };
-  const close = () => {
+  const closeMetadata = () => {
     if (!open) return;
     open = false;
-    hdf5.module._free(window);
     handle.close();
+  };
+  /** Ends what HDF5 writes and opens the file for values. */
+  const beginValues = (): PlaceFile => {
+    for (const [name, dimension] of dimensions) if (!dimension.made) makeScale(name);
+    closeMetadata();
+    const metadata = new Uint8Array(Math.max(0, place.size(partial)));
+    const file = place.open(partial);
+    body = file;
+    file.read(0, metadata);
+    let end = metadata.length;
+    const areas: ValueArea[] = [];
+    for (const variable of variables.values()) {
+      const { type, shape, rowValues } = variable;
+      const bytes = TYPE_SIZE[type] * rowValues * shape[0];
+      if (bytes === 0) continue;
+      variable.position = Math.ceil(end / ALIGNMENT) * ALIGNMENT;
+      end = variable.position + bytes;
+      areas.push({ shape, position: variable.position, bytes });
+    }
+    checkRoom(place, end - metadata.length);
+    placeValues(metadata, areas, end);
+    file.write(0, metadata);
+    reserved = file.setSize(end);
+    return file;
   };
   put('/', attributes);
 
@@ -84,8 +118,10 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
         if (dimension === undefined) throw new Error(`netcdf: dimension ${each} of ${name} is not defined`);
         return dimension.size;
       });
+      if (!open) throw new Error(`netcdf: variable ${name} comes after values`);
       const scale = options.dimensions.length === 1 && options.dimensions[0] === name;
-      createEmpty(hdf5, handle.file_id, name, type, shape);
+      if (shape.includes(0)) createEmpty(hdf5, handle.file_id, name, type, shape);
+      else createPlaceholder(hdf5, handle.file_id, name, type, shape.length, placeholders++);
       if (scale) {
         hdf5.module.set_scale(handle.file_id, `/${name}`, name);
         const own = dimensions.get(name);
@@ -103,6 +139,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
         digest: ledger.variable(name, type, shape, options.dimensions),
         rowValues: shape.slice(1).reduce((product, size) => product * size, 1),
         written: 0,
+        position: 0,
       });
     },
     append(name, values) {
@@ -114,20 +151,15 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
       if (!Number.isInteger(rows) || variable.written + rows > variable.shape[0]) {
         throw new Error(`netcdf: ${name} got ${rows} rows after ${variable.written} of ${variable.shape[0]}`);
       }
-      checkRoom(place, bytes.length);
-      const step = Math.max(1, Math.floor(WINDOW / rowBytes));
-      for (let row = 0; row < rows; row += step) {
-        const count = Math.min(step, rows - row);
-        const part = bytes.subarray(row * rowBytes, (row + count) * rowBytes);
-        const slab = { file: handle.file_id, name, shape: variable.shape, first: variable.written + row, rows: count };
-        writeRows(hdf5, slab, part, window);
-      }
+      const file = body ?? beginValues();
+      if (!reserved) checkRoom(place, bytes.length);
+      file.write(variable.position + variable.written * rowBytes, bytes);
       variable.digest.update(bytes);
       variable.written += rows;
       bytesWritten += bytes.length;
     },
     async finish(context) {
-      for (const [name, dimension] of dimensions) if (!dimension.made) makeScale(name);
+      const whole = body ?? beginValues();
       for (const [name, variable] of variables) {
         if (variable.written !== variable.shape[0]) {
           throw new Error(`netcdf: ${name} has ${variable.written} of ${variable.shape[0]} rows`);
@@ -135,14 +167,15 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
         variable.digest.end();
       }
       const expected = ledger.hex();
-      close();
+      whole.close();
       await place.sync(partial);
       const found = await readBackDigest(place, partial, context);
       if (found !== expected) throw readBackError(place, file, bytesWritten, expected, found);
       return expected;
     },
     abandon() {
-      close();
+      closeMetadata();
+      body?.close();
       place.remove(partial);
     },
   };

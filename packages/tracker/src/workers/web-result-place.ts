@@ -1,6 +1,6 @@
 import type { HasherFactory } from '../core/bytes.js';
 import { WakeloomError } from '../core/errors.js';
-import type { Hdf5Build, ResultPlace } from '../core/result-place.js';
+import type { Hdf5Build, PlaceFile, ResultPlace } from '../core/result-place.js';
 import { createMemoryScratch } from './web-scratch.js';
 
 /** A result folder in the memory of a worker. */
@@ -50,6 +50,7 @@ export function createMemoryResultPlace(
     hasher,
     scratch: createMemoryScratch(limitBytes),
     hdf5Path: path,
+    open: (file) => openMemoryFile(fileSystem, path(file)),
     freeBytes: () => Math.max(0, limitBytes - files().reduce((sum, file) => sum + size(file), 0)),
     files,
     size,
@@ -67,6 +68,34 @@ export function createMemoryResultPlace(
     discard() {
       for (const file of files()) fileSystem.unlink(path(file));
       fileSystem.rmdir(folder);
+    },
+  };
+}
+
+/** What we use of the build's file system; its typings leave most of it out. */
+interface MemoryFiles {
+  open(path: string, flags: string): object;
+  read(stream: object, into: Uint8Array, offset: number, length: number, position: number): number;
+  write(stream: object, bytes: Uint8Array, offset: number, length: number, position: number): number;
+  truncate(path: string, bytes: number): void;
+  close(stream: object): void;
+}
+
+function openMemoryFile(fileSystem: Hdf5Build['module']['FS'], path: string): PlaceFile {
+  const files = fileSystem as unknown as MemoryFiles;
+  const stream = files.open(path, 'r+');
+  let open = true;
+  return {
+    read: (position, into) => files.read(stream, into, 0, into.length, position),
+    write: (position, bytes) => void files.write(stream, bytes, 0, bytes.length, position),
+    setSize(bytes) {
+      files.truncate(path, bytes);
+      return true;
+    },
+    close() {
+      if (!open) return;
+      open = false;
+      files.close(stream);
     },
   };
 }
