@@ -1,17 +1,21 @@
 import { cubeRoot } from '@wakeloom/tracker/math/cube-root';
 import { medianInPlace, medianOfFew, selectRank } from '@wakeloom/tracker/math/median';
 import { NearestFew } from '@wakeloom/tracker/math/nearest-few';
+import { Ranking } from '@wakeloom/tracker/math/ranking';
+import { sortEight } from '@wakeloom/tracker/math/sort-eight';
 import { randomStream } from '@wakeloom/tracker/synthesis/random-stream';
 import { median as peerMedian } from 'simple-statistics';
 import { describe, expect, it } from 'vitest';
 
-/** Clouds of different shape: even, on a lattice with ties, in a thin strip, in clusters with a far stray point. */
+/** Clouds of different shape: even, on a lattice with ties, in a thin strip, a third at one place, in clusters with a far stray point. */
 function cloud(kind: number, n: number, seed: string): { x: Float64Array; y: Float64Array; z: Float64Array } {
   const random = randomStream(23, seed);
   const coordinate = (axis: number, i: number): number => {
     if (kind === 0) return 100 * random.uniform();
     if (kind === 1) return axis === 0 ? i % 7 : axis === 1 ? Math.floor(i / 7) % 7 : Math.floor(i / 49);
     if (kind === 2) return (axis === 0 ? 1000 : 0.001) * random.uniform() - 500;
+    // Many at one place: more than the quick way takes.
+    if (kind === 3) return i % 3 === 0 ? 50 : 100 * random.uniform();
     return i === 0 ? 1e6 : (i % 5) * 10 + random.normal();
   };
   const column = (axis: number) => Float64Array.from({ length: n }, (_, i) => coordinate(axis, i));
@@ -19,10 +23,10 @@ function cloud(kind: number, n: number, seed: string): { x: Float64Array; y: Flo
 }
 
 describe('nearest few', () => {
-  it('distances agree with looking at every point', () => {
+  it('agree with looking at every point, at equal distance by slot', () => {
     for (const dims of [2, 3] as const) {
-      for (let kind = 0; kind < 4; kind++) {
-        for (const n of [1, 5, 9, 60, 400]) {
+      for (let kind = 0; kind < 5; kind++) {
+        for (const n of [1, 5, 9, 60, 400, 1200]) {
           const points = cloud(kind, n, `${dims} ${kind} ${n}`);
           const search = new NearestFew(8);
           search.build(
@@ -31,18 +35,18 @@ describe('nearest few', () => {
             n,
             dims,
           );
-          for (let i = 0; i < n; i++) {
+          for (let i = 0; i < n; i += n > 100 ? 7 : 1) {
             const square = (j: number) => {
               const d2 = (points.x[j]! - points.x[i]!) ** 2 + (points.y[j]! - points.y[i]!) ** 2;
               return dims === 3 ? d2 + (points.z[j]! - points.z[i]!) ** 2 : d2;
             };
             const all = Array.from({ length: n }, (_, j) => j).filter((j) => j !== i);
-            const want = all.map(square).sort((a, b) => a - b);
-            const found = search.near(search.slotOf[i]!);
-            const rows = Array.from(search.slots.subarray(0, found), (slot) => search.rowOf[slot]!);
-            expect(new Set(rows).size).toBe(rows.length);
-            expect(rows).not.toContain(i);
-            expect(rows.map(square)).toEqual(want.slice(0, 8));
+            const slot = (j: number) => search.slotOf[j]!;
+            const want = all.sort((a, b) => square(a) - square(b) || slot(a) - slot(b)).slice(0, 8);
+            const found = search.near(slot(i));
+            const rows = Array.from(search.slots.subarray(0, found), (at) => search.rowOf[at]!);
+            if (rows.some((row, rank) => row !== want[rank])) expect(rows).toEqual(want);
+            expect(found).toBe(Math.min(8, n - 1));
           }
         }
       }
@@ -79,6 +83,35 @@ describe('medians and roots', () => {
       for (let rank = 0; rank < n; rank++) expect(selectRank(values.slice(), 0, n, rank)).toBe(sorted[rank]);
     }
     expect(medianInPlace(new Float64Array(4), 0)).toBeNaN();
+  });
+
+  it('ranks of a few values, of equal ones the first first', () => {
+    const random = randomStream(25, 'ranks');
+    for (let n = 0; n < 40; n++) {
+      const values = Float64Array.from({ length: n + 1 }, () => Math.round(6 * random.normal()));
+      const inOrder = Array.from({ length: n }, (_, i) => i).sort((a, b) => values[a]! - values[b]! || a - b);
+      const rank = new Ranking(40).of(values, n);
+      expect(inOrder.map((i) => rank[i])).toEqual(inOrder.map((_, place) => place));
+    }
+  });
+
+  it('eight values in order, every pattern of equal and unequal ones', () => {
+    // All 6561 choices of eight among three values hold every pattern of ties of two and more.
+    const into = new Float64Array(8);
+    for (let code = 0; code < 3 ** 8; code++) {
+      const values = Array.from({ length: 8 }, (_, i) => (Math.floor(code / 3 ** i) % 3) - 1);
+      const [a, b, c, d, e, f, g, h] = values;
+      sortEight(a!, b!, c!, d!, e!, f!, g!, h!, into);
+      const want = values.sort((p, q) => p - q);
+      if (want.some((value, i) => value !== into[i])) expect(Array.from(into)).toEqual(want);
+    }
+    const random = randomStream(26, 'eight');
+    for (let trial = 0; trial < 2000; trial++) {
+      const values = Array.from({ length: 8 }, () => random.normal());
+      const [a, b, c, d, e, f, g, h] = values;
+      sortEight(a!, b!, c!, d!, e!, f!, g!, h!, into);
+      expect(Array.from(into)).toEqual(values.sort((p, q) => p - q));
+    }
   });
 
   it('cube root of cubes', () => {

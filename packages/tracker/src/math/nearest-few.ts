@@ -1,119 +1,201 @@
 import type { Dims } from '../core/columns.js';
-import { cubeRoot } from './cube-root.js';
 import type { PointColumns } from './neighbour-search.js';
-
-/** Points a cell should hold on average: measured best near 2 for eight neighbours in the plane. */
-const POINTS_PER_CELL = 2;
+import { PointCells } from './point-cells.js';
+import { Ranking } from './ranking.js';
 
 /** A hair below 1: squared distances to borders of cells are shrunk by it, so that rounding can hide no point. */
 const ROUNDING = 1 - 1e-9;
 
+/** Points taken at most by the quick way, in clusters many lie closer together than the density round them implies. */
+const MOST_TAKEN = 48;
+
+/** Points in a block at first. */
+const BLOCK = 256;
+
+/** Volume of the ball of radius 1 in the plane and in space. */
+const BALL = { 2: Math.PI, 3: (4 / 3) * Math.PI } as const;
+
 /**
- * The k nearest other points of each point, among scattered points without a given reach. Square (cubic) cells with
- * one or two points each; cells are looked at in growing rings until no closer point can lie outside, so the answer is
- * exact. Cells follow from the points alone. At equal distance the point met first in cell order counts as nearer.
- * Cost for k = 8: about 0.3 us a query in the plane. Mutable: one a user; buffers are kept between builds.
+ * The k nearest other points of each point, among scattered points without a given reach. Exact; at equal distance the
+ * lower slot counts as nearer.
+ *
+ * Nearly every query is answered from its own cell and those around it, whose points are gathered once for all queries
+ * of the cell. A radius is guessed from their density so that it should hold somewhat more than k. Cells are as wide as
+ * that radius: whatever lies within it is among the gathered. Points within are taken and ranked by comparing each with
+ * each, both without a branch that depends on data: such branches, guessed wrongly half the time, are what a heap or an
+ * insertion costs. Where the guess holds too few the radius grows to what the gathered surely cover; where these are too
+ * few as well, or too many, cells are looked at in growing rings until no closer point can lie outside.
+ *
+ * Cost for k = 8: about 0.1 us a query in the plane, 0.2 us in space. Mutable: one a user; buffers are kept between builds.
  */
-export class NearestFew {
+export class NearestFew extends PointCells {
   /** Slots of the neighbours of the last query, nearest first; see `rowOf`. [k] */
   readonly slots: Uint32Array;
-  /** Row of each slot: points in cell order, so that neighbours lie close together in memory. */
-  rowOf = new Uint32Array(0);
   private readonly k: number;
+  /** Points that the guessed radius should hold: P(fewer than k) is then about 1 in 8. */
+  private readonly aim: number;
   private readonly square: Float64Array;
-  dims: Dims = 2;
-  private edge = 1;
-  private minX = 0;
-  private minY = 0;
-  private minZ = 0;
-  private countX = 1;
-  private countY = 1;
-  private countZ = 1;
-  private start = new Uint32Array(2);
-  /** Slot of each candidate. */
-  slotOf = new Uint32Array(0);
-  private cellOf = new Uint32Array(0);
-  private cellOfSlot = new Uint32Array(0);
-  /** Points by slot. */
-  px = new Float64Array(0);
-  py = new Float64Array(0);
-  pz = new Float64Array(0);
+  /** Coordinates, one point after the other, of the points of the cells round `blockCell`, by ascending slot. */
+  private blockCell = -1;
+  private blockCount = 0;
+  /** Place of the cell's own first point among them. */
+  private blockOwn = 0;
+  /** Squared radius that should hold what is aimed at. */
+  private blockSquare = 0;
+  private block = new Float64Array(3 * BLOCK);
+  private blockSlot = new Int32Array(BLOCK);
+  /** Points within the radius, as numbers in the block, and their squared distances. */
+  private taken = new Int32Array(BLOCK + 2);
+  private far = new Float64Array(BLOCK + 2);
+  private readonly ranking = new Ranking(MOST_TAKEN);
+  private readonly ranked = new Int32Array(MOST_TAKEN + 1);
 
   constructor(k: number) {
+    super();
     this.k = k;
+    this.aim = k + 1.25 * Math.sqrt(k);
     this.slots = new Uint32Array(k);
     this.square = new Float64Array(k);
   }
 
   /** Takes the points `points[candidates[0 .. count - 1]]`, all finite. Cost O(count). */
   build(points: PointColumns, candidates: Uint32Array, count: number, dims: Dims): void {
-    this.dims = dims;
-    if (this.rowOf.length < count) this.grow(count);
-    const { x, y, z } = points;
-    const deep = dims === 3;
-    let minX = Number.POSITIVE_INFINITY;
-    let minY = minX;
-    let minZ = minX;
-    let maxX = Number.NEGATIVE_INFINITY;
-    let maxY = maxX;
-    let maxZ = maxX;
-    for (let i = 0; i < count; i++) {
-      const r = candidates[i]!;
-      const qx = x[r]!;
-      const qy = y[r]!;
-      if (qx < minX) minX = qx;
-      if (qx > maxX) maxX = qx;
-      if (qy < minY) minY = qy;
-      if (qy > maxY) maxY = qy;
-      if (deep) {
-        const qz = z[r]!;
-        if (qz < minZ) minZ = qz;
-        if (qz > maxZ) maxZ = qz;
-      }
-    }
-    this.minX = minX;
-    this.minY = minY;
-    this.minZ = deep ? minZ : 0;
-    const extents = deep ? [maxX - minX, maxY - minY, maxZ - minZ] : [maxX - minX, maxY - minY];
-    const edge = cellEdge(extents, count / POINTS_PER_CELL);
-    this.edge = edge;
-    this.countX = cells(extents[0]!, edge);
-    this.countY = cells(extents[1]!, edge);
-    this.countZ = deep ? cells(extents[2]!, edge) : 1;
-    const total = this.countX * this.countY * this.countZ;
-    if (this.start.length < total + 1) this.start = new Uint32Array(total + 1);
-    const { start, cellOf, cellOfSlot, slotOf, rowOf, px, py, pz, countX, countY } = this;
-    start.fill(0, 0, total + 1);
-    for (let i = 0; i < count; i++) {
-      const r = candidates[i]!;
-      const cx = Math.trunc((x[r]! - minX) / edge);
-      const cy = Math.trunc((y[r]! - minY) / edge);
-      const cz = deep ? Math.trunc((z[r]! - minZ) / edge) : 0;
-      const cell = (cz * countY + cy) * countX + cx;
-      cellOf[i] = cell;
-      start[cell + 1] = start[cell + 1]! + 1;
-    }
-    for (let cell = 0; cell < total; cell++) start[cell + 1] = start[cell + 1]! + start[cell]!;
-    for (let i = count - 1; i >= 0; i--) {
-      // Filled from the back of each cell; afterwards start[cell + 1] is the cell's first slot.
-      const cell = cellOf[i]! + 1;
-      const slot = start[cell]! - 1;
-      start[cell] = slot;
-      const r = candidates[i]!;
-      slotOf[i] = slot;
-      cellOfSlot[slot] = cell - 1;
-      rowOf[slot] = r;
-      px[slot] = x[r]!;
-      py[slot] = y[r]!;
-      if (deep) pz[slot] = z[r]!;
-    }
-    // start[c + 1] now holds the first slot of cell c: shift back by one.
-    for (let cell = 0; cell < total; cell++) start[cell] = start[cell + 1]!;
-    start[total] = count;
+    // A cell as wide as the radius that should hold what is aimed at, and the point itself.
+    this.sort(points, candidates, count, dims, (this.aim + 1) / BALL[dims]);
+    this.blockCell = -1;
   }
 
   /** Finds the neighbours of the point in slot `own`; returns how many there are (k, or all others where there are fewer). */
   near(own: number): number {
+    const cell = this.cellOfSlot[own]!;
+    if (cell !== this.blockCell) this.gather(cell);
+    const { k } = this;
+    if (this.takeWithin(own, this.blockSquare) >= k || this.takeWithin(own, this.surely(own)) >= k) return k;
+    return this.nearByRings(own);
+  }
+
+  /** Gathers the points of a cell and of those around it. */
+  private gather(cell: number): void {
+    const { start, px, py, pz, countX, countY, countZ, edge } = this;
+    const deep = this.dims === 3;
+    const cx = cell % countX;
+    const line = (cell - cx) / countX;
+    const cy = line % countY;
+    const cz = (line - cy) / countY;
+    const x0 = cx > 0 ? cx - 1 : 0;
+    const x1 = cx + 1 < countX ? cx + 2 : countX;
+    const y0 = cy > 0 ? cy - 1 : 0;
+    const y1 = cy + 1 < countY ? cy + 2 : countY;
+    const z0 = cz > 0 ? cz - 1 : 0;
+    const z1 = cz + 1 < countZ ? cz + 2 : countZ;
+    let { block, blockSlot } = this;
+    let n = 0;
+    let at = 0;
+    for (let c = z0; c < z1; c++) {
+      for (let b = y0; b < y1; b++) {
+        const first = (c * countY + b) * countX;
+        const from = start[first + x0]!;
+        const to = start[first + x1]!;
+        if (n + to - from > blockSlot.length) {
+          this.widen(2 * (n + to - from));
+          ({ block, blockSlot } = this);
+        }
+        if (c === cz && b === cy) this.blockOwn = n + start[cell]! - from;
+        for (let slot = from; slot < to; slot++) {
+          block[at++] = px[slot]!;
+          block[at++] = py[slot]!;
+          if (deep) block[at++] = pz[slot]!;
+          blockSlot[n++] = slot;
+        }
+      }
+    }
+    this.blockCell = cell;
+    this.blockCount = n;
+    // Radius that holds what is aimed at where the block's mean density is that round the point, but no more than a cell.
+    const volume = (x1 - x0) * (y1 - y0) * (z1 - z0);
+    const share = (this.aim * volume) / (n * BALL[this.dims]);
+    const radius = share >= 1 ? 1 : deep ? cubeRootBelowOne(share) : Math.sqrt(share);
+    this.blockSquare = radius * radius * edge * edge * ROUNDING;
+  }
+
+  private widen(size: number): void {
+    const { block, blockSlot } = this;
+    this.block = new Float64Array(3 * size);
+    this.blockSlot = new Int32Array(size);
+    this.taken = new Int32Array(size + 2);
+    this.far = new Float64Array(size + 2);
+    this.block.set(block);
+    this.blockSlot.set(blockSlot);
+  }
+
+  /** Squared radius round a point of the gathered cell that the block surely covers: its nearest side within the field. */
+  private surely(own: number): number {
+    const { countX, countY, countZ, edge, blockCell } = this;
+    const cx = blockCell % countX;
+    const line = (blockCell - cx) / countX;
+    const cy = line % countY;
+    const cz = (line - cy) / countY;
+    let bound = side(this.px[own]! - this.minX, cx, countX, edge);
+    bound = Math.min(bound, side(this.py[own]! - this.minY, cy, countY, edge));
+    if (this.dims === 3) bound = Math.min(bound, side(this.pz[own]! - this.minZ, cz, countZ, edge));
+    return bound > 0 ? bound * bound * ROUNDING : 0;
+  }
+
+  /** The k nearest points of the block within a squared radius of point `own` are the answer where there are as many. */
+  private takeWithin(own: number, within: number): number {
+    const m = this.dims === 3 ? this.scanSpace(own, within) : this.scanPlane(own, within);
+    return m < this.k || m > MOST_TAKEN ? 0 : this.rankTaken(m);
+  }
+
+  // Each loop is a method of its own: together they need more registers than there are, which doubles their time.
+
+  private scanPlane(own: number, within: number): number {
+    const { block, taken, far, blockCount } = this;
+    const self = (this.blockOwn + own - this.start[this.blockCell]!) | 0;
+    const qx = block[2 * self]!;
+    const qy = block[2 * self + 1]!;
+    let m = 0;
+    for (let j = 0; j < blockCount; j++) {
+      const dx = block[2 * j]! - qx;
+      const dy = block[2 * j + 1]! - qy;
+      const d = dx * dx + dy * dy;
+      taken[m] = j;
+      far[m] = d;
+      m = (m + (Number(d <= within) & Number(j !== self))) | 0;
+    }
+    return m;
+  }
+
+  private scanSpace(own: number, within: number): number {
+    const { block, taken, far, blockCount } = this;
+    const self = (this.blockOwn + own - this.start[this.blockCell]!) | 0;
+    const qx = block[3 * self]!;
+    const qy = block[3 * self + 1]!;
+    const qz = block[3 * self + 2]!;
+    let m = 0;
+    for (let j = 0; j < blockCount; j++) {
+      const dx = block[3 * j]! - qx;
+      const dy = block[3 * j + 1]! - qy;
+      const dz = block[3 * j + 2]! - qz;
+      const d = dx * dx + dy * dy + dz * dz;
+      taken[m] = j;
+      far[m] = d;
+      m = (m + (Number(d <= within) & Number(j !== self))) | 0;
+    }
+    return m;
+  }
+
+  /** Puts the first k of the m points taken, which come by ascending slot, into `slots`. */
+  private rankTaken(m: number): number {
+    const { taken, ranked, slots, blockSlot, k } = this;
+    const rank = this.ranking.of(this.far, m);
+    for (let i = 0; i < m; i++) ranked[rank[i]!] = taken[i]!;
+    for (let i = 0; i < k; i++) slots[i] = blockSlot[ranked[i]!]!;
+    return k;
+  }
+
+  /** The same by rings of cells, however the points lie. */
+  private nearByRings(own: number): number {
     const { px, py, pz, dims, countX, countY, countZ, edge, k, square } = this;
     const qx = px[own]!;
     const qy = py[own]!;
@@ -123,9 +205,9 @@ export class NearestFew {
     const line = (cell - cx) / countX;
     const cy = line % countY;
     const cz = (line - cy) / countY;
-    let found = dims === 2 ? this.takeBlock(cx, cy, own, qx, qy) : 0;
-    for (let ring = dims === 2 ? 1 : 0; ; ring++) {
-      if (dims === 3 || ring > 1) found = this.takeRing(ring, cx, cy, cz, own, qx, qy, qz, found);
+    let found = 0;
+    for (let ring = 0; ; ring++) {
+      found = this.takeRing(ring, cx, cy, cz, own, qx, qy, qz, found);
       // No point outside the block of cells is nearer than its nearest side; sides beyond the field do not count.
       let bound = Number.POSITIVE_INFINITY;
       if (cx - ring > 0) bound = qx - this.minX - (cx - ring) * edge;
@@ -139,37 +221,6 @@ export class NearestFew {
       if (bound === Number.POSITIVE_INFINITY) return found;
       if (found === k && bound > 0 && square[k - 1]! <= bound * bound * ROUNDING) return found;
     }
-  }
-
-  /** Rings 0 and 1 in the plane, where nearly every query ends: the middle line of cells first, so that the others mostly bring nothing. */
-  private takeBlock(cx: number, cy: number, own: number, qx: number, qy: number): number {
-    const { start, px, py, slots, square, k, countX, countY } = this;
-    const x0 = cx > 0 ? cx - 1 : 0;
-    const x1 = cx + 1 < countX ? cx + 2 : countX;
-    const last = k - 1;
-    let found = 0;
-    let worst = Number.POSITIVE_INFINITY;
-    for (let turn = 0; turn < 3; turn++) {
-      const b = turn === 0 ? cy : turn === 1 ? cy - 1 : cy + 1;
-      if (b < 0 || b >= countY) continue;
-      const to = start[b * countX + x1]!;
-      for (let slot = start[b * countX + x0]!; slot < to; slot++) {
-        const dx = px[slot]! - qx;
-        const dy = py[slot]! - qy;
-        const d = dx * dx + dy * dy;
-        if (d >= worst || slot === own) continue;
-        let at = found < k ? found++ : last;
-        while (at > 0 && square[at - 1]! > d) {
-          square[at] = square[at - 1]!;
-          slots[at] = slots[at - 1]!;
-          at--;
-        }
-        square[at] = d;
-        slots[at] = slot;
-        if (found === k) worst = square[last]!;
-      }
-    }
-    return found;
   }
 
   /** Looks at the cells of one ring (ring 0 is the point's own cell); returns the neighbours held. */
@@ -219,8 +270,6 @@ export class NearestFew {
     const { px, py, pz, slots, square, k } = this;
     const deep = this.dims === 3;
     let found = held;
-    // Points beyond the k-th so far are turned away by one comparison.
-    let worst = found === k ? square[k - 1]! : Number.POSITIVE_INFINITY;
     for (let slot = from; slot < to; slot++) {
       const dx = px[slot]! - qx;
       const dy = py[slot]! - qy;
@@ -229,50 +278,31 @@ export class NearestFew {
         const dz = pz[slot]! - qz;
         d += dz * dz;
       }
-      if (d >= worst || slot === own) continue;
+      if (slot === own || (found === k && (d > square[k - 1]! || (d === square[k - 1]! && slot > slots[k - 1]!))))
+        continue;
       let at = found < k ? found++ : k - 1;
-      while (at > 0 && square[at - 1]! > d) {
+      while (at > 0 && (square[at - 1]! > d || (square[at - 1]! === d && slots[at - 1]! > slot))) {
         square[at] = square[at - 1]!;
         slots[at] = slots[at - 1]!;
         at--;
       }
       square[at] = d;
       slots[at] = slot;
-      if (found === k) worst = square[k - 1]!;
     }
     return found;
   }
-
-  private grow(count: number): void {
-    const size = Math.ceil(count * 1.25) + 16;
-    this.rowOf = new Uint32Array(size);
-    this.slotOf = new Uint32Array(size);
-    this.cellOf = new Uint32Array(size);
-    this.cellOfSlot = new Uint32Array(size);
-    this.px = new Float64Array(size);
-    this.py = new Float64Array(size);
-    this.pz = new Float64Array(size);
-  }
 }
 
-function cells(extent: number, edge: number): number {
-  return Math.trunc(extent / edge) + 1;
+/** Distance of a coordinate in cell `c` from the nearer side of cells c - 1 .. c + 1; infinite where the field ends before. */
+function side(offset: number, c: number, count: number, edge: number): number {
+  const below = c - 1 > 0 ? offset - (c - 1) * edge : Number.POSITIVE_INFINITY;
+  const above = c + 1 < count - 1 ? (c + 2) * edge - offset : Number.POSITIVE_INFINITY;
+  return Math.min(below, above);
 }
 
-/** Cell edge for about `wanted` cells over the extents that are not zero. */
-function cellEdge(extents: readonly number[], wanted: number): number {
-  let longest = 0;
-  for (const extent of extents) if (extent > longest) longest = extent;
-  if (!(longest > 0)) return 1;
-  let volume = 1;
-  let axes = 0;
-  for (const extent of extents) {
-    // A side shorter than one cell counts as one cell.
-    if (extent * wanted <= longest) continue;
-    volume *= extent / longest;
-    axes++;
-  }
-  const share = wanted > 1 ? volume / wanted : 1;
-  const edge = axes === 1 ? share : axes === 2 ? Math.sqrt(share) : cubeRoot(share);
-  return longest * edge;
+/** Cube root of a number between 0 and 1 to a few per cent, which is enough for a guess: three Newton steps from 1 down. */
+function cubeRootBelowOne(share: number): number {
+  let root = 1;
+  for (let step = 0; step < 3; step++) root = (2 * root + share / (root * root)) / 3;
+  return root;
 }

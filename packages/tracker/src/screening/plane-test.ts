@@ -45,6 +45,7 @@ export class PlaneTest {
     if (dims === 3) reach += Math.abs(pz[far]! - pz[own]!);
     if (!(reach > 0)) return Number.NaN;
     const scale = 1 / reach;
+    if (dims === 2) return this.spreadInPlane(velocity, own, found, without, scale);
     normal.fill(0);
     const q = p + 1;
     let n = 0;
@@ -71,6 +72,63 @@ export class PlaneTest {
     }
     this.deviation = Math.abs(normal[p]!);
     return medianOfFew(sizes, n) * Math.sqrt(n / (n - p));
+  }
+
+  /** The same in the plane, written out: the same operations in the same order, several times as fast. */
+  private spreadInPlane(velocity: Float64Array, own: number, found: number, without: number, scale: number): number {
+    const { search, design, sizes } = this;
+    const { slots, px, py } = search;
+    const x0 = px[own]!;
+    const y0 = py[own]!;
+    const v0 = velocity[own]!;
+    let sx = 0;
+    let sy = 0;
+    let sv = 0;
+    let sxx = 0;
+    let sxy = 0;
+    let syy = 0;
+    let sxv = 0;
+    let syv = 0;
+    let n = 0;
+    for (let i = 0; i < found; i++) {
+      const slot = slots[i]!;
+      if (slot === without) continue;
+      const x = (px[slot]! - x0) * scale;
+      const y = (py[slot]! - y0) * scale;
+      const v = velocity[slot]! - v0;
+      design[2 * n] = x;
+      design[2 * n + 1] = y;
+      sizes[n++] = v;
+      sx += x;
+      sy += y;
+      sv += v;
+      sxx += x * x;
+      sxy += x * y;
+      sxv += x * v;
+      syy += y * y;
+      syv += y * v;
+    }
+    if (n < 3 + LEAST_REDUNDANCY) return Number.NaN;
+    // Elimination as in `eliminate`: rows divided by their pivots.
+    const mx = sx / n;
+    const my = sy / n;
+    const mv = sv / n;
+    const xFactor = mx * n;
+    const xPivot = sxx - xFactor * mx;
+    if (!(xPivot > sxx * FLAT)) return Number.NaN;
+    const xy = (sxy - xFactor * my) / xPivot;
+    const xv = (sxv - xFactor * mv) / xPivot;
+    const yFactor = my * n;
+    const yByX = xy * xPivot;
+    const yPivot = syy - yFactor * my - yByX * xy;
+    if (!(yPivot > syy * FLAT)) return Number.NaN;
+    const alongY = (syv - yFactor * mv - yByX * xv) / yPivot;
+    const alongX = xv - xy * alongY;
+    const level = mv - mx * alongX - my * alongY;
+    for (let i = 0; i < n; i++)
+      sizes[i] = Math.abs(sizes[i]! - level - alongX * design[2 * i]! - alongY * design[2 * i + 1]!);
+    this.deviation = Math.abs(level);
+    return medianOfFew(sizes, n) * Math.sqrt(n / (n - 3));
   }
 }
 
