@@ -62,6 +62,10 @@ export class Carrier {
         place[axis] += h * sum;
       }
     }
+    // A place that is no number lies outside every box: it would vanish without a word.
+    if (!Number.isFinite(place[0] + place[1] + place[2])) {
+      throw new Error(`${flow.name}: got the place ${place.join(', ')} at time ${to}, expected finite numbers`);
+    }
   }
 }
 

@@ -64,7 +64,8 @@ export function wakeFlow(wake: WakeData, placement: WakePlacement): WakeFlow {
       const phase = (cycle - Math.floor(cycle)) * PHASES;
       const i = Math.min(Math.floor(column), across - 2);
       const j = Math.min(Math.floor(row), rows - 2);
-      const k = Math.floor(phase);
+      // Just before a whole cycle the difference above rounds to 1.
+      const k = Math.min(Math.floor(phase), PHASES - 1);
       splineWeights(column - i, weightX);
       splineWeights(row - j, weightY);
       splineWeights(phase - k, weightT);
