@@ -56,8 +56,8 @@ describe('a NetCDF file', () => {
     }
     file.variable({ name: 'empty', type: 'f32', dimensions: ['nothing'], attributes: { units: '1' } });
     // Two rows, then the rest, in turn with other variables.
-    for (const { name, values, count } of made) file.append(name, values.slice(0, (2 * count) / 5));
-    for (const { name, values, count } of made) file.append(name, values.slice((2 * count) / 5));
+    await Promise.all(made.map(({ name, values, count }) => file.append(name, values.slice(0, (2 * count) / 5))));
+    await Promise.all(made.map(({ name, values, count }) => file.append(name, values.slice((2 * count) / 5))));
     await file.finish(createContext());
 
     const path = place.hdf5Path(`${PARTIAL_PREFIX}made.nc`);
@@ -76,7 +76,7 @@ describe('a NetCDF file', () => {
     const file = createNetcdf(place, 'made.nc', {});
     file.dimension('row', 1000);
     file.variable({ name: 'value', type: 'i32', dimensions: ['row'], attributes: {} });
-    file.append('value', new Int32Array(1000).fill(0x01020304));
+    await file.append('value', new Int32Array(1000).fill(0x01020304));
     const path = place.hdf5Path(`${PARTIAL_PREFIX}made.nc`);
     const bytes = readFileSync(path);
     bytes[bytes.length - 1] ^= 1;
@@ -89,7 +89,7 @@ describe('a NetCDF file', () => {
     const file = createNetcdf(place, 'made.nc', {});
     file.dimension('row', 2);
     file.variable({ name: 'value', type: 'i32', dimensions: ['row'], attributes: {} });
-    file.append('value', Int32Array.of(1, 2));
+    await file.append('value', Int32Array.of(1, 2));
     await file.finish(createContext());
     const bytes = readFileSync(place.hdf5Path(`${PARTIAL_PREFIX}made.nc`));
     const area = { shape: [2], position: 8192, bytes: 8 };

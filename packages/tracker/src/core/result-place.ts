@@ -17,10 +17,11 @@ export const PARTIAL_PREFIX = '.partial-';
 export interface PlaceFile {
   /** Fills `into` from `position`; returns the bytes read, fewer only at the end. */
   read(position: number, into: Uint8Array): number;
-  /** Writes all of `bytes`, which are borrowed. */
-  write(position: number, bytes: Uint8Array): void;
+  /** Writes all of `bytes`, which are borrowed until the promise settles. Several calls may be under way. */
+  write(position: number, bytes: Uint8Array): Promise<void>;
   /** Makes the file this long, new bytes being 0; true where their room is taken from now on, false where writing may still find none. */
   setSize(bytes: number): boolean;
+  /** What is under way is still written. */
   close(): void;
 }
 
@@ -28,7 +29,7 @@ export interface PlaceFile {
  * Where a result folder's files are made and found: a real folder in Node, a folder of the HDF5 build's
  * in-memory file system in the browser. File names are plain names without separators. Every method throws a
  * WakeloomError (`store/disk-full`, `store/not-writable`, `store/not-a-folder`) that names the path.
- * Calls other than `sync` return when done, so that writing needs no copies for later.
+ * Calls that give no promise return when done.
  */
 export interface ResultPlace {
   /** The folder as the user wrote it, for messages. */

@@ -11,8 +11,8 @@ import {
   rmSync,
   statfsSync,
   statSync,
+  write,
   writeFileSync,
-  writeSync,
 } from 'node:fs';
 import { open } from 'node:fs/promises';
 import { join } from 'node:path';
@@ -102,7 +102,12 @@ type Guard = <T>(path: string, need: number, work: () => T) => T;
 
 function openPlaceFile(path: string, guard: Guard): PlaceFile {
   const descriptor = guard(path, 0, () => openSync(path, 'r+'));
+  let writing = 0;
   let open = true;
+  // Never under a write: its number may belong to another file by then.
+  const closeWhenIdle = () => {
+    if (!open && writing === 0) closeSync(descriptor);
+  };
   return {
     read: (position, into) =>
       guard(path, 0, () => {
@@ -114,12 +119,18 @@ function openPlaceFile(path: string, guard: Guard): PlaceFile {
         }
         return done;
       }),
-    write: (position, bytes) =>
-      guard(path, bytes.length, () => {
-        let done = 0;
+    async write(position, bytes) {
+      writing++;
+      try {
         // A disk that fills takes a part and says so only at the next call.
-        while (done < bytes.length) done += writeSync(descriptor, bytes, done, bytes.length - done, position + done);
-      }),
+        for (let done = 0; done < bytes.length; ) done += await writeSome(descriptor, bytes, done, position + done);
+      } catch (error) {
+        throw writeError(error, path, bytes.length);
+      } finally {
+        writing--;
+        closeWhenIdle();
+      }
+    },
     setSize(bytes) {
       guard(path, bytes, () => ftruncateSync(descriptor, bytes));
       return false;
@@ -127,9 +138,19 @@ function openPlaceFile(path: string, guard: Guard): PlaceFile {
     close() {
       if (!open) return;
       open = false;
-      guard(path, 0, () => closeSync(descriptor));
+      guard(path, 0, closeWhenIdle);
     },
   };
+}
+
+/** One call of the system, in a thread of Node's own: the caller goes on meanwhile. */
+function writeSome(descriptor: number, bytes: Uint8Array, from: number, position: number): Promise<number> {
+  return new Promise((resolve, reject) => {
+    write(descriptor, bytes, from, bytes.length - from, position, (error, written) => {
+      if (error === null) resolve(written);
+      else reject(error);
+    });
+  });
 }
 
 /** Brings the folder's entries to the disk. Windows cannot open folders; its file system journals them. */

@@ -57,15 +57,15 @@ export async function writeFramesFile(place: ResultPlace, input: FramesInput, co
   const file = createNetcdf(place, 'frames.nc', fileAttributes(input.title, 'trajectory', thinningAttributes(keep)));
   try {
     declare(file, input, indices.length, samples, overview);
-    file.append(
+    await file.append(
       'frame',
       Int32Array.from(indices, (frame) => spilled.frameNumber.array[frame]),
     );
-    file.append(
+    await file.append(
       'time',
       Float64Array.from(indices, (frame) => spilled.frameTime.array[frame]),
     );
-    file.append(
+    await file.append(
       'row_size',
       Int32Array.from(indices, (frame) => sizes[frame]),
     );
@@ -74,8 +74,8 @@ export async function writeFramesFile(place: ResultPlace, input: FramesInput, co
       first += sizes[frame];
       return first - sizes[frame];
     });
-    file.append('first_row', firstRows);
-    file.append(
+    await file.append('first_row', firstRows);
+    await file.append(
       'pathline',
       Int32Array.from({ length: numbering.pathlines }, (_, number) => number),
     );
@@ -153,7 +153,9 @@ async function writeSamples(
   const numbers = new Int32Array(most);
   const fileRows = new Int32Array(most);
   const times = new Float64Array(most);
-  const [read, gathered] = [new ArrayBuffer(8 * most), new ArrayBuffer(8 * most)];
+  const read = new ArrayBuffer(8 * most);
+  // One for each column: they are written while the next ones are gathered.
+  const gathered = columns.map((column) => columnOf(column.stored, most));
   const few = columns.map((column) => columnOf(column.stored, overview));
   const fewPathline = new Int32Array(overview);
   const fewFrame = new Int32Array(overview);
@@ -182,26 +184,25 @@ async function writeSamples(
         }
       }
     }
-    columns.forEach((column, c) => {
+    const writes = columns.map((column, c) => {
       const Type = few[c].constructor as new (buffer: ArrayBuffer, offset: number, length: number) => Column;
       const values = new Type(read, 0, batch.rows);
-      const out = new Type(gathered, 0, used);
+      const out = gathered[c].subarray(0, used);
       readBatch(spilled, batch, spilled.stored.indexOf(column), 0, values);
       for (let i = 0; i < used; i++) out[i] = values[picked[i]];
       if (column.key === 'flags') for (let i = 0; i < used; i++) if (stuck[numbers[i]] === 1) out[i] |= FLAG.stuck;
       let at = firstFew;
       for (let i = 0; i < used; i++) if (inOverview(firstRow + i, samples)) few[c][at++] = out[i];
-      file.append(column.name, out);
+      return file.append(column.name, out);
     });
-    file.append('pathline_index', numbers.subarray(0, used));
-    if (kept !== null) file.append('pathlines_row', fileRows.subarray(0, used));
-    file.append('sample_time', times.subarray(0, used));
+    writes.push(file.append('pathline_index', numbers.subarray(0, used)));
+    if (kept !== null) writes.push(file.append('pathlines_row', fileRows.subarray(0, used)));
+    writes.push(file.append('sample_time', times.subarray(0, used)));
+    await Promise.all(writes);
   }
-  columns.forEach((column, index) => {
-    file.append(`overview_${column.name}`, few[index]);
-  });
-  file.append('overview_pathline', fewPathline);
-  file.append('overview_frame', fewFrame);
+  for (const [index, column] of columns.entries()) await file.append(`overview_${column.name}`, few[index]);
+  await file.append('overview_pathline', fewPathline);
+  await file.append('overview_frame', fewFrame);
 }
 
 function declare(file: NetcdfWriter, input: FramesInput, frames: number, samples: number, overview: number): void {

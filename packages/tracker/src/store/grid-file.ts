@@ -60,7 +60,7 @@ export async function writeGridFile(
       values.set(name, () => field.values);
     }
     for (const [name, make] of values) {
-      file.append(name, make());
+      await file.append(name, make());
       await context.breathe();
     }
     return await file.finish(context);

@@ -29,8 +29,11 @@ export interface NetcdfWriter {
   dimension(name: string, size: number): void;
   /** A variable that bears the name of its only dimension is that dimension's coordinate. */
   variable(options: VariableOptions): void;
-  /** Appends rows; several calls must cover the variable exactly, in order. Borrows `values`. */
-  append(name: string, values: NumericArray): void;
+  /**
+   * Appends rows; several calls must cover the variable exactly, in order. Borrows `values` until the promise settles;
+   * calls need not wait for one another.
+   */
+  append(name: string, values: NumericArray): Promise<void>;
   /** Closes, syncs, reads back, compares; resolves to the content digest. The file keeps its partial name. */
   finish(context: RunContext): Promise<string>;
   /** Closes and removes the partial file. */
@@ -67,6 +70,8 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
   let open = true;
   let body: PlaceFile | null = null;
   let reserved = false;
+  const underWay = new Set<Promise<void>>();
+  let failure: { readonly error: unknown } | null = null;
   let placeholders = 0;
   let bytesWritten = 0;
 
@@ -103,9 +108,18 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
     }
     checkRoom(place, end - metadata.length);
     placeValues(metadata, areas, end);
-    file.write(0, metadata);
+    void write(file, 0, metadata);
     reserved = file.setSize(end);
     return file;
+  };
+  const write = (file: PlaceFile, position: number, bytes: Uint8Array): Promise<void> => {
+    const done = file.write(position, bytes).finally(() => underWay.delete(done));
+    underWay.add(done);
+    // Whoever waits for it is told, and whoever calls `finish`.
+    done.catch((error: unknown) => {
+      failure ??= { error };
+    });
+    return done;
   };
   put('/', attributes);
 
@@ -153,10 +167,11 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
       }
       const file = body ?? beginValues();
       if (!reserved) checkRoom(place, bytes.length);
-      file.write(variable.position + variable.written * rowBytes, bytes);
+      const done = write(file, variable.position + variable.written * rowBytes, bytes);
       variable.digest.update(bytes);
       variable.written += rows;
       bytesWritten += bytes.length;
+      return done;
     },
     async finish(context) {
       const whole = body ?? beginValues();
@@ -166,6 +181,8 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
         }
         variable.digest.end();
       }
+      await Promise.allSettled(underWay);
+      if (failure !== null) throw failure.error;
       const expected = ledger.hex();
       whole.close();
       await place.sync(partial);

@@ -9,8 +9,8 @@ import type { Column, Spilled } from './spill.js';
 
 /** pathlines.nc in the making: CF contiguous ragged array of trajectories. */
 export interface PathlinesFile {
-  /** Rows in the order of the file; borrows them. */
-  append(rows: PathlineRows): void;
+  /** Rows in the order of the file; borrows them until the promise settles. */
+  append(rows: PathlineRows): Promise<void>;
   /** Closes and checks; resolves to the content digest. */
   finish(context: RunContext): Promise<string>;
   abandon(): void;
@@ -72,7 +72,7 @@ export function openPathlinesFile(
   const lastFrame = new Int32Array(kept.pathlines);
   let done = 0;
   return {
-    append(rows) {
+    async append(rows) {
       const picked: number[] = [];
       for (let k = 0; k + 1 < rows.offsets.length; k++) {
         const pathline = rows.firstPathline + k;
@@ -84,16 +84,18 @@ export function openPathlinesFile(
         done++;
         if (thinned) picked.push(k);
       }
-      for (const column of columns) {
+      // Written while the next one is hashed.
+      const writes = columns.map((column) => {
         const values = rows[column.key];
-        file.append(column.name, thinned ? pick(values, rows.offsets, picked) : values);
-      }
+        return file.append(column.name, thinned ? pick(values, rows.offsets, picked) : values);
+      });
+      await Promise.all(writes);
     },
-    finish(context) {
-      file.append('pathline', number);
-      file.append('row_size', rowSize);
-      file.append('first_frame', firstFrame);
-      file.append('last_frame', lastFrame);
+    async finish(context) {
+      await file.append('pathline', number);
+      await file.append('row_size', rowSize);
+      await file.append('first_frame', firstFrame);
+      await file.append('last_frame', lastFrame);
       return file.finish(context);
     },
     abandon: () => file.abandon(),

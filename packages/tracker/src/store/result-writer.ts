@@ -158,8 +158,11 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     for await (const rows of transpose(spilled, numbering, columns, context, options.working?.groupBytes)) {
       flagStuck(rows, rule, stuck);
       statistics.add(rows);
-      pathlinesFile?.append(rows);
+      // The rows are written while they are looked at.
+      const written = pathlinesFile?.append(rows);
+      written?.catch(() => {});
       await onPathlines(rows);
+      await written;
       context.progress('write', rows.firstRow + rows.flags.length, numbering.samples, 'samples');
     }
     if (pathlinesFile !== null) digests['pathlines.nc'] = await pathlinesFile.finish(context);

@@ -87,7 +87,9 @@ function openMemoryFile(fileSystem: Hdf5Build['module']['FS'], path: string): Pl
   let open = true;
   return {
     read: (position, into) => files.read(stream, into, 0, into.length, position),
-    write: (position, bytes) => void files.write(stream, bytes, 0, bytes.length, position),
+    async write(position, bytes) {
+      files.write(stream, bytes, 0, bytes.length, position);
+    },
     setSize(bytes) {
       files.truncate(path, bytes);
       return true;
