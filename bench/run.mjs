@@ -1,31 +1,13 @@
 // Runs the benches (all, or those named: `npm run bench -- link grid`), after `npm run compile`. All of them: results go to
 // bench/results/DATE-COMMIT.json and the table in bench/results/README.md is made anew from them. Each case checks
 // its answers before it is timed and compares within one run: absolute figures of a shared machine drift.
-import { execFileSync } from 'node:child_process';
 import { mkdirSync, writeFileSync } from 'node:fs';
-import { availableParallelism, cpus, loadavg, totalmem } from 'node:os';
 import { fileURLToPath, pathToFileURL } from 'node:url';
+import { commit, machine } from './lib/provenance.mjs';
 import { print } from './lib/timed.mjs';
 
 const here = (path) => fileURLToPath(new URL(path, import.meta.url));
 const CASES = ['read-csv', 'neighbours', 'link', 'fit', 'grid', 'store', 'whole-run'];
-
-/** What the figures depend on: no names of hosts, no paths. */
-function machine() {
-  const round = (value) => Math.round(10 * value) / 10;
-  return {
-    processor: cpus()[0]?.model ?? 'unknown',
-    cores: availableParallelism(),
-    memoryGigabytes: Math.round(totalmem() / 2 ** 30),
-    node: process.version,
-    platform: `${process.platform} ${process.arch}`,
-    loadBefore: round(loadavg()[0]),
-  };
-}
-
-function git(...words) {
-  return execFileSync('git', words, { cwd: here('..'), encoding: 'utf8' }).trim();
-}
 
 /** The newest results by the date in their name, as text for README.md. */
 export function table(file, { machine, cases }) {
@@ -63,7 +45,7 @@ async function main(named) {
   if (unknown.length > 0) throw new Error(`no such bench: ${unknown.join(', ')}; there are ${CASES.join(', ')}`);
   const result = {
     date: new Date().toISOString().slice(0, 10),
-    commit: git('rev-parse', '--short', 'HEAD'),
+    commit: commit(),
     machine: machine(),
     cases: {},
   };

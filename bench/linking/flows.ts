@@ -18,6 +18,8 @@ export interface FlowCase {
   readonly box: readonly (readonly [number, number])[];
   /** The flow for one seed: random fields differ by it, the others do not. */
   flow(seed: number, root: string): Promise<Flow>;
+  /** Runs of different seeds begin somewhere within this time, s: the period of a flow that has one. */
+  readonly period?: number;
   /** What the parameters are chosen by; spacings are those of 4000 particles a frame. */
   readonly why: string;
 }
@@ -56,6 +58,7 @@ export const FLOW_CASES: readonly FlowCase[] = [
     dims: 2,
     box: sheet(-24, -25.6),
     flow: async () => vortexStreet({ spacing: 32, gap: 0.2805499 * 32, circulation: 480, speed: 30, coreRadius: 4.5 }),
+    period: 1.3,
     why: 'two spacings of the street in view; rows in the stable ratio, 9 mm apart; cores grown to half the gap (10 spacings across); circulation 2.5 speeds times a body a fifth of the spacing wide, so that the street is carried at 0.85 of the stream',
   },
   {
@@ -63,6 +66,7 @@ export const FLOW_CASES: readonly FlowCase[] = [
     dims: 2,
     box: sheet(-12, -25.6),
     flow: (_seed, root) => wakeOf(root, 10),
+    period: 1.85,
     why: 'near wake at Reynolds number 150, view 6.4 diameters wide; diameter and eddies 11 spacings; the stored field reaches from 2.4 diameters before to 10.4 behind the axis',
   },
   {
@@ -70,6 +74,7 @@ export const FLOW_CASES: readonly FlowCase[] = [
     dims: 2,
     box: sheet(-12, -25.6),
     flow: (_seed, root) => wakeOf(root, 5),
+    period: 0.93,
     why: 'the same wake in the view of the demo, 12.8 diameters wide: eddies of 6 to 8 spacings, shear layers thinner than one',
   },
   {

@@ -1,4 +1,6 @@
 /** What the runner and its worker processes use of the harness, in one bundle. */
-export { ALL_FLOWS, caseName, USUAL } from './cases';
+export { barOf, RISK_BARS, riskMisses } from './bars';
+export { ALL_FLOWS, caseName, casesOf, SET_NAMES, USUAL, unusual } from './cases';
+export { FLOW_CASES } from './flows';
 export { measureCase } from './measure-case';
 export { addPool, emptyPool, summarise } from './risk-pool';

@@ -14,8 +14,10 @@ const WIDTH_PX = 1280;
 const FEWEST_STEPS = 5;
 /** Twice as many steps may move no particle by more than this, px: a hundredth of the least noise is 5e-4. */
 const STEP_ERROR_PX = 1e-4;
+/** The same for what the oracle predicts: a twentieth of that noise. */
+const ORACLE_ERROR_PX = 2.5e-3;
 /** Image pairs: time from pair to pair over that within a pair. */
-const PAIRS_APART = 100;
+export const PAIRS_APART = 100;
 /** Rounds in which the rate is set: an unsteady flow's mean speed depends on how long it is looked at. */
 const RATE_ROUNDS = 6;
 
@@ -35,7 +37,8 @@ export interface MadeTruth {
   readonly particle: Int32Array;
   readonly frame: Int32Array;
   readonly flow: Flow;
-  readonly steps: number;
+  /** Steps a frame interval that carry a particle well enough for a prediction. */
+  readonly oracleSteps: number;
   /** Frames (pairs: inverse of the delay) a second. */
   readonly rate: number;
   /** Position noise in the plane, mm. */
@@ -47,23 +50,19 @@ export interface MadeTruth {
 
 /** Makes the dump of a case. The same case gives the same dump; noise, losses and ghosts differ over one true motion. */
 export async function madeTruth(one: LinkingCase, places: Places): Promise<MadeTruth> {
-  const view = flowCase(one.flow);
+  const { flow: name, perFrame, frames, pairs } = one;
+  const view = flowCase(name);
   const flow = await view.flow(one.seed, places.root);
-  const rate = rateFor(one, view, flow);
+  const box = shrunk(view.box, one.side);
   const scale = (view.box[0][1] - view.box[0][0]) / WIDTH_PX;
-  const seed = seedFor(one.seed, `${one.flow} ${one.ratio} ${one.perFrame} ${one.pairs}`) | 0;
-  const whole: MotionOptions = { flow, frames: one.frames, rate, perFrame: one.perFrame, box: view.box, seed };
+  const startTime = (view.period ?? 0) * (seedFor(one.seed, `start ${name}`) / 2 ** 32);
+  const rate = rateFor(one, box, flow, startTime);
+  const seed = seedFor(one.seed, `${name} ${one.ratio} ${perFrame} ${pairs}`) | 0;
+  const whole: MotionOptions = { flow, frames, rate, perFrame, box, seed, startTime };
   const steps = enoughSteps(whole, FEWEST_STEPS, STEP_ERROR_PX * scale);
-  const key = {
-    flow: one.flow,
-    flowSeed: one.seed,
-    ratio: one.ratio,
-    perFrame: one.perFrame,
-    frames: one.frames,
-    seed,
-  };
-  const motion = cached({ ...places }, { ...key, pairs: one.pairs, steps }, TRUTH_SOURCES, () =>
-    one.pairs ? pairMotion({ ...whole, steps }) : columnsOf(trueMotion({ ...whole, steps })),
+  const key = { name, ratio: one.ratio, flowSeed: one.seed, perFrame, frames, pairs, side: one.side };
+  const motion = cached(places, key, TRUTH_SOURCES, () =>
+    pairs ? pairMotion({ ...whole, steps }) : columnsOf(trueMotion({ ...whole, steps })),
   );
   const noise = one.noise * scale;
   const dump = detect(
@@ -72,48 +71,64 @@ export async function madeTruth(one: LinkingCase, places: Places): Promise<MadeT
       lossShare: one.losses,
       ghostShare: one.ghosts,
       noise: [noise, noise, DEPTH_NOISE * noise],
-      perFrame: one.perFrame,
-      box: view.box,
+      perFrame,
+      box,
       seed,
     },
   );
   const block = truthBlock(dump);
-  if (one.pairs) for (let k = 0; k < one.frames; k++) block.segment[k] = k >> 1;
-  const spacing = (room(view, flow) / one.perFrame) ** (1 / flow.dims);
-  return { block, particle: dump.particle, frame: dump.frame, flow, steps, rate, noise, scale, spacing };
+  if (pairs) for (let k = 0; k < frames; k++) block.segment[k] = k >> 1;
+  return {
+    block,
+    particle: dump.particle,
+    frame: dump.frame,
+    flow,
+    oracleSteps: enoughSteps(whole, 1, ORACLE_ERROR_PX * scale),
+    rate,
+    noise,
+    scale,
+    spacing: (room(box, flow) / perFrame) ** (1 / flow.dims),
+  };
+}
+
+type Box = FlowCase['box'];
+
+/** The middle part of a box, `side` of each side long. */
+function shrunk(box: Box, side: number): Box {
+  return box.map(([low, high]) => {
+    const cut = 0.5 * (1 - side) * (high - low);
+    return [low + cut, high - cut] as const;
+  });
 }
 
 /** Rate at which the mean displacement over the fluid in view is the wanted share of the spacing. */
-function rateFor(one: LinkingCase, view: FlowCase, flow: Flow): number {
+function rateFor(one: LinkingCase, box: Box, flow: Flow, startTime: number): number {
   let rate = 1;
   for (let round = 0; round < RATE_ROUNDS; round++) {
-    // A pair is looked at for one delay, but the pairs are spread over the flow's time.
-    rate *= ratioAt(one, view, flow, rate) / one.ratio;
+    rate *= ratioAt(one, box, flow, rate, startTime) / one.ratio;
   }
   return rate;
 }
 
 /** Displacement ratio of a case at a rate, from the flow over the fluid in view. */
-export function ratioAt(one: LinkingCase, view: FlowCase, flow: Flow, rate: number): number {
-  const [x, y, z] = view.box;
-  const span = one.pairs ? (one.frames / 2) * PAIRS_APART : one.frames;
+function ratioAt(one: LinkingCase, box: Box, flow: Flow, rate: number, startTime: number): number {
+  const [x, y, z] = box;
+  // A pair is looked at for one delay, but the pairs are spread over the flow's time.
+  const frames = one.pairs ? (one.frames / 2) * PAIRS_APART : one.frames;
   const rest = { scale: 1, noisePx: 0, lossShare: 0, ghostShare: 0, seed: 1 };
-  return displacementRatio({ ...rest, flow, region: { x, y, z }, rate, frames: span, perFrame: one.perFrame });
+  const region = z === undefined ? { x, y } : { x, y, z };
+  return displacementRatio({ ...rest, flow, region, rate, frames, perFrame: one.perFrame, startTime });
 }
 
-/** Area or volume of the fluid in view, from a midpoint lattice. */
-function room(view: FlowCase, flow: Flow): number {
-  const whole = view.box.reduce((product, [low, high]) => product * (high - low), 1);
+/** Area or volume of the fluid in view, from a midpoint lattice where there is a solid (in the plane only). */
+function room(box: Box, flow: Flow): number {
+  const whole = box.reduce((product, [low, high]) => product * (high - low), 1);
   if (flow.inside === undefined) return whole;
   const points = 400;
+  const at = (axis: number, n: number) => box[axis][0] + ((box[axis][1] - box[axis][0]) * (n + 0.5)) / points;
   let free = 0;
   for (let i = 0; i < points; i++) {
-    for (let j = 0; j < points; j++) {
-      const at = [i, j].map(
-        (n, axis) => view.box[axis][0] + ((view.box[axis][1] - view.box[axis][0]) * (n + 0.5)) / points,
-      );
-      if (!flow.inside(at[0], at[1], 0)) free++;
-    }
+    for (let j = 0; j < points; j++) if (!flow.inside(at(0, i), at(1, j), 0)) free++;
   }
   return (whole * free) / (points * points);
 }
@@ -129,7 +144,7 @@ function pairMotion(options: MotionOptions): MotionColumns {
   const pairs = options.frames / 2;
   const parts: TrueMotion[] = [];
   for (let pair = 0; pair < pairs; pair++) {
-    const startTime = (pair * PAIRS_APART) / options.rate;
+    const startTime = (options.startTime ?? 0) + (pair * PAIRS_APART) / options.rate;
     parts.push(trueMotion({ ...options, frames: 2, startTime, seed: seedFor(options.seed, `pair ${pair}`) | 0 }));
   }
   const joined = (column: 'x' | 'y' | 'z' | 'time') => {

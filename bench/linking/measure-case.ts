@@ -1,7 +1,7 @@
 import { linkBlock } from '../../tests/helpers/link-block';
 import { FEWEST, joinedBefore, type LinkScore, scoreLinks } from '../../tests/helpers/score-links';
 import { BRIDGE, DEPTH_NOISE, type LinkingCase } from './cases';
-import { type MadeTruth, madeTruth, TRUTH_SOURCES } from './made-truth';
+import { type MadeTruth, madeTruth, PAIRS_APART, TRUTH_SOURCES } from './made-truth';
 import { linkToNearest } from './nearest-linker';
 import { addLinks, emptyPool, type RiskPool } from './risk-pool';
 import { linkByTrueFlow } from './true-flow-linker';
@@ -46,7 +46,8 @@ export async function measureCase(one: LinkingCase, places: Places): Promise<Cas
   const truth = await madeTruth(one, places);
   const { block, particle, frame } = truth;
   const made = performance.now();
-  const linked = await linkBlock(block, clockOf(one, truth), { care: one.care });
+  const care: Record<string, string> = one.care === 'default' ? {} : { care: one.care };
+  const linked = await linkBlock(block, { ...clockOf(one, truth), ...care });
   const done = performance.now();
   const bridge = one.pairs ? 0 : BRIDGE;
   const fewest = one.pairs ? 2 : FEWEST;
@@ -56,7 +57,7 @@ export async function measureCase(one: LinkingCase, places: Places): Promise<Cas
   addLinks(risk, joinedBefore(linked.pathline, frame, fewest), truthLinks, linked.risk);
   const { care: _ours, ...same } = one;
   const others = cached(places, { oracleAndNearest: same }, [...TRUTH_SOURCES, ...OTHERS], () => {
-    const { flow, noise, steps, spacing } = truth;
+    const { flow, noise, oracleSteps: steps, spacing } = truth;
     const oracle = score(linkByTrueFlow(block, { flow, noise, steps, bridge, depthNoise: DEPTH_NOISE }));
     const nearest = score(linkToNearest(block, 0.5 * spacing, bridge));
     const counts = ({ made: links, right, true: all }: CaseScore) => Int32Array.of(links, right, all);
@@ -78,7 +79,7 @@ export async function measureCase(one: LinkingCase, places: Places): Promise<Cas
 function clockOf(one: LinkingCase, { rate, scale }: MadeTruth): Record<string, string> {
   const common = { scale: `${scale} mm/px` };
   return one.pairs
-    ? { ...common, 'pair-delay': `${1 / rate} s`, 'pair-rate': `${rate / 100} Hz` }
+    ? { ...common, 'pair-delay': `${1 / rate} s`, 'pair-rate': `${rate / PAIRS_APART} Hz` }
     : { ...common, rate: `${rate} Hz` };
 }
 

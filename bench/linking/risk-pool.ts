@@ -62,12 +62,12 @@ export interface RiskSummary {
   readonly wrong: number;
 }
 
-/** The decades 1e-4 .. 1 and all below in one, and how well the risk tells wrong from right. */
+/** The decades from 1e-5 to 1 and all below in one, and how well the risk tells wrong from right. */
 export function summarise(pool: RiskPool): RiskSummary {
   const sum = (column: Float64Array, from: number, to: number) => column.subarray(from, to).reduce((a, b) => a + b, 0);
   const decade = (from: number, to: number): RiskDecade => ({
-    from: from === 0 ? 0 : 10 ** (from - DECADES),
-    to: 10 ** (to - DECADES),
+    from: from === 0 ? 0 : Number(`1e${from - DECADES}`),
+    to: Number(`1e${to - DECADES}`),
     links: sum(pool.links, from * PER_DECADE, to * PER_DECADE),
     expected: sum(pool.stated, from * PER_DECADE, to * PER_DECADE),
     wrong: sum(pool.wrong, from * PER_DECADE, to * PER_DECADE),
@@ -82,7 +82,7 @@ export function summarise(pool: RiskPool): RiskSummary {
     below += rightHere;
   }
   return {
-    decades: [decade(0, DECADES - 4), ...[4, 3, 2, 1].map((n) => decade(DECADES - n, DECADES - n + 1))],
+    decades: [decade(0, DECADES - 5), ...[5, 4, 3, 2, 1].map((n) => decade(DECADES - n, DECADES - n + 1))],
     areaUnderCurve: wrong > 0 && right > 0 ? area / (wrong * right) : Number.NaN,
     expected: sum(pool.stated, 0, BINS),
     wrong,
