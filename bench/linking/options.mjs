@@ -26,8 +26,9 @@ export const HELP = `Links dumps with known truth and scores the links, beside a
 --set NAME       quick (8 dumps), table (every flow at every ratio), full (adds noise, losses, ghosts, densities and
                  image pairs), held-out (seeds set aside: look once, at the end)
 --flows --ratios --seeds --noise --losses --ghosts --particles --frames --care
-                 values with commas between them: every combination is run; --noise in px, --losses and --ghosts as
-                 shares, --particles a frame. Without --set: all flows, ratios 0.3, 0.6 and 1, seed 1, the rest as usual
+                 values with commas between them: every combination is run (all flows, ratios 0.3, 0.6 and 1, seed 1,
+                 the rest as usual unless given); beside --set, only the cases of the set that have such a value.
+                 --noise in px, --losses and --ghosts as shares, --particles a frame
 --side SHARE     look at the middle of the view only: share of its sides (default 1)
 --pairs          image pairs; --frames is twice their number (default 200)
 --workers N      processes (default 2)
@@ -53,26 +54,38 @@ export function readOptions(words) {
       help: flag,
     },
   });
-  if (values.record && values.set !== 'full' && values.set !== 'held-out') {
-    throw new Error('--record: expected --set full or --set held-out beside it');
+  if (values.record) {
+    const chosen = CHOICES.some(([name]) => values[name] !== undefined) || values.pairs;
+    if (chosen || (values.set !== 'full' && values.set !== 'held-out')) {
+      throw new Error('--record: expected --set full or --set held-out beside it, and no choice of cases');
+    }
   }
   return values;
 }
 
-/** The cases of the set, or every combination of the values given. */
+/** The cases of the set, or every combination of the values given. Throws on what is not understood. */
 export function chosenCases(values, { ALL_FLOWS, casesOf, SET_NAMES, USUAL }) {
-  const given = CHOICES.filter(([name]) => values[name] !== undefined);
+  const given = new Map();
+  for (const [name, field, isNumber] of CHOICES) {
+    if (values[name] === undefined) continue;
+    given.set(
+      field,
+      values[name].split(',').map((word) => (isNumber ? numberOf(name, word) : word)),
+    );
+  }
+  for (const flow of given.get('flow') ?? []) {
+    if (!ALL_FLOWS.includes(flow)) throw new Error(`--flows: got ${flow}, expected ${ALL_FLOWS.join(', ')}`);
+  }
   if (values.set !== undefined) {
     if (!SET_NAMES.includes(values.set)) throw new Error(`--set: got ${values.set}, expected ${SET_NAMES.join(', ')}`);
-    if (given.length > 0 || values.pairs) throw new Error(`--set ${values.set}: expected no choice of cases beside it`);
-    return casesOf(values.set);
+    const wanted = (one) => [...given].every(([field, list]) => list.includes(one[field]));
+    return casesOf(values.set).filter((one) => wanted(one) && (!values.pairs || one.pairs));
   }
   const frames = values.pairs ? 200 : USUAL.frames;
   let cases = [{ ...USUAL, pairs: values.pairs ?? false, frames }];
-  for (const [name, field, isNumber] of CHOICES) {
+  for (const [, field] of CHOICES) {
     const usual = { flow: ALL_FLOWS, ratio: [0.3, 0.6, 1], seed: [1] }[field] ?? [cases[0][field]];
-    const wanted = values[name]?.split(',').map((word) => (isNumber ? numberOf(name, word) : word)) ?? usual;
-    cases = cases.flatMap((one) => wanted.map((value) => ({ ...one, [field]: value })));
+    cases = cases.flatMap((one) => (given.get(field) ?? usual).map((value) => ({ ...one, [field]: value })));
   }
   return cases;
 }

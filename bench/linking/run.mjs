@@ -10,16 +10,21 @@ import { RESULTS, writeTables } from './record.mjs';
 import { runCases } from './run-cases.mjs';
 import { prune } from './scratch.mjs';
 
-const values = readOptions(process.argv.slice(2));
-if (values.help) console.log(HELP);
-else if (values.tables) writeTables();
-else await main();
+try {
+  const values = readOptions(process.argv.slice(2));
+  if (values.help) console.log(HELP);
+  else if (values.tables) writeTables();
+  else await main(values);
+} catch (error) {
+  console.error(error instanceof Error ? error.message : error);
+  process.exitCode = 2;
+}
 
-async function main() {
+async function main(values) {
   const { folder, address } = await bundleHarness();
   try {
     const harness = await import(address);
-    const record = await measure(harness, address);
+    const record = await measure(values, chosenCases(values, harness), harness, address);
     if (values.out !== undefined) write(values.out, record);
     if (values.record) {
       const name = values.set === 'held-out' ? 'linking-held-out' : 'linking';
@@ -32,8 +37,7 @@ async function main() {
   }
 }
 
-async function measure(harness, address) {
-  const cases = chosenCases(values, harness);
+async function measure(values, cases, harness, address) {
   const cache = values['no-cache'] ? null : join(SCRATCH, 'truth');
   if (cache !== null) prune(cache);
   // As it was when the sources were read: others may commit meanwhile.

@@ -2,7 +2,7 @@ import type { DetectionBlock } from '@wakeloom/tracker';
 import { createContext } from '@wakeloom/tracker';
 import { createFrameSorter } from '@wakeloom/tracker/detections/canonical-order';
 import { createLinker } from '@wakeloom/tracker/linking/create-linker';
-import { firstLook } from '@wakeloom/tracker/pipeline/first-look';
+import { FIRST_LOOK, firstLook } from '@wakeloom/tracker/pipeline/first-look';
 import { resolveRun } from '@wakeloom/tracker/run/resolve';
 import type { LinkingSettings } from '@wakeloom/tracker/run/settings';
 
@@ -15,10 +15,11 @@ export async function linkBlock(
   options: Record<string, string | number> = {},
   change: Partial<LinkingSettings> = {},
 ) {
-  const { settings } = resolveRun({ options: { rate: '60 Hz', scale: '1 mm/px', ...options }, dumpFiles: ['x.csv'] });
+  const clock: Record<string, string> = 'pair-delay' in options ? {} : { rate: '60 Hz' };
+  const { settings } = resolveRun({ options: { ...clock, scale: '1 mm/px', ...options }, dumpFiles: ['x.csv'] });
   const linking = { ...settings.linking, ...change };
   const sorted = sortedCopy(block);
-  const look = await firstLook([sorted], { ...settings, linking }, 1, createContext());
+  const look = await firstLook([leading(sorted)], { ...settings, linking }, 1, createContext());
   const linker = createLinker(linking, look.link);
   const pathline = new Int32Array(sorted.x.length);
   const risk = new Float32Array(sorted.x.length);
@@ -43,6 +44,27 @@ export function linkSet(pathline: ArrayLike<number>, frame: ArrayLike<number>): 
     last.set(pathline[row], row);
   }
   return links;
+}
+
+/** The frames that the first look of a run would be given. */
+function leading(block: DetectionBlock): DetectionBlock {
+  const { offsets } = block;
+  let frames = Math.min(block.number.length, FIRST_LOOK.frames);
+  while (frames > 2 && offsets[frames - 1] >= FIRST_LOOK.rows) frames--;
+  const rows = offsets[frames];
+  return {
+    ...block,
+    number: block.number.subarray(0, frames),
+    time: block.time.subarray(0, frames),
+    segment: block.segment.subarray(0, frames),
+    offsets: offsets.subarray(0, frames + 1),
+    x: block.x.subarray(0, rows),
+    y: block.y.subarray(0, rows),
+    z: block.z.subarray(0, rows),
+    brightness: block.brightness.subarray(0, rows),
+    row: block.row.subarray(0, rows),
+    given: block.given.subarray(0, rows),
+  };
 }
 
 function sortedCopy(block: DetectionBlock): DetectionBlock {
