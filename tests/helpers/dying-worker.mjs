@@ -46,13 +46,13 @@ const platform = {
   host: { name: 'test', platform: 'test', runtime: 'test' },
 };
 
-let windows = 0;
+let calls = 0;
 const dyingBodies = {
   ...runBodies,
-  'fit-window': (args, context) =>
-    manner.startsWith('fitting-') && ++windows === 2
+  'fit-frames': (args, context) =>
+    manner.startsWith('fitting-') && ++calls === 2
       ? die(manner.slice('fitting-'.length))
-      : runBodies['fit-window'](args, context, platform),
+      : runBodies['fit-frames'](args, context, platform),
 };
 
 serveOperations(dyingBodies, platform, nodeEndpoint(parentPort));

@@ -1,7 +1,9 @@
 import type { LinkedBlock, SampleBlock } from '@wakeloom/tracker/core/columns';
+import { rowCount } from '@wakeloom/tracker/core/columns';
 import { createContext } from '@wakeloom/tracker/core/context';
+import { createFrameFit } from '@wakeloom/tracker/kinematics/create-frame-fit';
 import { fitParameters } from '@wakeloom/tracker/kinematics/fit-parameters';
-import { fitStage } from '@wakeloom/tracker/kinematics/fit-stage';
+import { fitStage, type StartRemoteFit } from '@wakeloom/tracker/kinematics/fit-stage';
 import { fitWindow } from '@wakeloom/tracker/kinematics/fit-window';
 import type { Prior, StageInput } from '@wakeloom/tracker/pipeline/stages';
 import { resolveRun } from '@wakeloom/tracker/run/resolve';
@@ -30,13 +32,28 @@ async function* oneByOne(block: LinkedBlock): AsyncGenerator<LinkedBlock> {
   for (let k = 0; k < block.number.length; k += 5) yield sliceFrames(block, k, Math.min(k + 5, block.number.length));
 }
 
+/** The block several times, each time later: frames and pathlines of their own. */
+async function* repeated(block: LinkedBlock, times: number): AsyncGenerator<LinkedBlock> {
+  const frames = block.number[block.number.length - 1]! + 10;
+  for (let n = 0; n < times; n++) {
+    for await (const piece of oneByOne(block)) {
+      yield {
+        ...piece,
+        number: piece.number.map((number) => number + n * frames),
+        time: piece.time.map((time) => time + (n * frames) / 100),
+        pathline: piece.pathline.map((id) => (id < 0 ? id : id + 10_000 * n)),
+      };
+    }
+  }
+}
+
 async function gather(samples: AsyncIterable<SampleBlock>): Promise<SampleBlock[]> {
   const all: SampleBlock[] = [];
   for await (const one of samples) all.push(one);
   return all;
 }
 
-// 1700 particles over 80 frames: more than two cores of 60 000 rows.
+// 1700 particles over 80 frames: several chunks of the fit.
 const block = madeTracks({
   seed: 'stage',
   frames: 80,
@@ -46,7 +63,7 @@ const block = madeTracks({
 });
 
 describe('fit stage', () => {
-  it('gives every linked detection once, in order, the same here and farmed out', async () => {
+  it('gives every linked detection once, in order, the same here and in another thread', async () => {
     const input = stageInput();
     const whole = fitWindow(block, { from: 0, to: block.number.length }, fitParameters(input.settings, prior));
     const progress: number[] = [];
@@ -58,31 +75,42 @@ describe('fit stage', () => {
     expect(here.flatMap((one) => Array.from(one.detection))).toEqual(Array.from(whole.detection));
     expect(here.flatMap((one) => Array.from(one.u))).toEqual(Array.from(whole.u));
     expect(progress.at(-1)).toBe(block.number.length);
-    // A runner whose later windows are done first.
+    // Another thread whose first answers come late: what lies with it stays bounded, and the samples are the same.
     let waiting = 0;
     let most = 0;
     let calls = 0;
-    const late = await gather(
-      fitStage(stageInput({ threads: 3, bytes: 2 ** 40 }), oneByOne(block), async (window, core, parameters) => {
-        calls++;
-        waiting++;
+    const start: StartRemoteFit = (parameters) => {
+      const fit = createFrameFit(parameters);
+      let before: Promise<unknown> = Promise.resolve();
+      return (block) => {
+        const rows = block === null ? 0 : rowCount(block);
+        waiting += rows;
         most = Math.max(most, waiting);
-        const turns = calls === 1 ? 20 : 0;
-        for (let k = 0; k < turns; k++) await new Promise((resolve) => setImmediate(resolve));
-        waiting--;
-        return fitWindow(window, core, parameters);
-      }),
-    );
-    expect(late.flatMap((one) => Array.from(one.flags))).toEqual(Array.from(whole.flags));
-    expect(late.flatMap((one) => Array.from(one.uSe))).toEqual(Array.from(whole.uSe));
-    expect(most).toBeGreaterThan(1);
-    expect(most).toBeLessThanOrEqual(3);
+        const samples = [...(block === null ? fit.finish() : fit.add(block))].filter((one) => one !== null);
+        // The first answer waits until many more frames lie here, and the others wait for it.
+        const first = ++calls === 1;
+        const answer = before.then(async () => {
+          do await new Promise((resolve) => setImmediate(resolve));
+          while (first && waiting < 300_000);
+          waiting -= rows;
+          return samples;
+        });
+        before = answer;
+        return answer;
+      };
+    };
+    const late = await gather(fitStage(stageInput({ threads: 2 }), repeated(block, 6), start));
+    const alone = await gather(fitStage(stageInput(), repeated(block, 6)));
+    expect(late.flatMap((one) => Array.from(one.flags))).toEqual(alone.flatMap((one) => Array.from(one.flags)));
+    expect(late.flatMap((one) => Array.from(one.uSe))).toEqual(alone.flatMap((one) => Array.from(one.uSe)));
+    expect(most).toBeGreaterThanOrEqual(300_000);
+    expect(most).toBeLessThan(500_000);
   });
 
   it('an abort ends it with run/aborted, a failing runner with its own error', async () => {
     const controller = new AbortController();
     const aborted = gather(
-      fitStage(stageInput({ signal: controller.signal }), oneByOne(block), async () => {
+      fitStage(stageInput({ signal: controller.signal }), oneByOne(block), () => async () => {
         controller.abort();
         throw new Error('worker gone');
       }),
@@ -93,7 +121,9 @@ describe('fit stage', () => {
     await expect(gather(fitStage(stageInput({ signal: stopped.signal }), oneByOne(block)))).rejects.toMatchObject({
       code: 'run/aborted',
     });
-    const failing = gather(fitStage(stageInput(), oneByOne(block), () => Promise.reject(new Error('worker gone'))));
+    const failing = gather(
+      fitStage(stageInput(), oneByOne(block), () => () => Promise.reject(new Error('worker gone'))),
+    );
     await expect(failing).rejects.toThrow('worker gone');
   });
 

@@ -7,7 +7,7 @@ import { joinBlocks } from './rolling-frames.js';
 
 /**
  * Spans that are tried: below 5 a fit smooths nothing; at 21 the noise of the velocity is down to 0.036 sigma a frame,
- * and the windows of the fit stage, three overlaps of 71 frames, are as long as its memory allows.
+ * and the fit stage holds some 110 frames, which is as long as its memory allows.
  */
 export const SHORTEST_SPAN = 5;
 export const LONGEST_SPAN = 21;

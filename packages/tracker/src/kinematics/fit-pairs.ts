@@ -5,7 +5,7 @@ import { linkFlag } from '../screening/flags.js';
 import { MedianScreen } from '../screening/normalised-median.js';
 import type { FitParameters } from './fit-parameters.js';
 import type { CoreRange } from './fit-window.js';
-import { MARK } from './neighbours-of-frame.js';
+import { MARK } from './marks.js';
 import { sampleColumns } from './sample-columns.js';
 
 /**

@@ -1,36 +1,44 @@
 import type { LinkedBlock, SampleBlock } from '../core/columns.js';
+import { rowCount } from '../core/columns.js';
 import type { RunContext } from '../core/context.js';
 import type { StageInput } from '../pipeline/stages.js';
+import { createFrameFit } from './create-frame-fit.js';
 import type { FitParameters } from './fit-parameters.js';
-import { fitLag, fitParameters } from './fit-parameters.js';
-import { FitSpace } from './fit-space.js';
-import type { CoreRange } from './fit-window.js';
-import { fitWindowInSteps } from './fit-window.js';
+import { fitParameters } from './fit-parameters.js';
+import type { FrameFit } from './frame-fit.js';
 import { copyBlock } from './rolling-frames.js';
-import type { FitTask } from './window-cutter.js';
-import { cutWindows, windowBytes } from './window-cutter.js';
-
-/** Rows of a core at least: enough that handing a window over costs little against fitting it. */
-const CORE_ROWS = 60_000;
-
-/** Runs `fitWindow` somewhere, perhaps in a worker thread; the window is given away. */
-export type FitRunner = (window: LinkedBlock, core: CoreRange, parameters: FitParameters) => Promise<SampleBlock>;
 
 /**
- * The fit stage: linked blocks in frame order to samples in frame order. Cuts the stream into windows with overlap
- * and has each fitted by `run`, up to `context.budget.threads` at a time and within half the budget of bytes; results come in order and do not depend on
- * the cuts or the threads. Without `run` the kernel works here, with a breath every few ms. Memory: the windows in
- * flight, each three to four times the lag long, about 120 bytes a row.
+ * Rows that may lie with another thread unanswered: it works through some 200 000 at once (six frames at least) and is
+ * to find the next ones waiting then. One block more may be under way.
+ */
+const ROWS_AHEAD = 400_000;
+
+/**
+ * A fit that goes on in another thread: takes the next frames (null: there are no more), which are given away, and
+ * resolves to the samples that are finished by then. Calls are answered in order.
+ */
+export type RemoteFit = (block: LinkedBlock | null) => Promise<readonly SampleBlock[]>;
+
+/** Starts such a fit. */
+export type StartRemoteFit = (parameters: FitParameters) => RemoteFit;
+
+/**
+ * The fit stage: linked blocks in frame order to samples in frame order. With `start` the fit runs in another thread,
+ * while this one reads, links and stores; without it here, with a breath every few ms. The samples are the same.
+ * Memory: that of the fit (`RollingFit`), and 32 bytes for each row that lies with the other thread.
  */
 export async function* fitStage(
   input: StageInput,
   blocks: AsyncIterable<LinkedBlock>,
-  run?: FitRunner,
+  start?: StartRemoteFit,
 ): AsyncGenerator<SampleBlock> {
   const { context } = input;
   const parameters = fitParameters(input.settings, input.prior);
-  const windows = cutWindows(blocks, fitLag(parameters), CORE_ROWS);
-  const fitted = run === undefined ? fitHere(windows, parameters, context) : farmOut(windows, parameters, context, run);
+  const fitted =
+    start === undefined
+      ? fitHere(blocks, createFrameFit(parameters), context)
+      : fitElsewhere(blocks, start(parameters), context);
   let frames = 0;
   for await (const samples of fitted) {
     frames += samples.number.length;
@@ -39,58 +47,56 @@ export async function* fitStage(
   }
 }
 
-/** One window after the other, on views of the held frames. */
 async function* fitHere(
-  windows: AsyncIterable<FitTask>,
-  parameters: FitParameters,
+  blocks: AsyncIterable<LinkedBlock>,
+  fit: FrameFit,
   context: RunContext,
 ): AsyncGenerator<SampleBlock> {
-  const space = new FitSpace();
-  for await (const { window, core } of windows) {
-    const steps = fitWindowInSteps(window, core, parameters, space);
-    for (;;) {
-      await context.breathe();
-      const step = steps.next();
-      if (step.done) {
-        yield step.value;
-        break;
-      }
-    }
+  await context.breathe();
+  for await (const block of blocks) yield* breathing(fit.add(block), context);
+  yield* breathing(fit.finish(), context);
+}
+
+async function* breathing(
+  steps: Generator<SampleBlock | null, void>,
+  context: RunContext,
+): AsyncGenerator<SampleBlock> {
+  for (const samples of steps) {
+    if (samples !== null) yield samples;
+    await context.breathe();
   }
 }
 
-/** Copies of windows to `run`, results in order. */
-async function* farmOut(
-  windows: AsyncIterable<FitTask>,
-  parameters: FitParameters,
+async function* fitElsewhere(
+  blocks: AsyncIterable<LinkedBlock>,
+  fit: RemoteFit,
   context: RunContext,
-  run: FitRunner,
 ): AsyncGenerator<SampleBlock> {
-  const flight: { readonly result: Promise<SampleBlock>; readonly bytes: number }[] = [];
-  let held = 0;
-  const deliver = async (): Promise<SampleBlock> => {
-    const { result, bytes } = flight.shift()!;
-    held -= bytes;
-    return result;
+  const flight: { readonly samples: Promise<readonly SampleBlock[]>; readonly rows: number }[] = [];
+  let ahead = 0;
+  const send = (block: LinkedBlock | null): void => {
+    const samples = fit(block);
+    // Awaited in its turn; until then a failure must not count as unhandled.
+    samples.catch(() => {});
+    const rows = block === null ? 0 : rowCount(block);
+    flight.push({ samples, rows });
+    ahead += rows;
+  };
+  const next = async (): Promise<readonly SampleBlock[]> => {
+    const { samples, rows } = flight.shift()!;
+    const answer = await samples;
+    ahead -= rows;
+    return answer;
   };
   try {
-    for await (const { window, core } of windows) {
+    for await (const block of blocks) {
       await context.breathe();
-      const bytes = windowBytes(window);
-      while (
-        flight.length > 0 &&
-        (flight.length >= context.budget.threads || held + bytes > context.budget.bytes / 2)
-      ) {
-        yield await deliver();
-      }
-      const result = run(copyBlock(window), core, parameters);
-      // Awaited in its turn; until then a failure must not count as unhandled.
-      result.catch(() => {});
-      flight.push({ result, bytes });
-      held += bytes;
+      send(copyBlock(block));
+      while (ahead > ROWS_AHEAD) yield* await next();
     }
-    while (flight.length > 0) yield await deliver();
+    send(null);
+    while (flight.length > 0) yield* await next();
   } finally {
-    await Promise.allSettled(flight.map(({ result }) => result));
+    await Promise.allSettled(flight.map(({ samples }) => samples));
   }
 }

@@ -1,4 +1,3 @@
-import type { LinkedBlock } from '../core/columns.js';
 import type { FitParameters } from './fit-parameters.js';
 import { fewestInFit, fitReach } from './fit-parameters.js';
 import type { FitWeights } from './local-fit.js';
@@ -17,15 +16,15 @@ export const REFIT = {
 const LEAST_REDUNDANCY = 1e-6;
 
 /**
- * Fits one pathline after the other. The columns below hold the pathline loaded last, one entry a sample of the
- * window in frame order; buffers are kept from pathline to pathline. Mutable: one fitter a window.
+ * Fits one pathline after the other. The columns below hold the pathline that the caller has loaded last, one entry a
+ * sample in frame order; buffers are kept from pathline to pathline. Mutable: one fitter a user.
  */
 export class PathlineFitter {
   readonly parameters: FitParameters;
   readonly deep: boolean;
   /** Samples loaded. */
   count = 0;
-  /** Row of the window, frame index there, frame number, time, measured position. */
+  /** Loaded by the caller: row and place of the frame among those held, frame number, time, measured position. */
   readonly row: Uint32Array;
   readonly index: Uint32Array;
   readonly frame: Int32Array;
@@ -38,7 +37,7 @@ export class PathlineFitter {
   readonly high: Int32Array;
   readonly reachFirst: Int32Array;
   readonly reachLast: Int32Array;
-  /** Samples that take no part in fits. Zero after `load`. */
+  /** Loaded by the caller: 1 for samples that take no part in `refit`. */
   readonly excluded: Uint8Array;
   /** Results: position, velocity, acceleration per axis; roots of the noise gains. */
   readonly px: Float64Array;
@@ -60,7 +59,7 @@ export class PathlineFitter {
   private readonly table: WeightTable;
   private readonly members: Int32Array;
 
-  /** `longest`: most samples of one pathline in the window. */
+  /** `longest`: most samples loaded at once. */
   constructor(parameters: FitParameters, deep: boolean, longest: number) {
     this.parameters = parameters;
     this.deep = deep;
@@ -96,25 +95,6 @@ export class PathlineFitter {
     const most = Math.max(parameters.span, this.fewest + 1);
     this.table = new WeightTable(most, parameters.order, parameters.interval);
     this.members = new Int32Array(most);
-  }
-
-  /** Takes the samples `rows[from .. to - 1]` of a pathline; `frameOf`: frame index of each row of the window. */
-  load(window: LinkedBlock, frameOf: Uint32Array, rows: Uint32Array, from: number, to: number): void {
-    const n = to - from;
-    this.count = n;
-    const { row, index, frame, time, x, y, z, excluded, deep } = this;
-    for (let i = 0; i < n; i++) {
-      const r = rows[from + i]!;
-      const k = frameOf[r]!;
-      row[i] = r;
-      index[i] = k;
-      frame[i] = window.number[k]!;
-      time[i] = window.time[k]!;
-      x[i] = window.x[r]!;
-      y[i] = window.y[r]!;
-      if (deep) z[i] = window.z[r]!;
-      excluded[i] = 0;
-    }
   }
 
   /**

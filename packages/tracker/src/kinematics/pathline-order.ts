@@ -93,11 +93,3 @@ function hash(id: number): number {
   const mixed = Math.imul(id, 0x9e3779b1);
   return mixed ^ (mixed >>> 15);
 }
-
-/** Frame index of every row of a window. [rows], a column of `space` */
-export function frameOfRows(window: LinkedBlock, space: FitSpace): Uint32Array {
-  const frames = window.number.length;
-  const of = space.uint32('frame', rowCount(window));
-  for (let k = 0; k < frames; k++) of.fill(k, window.offsets[k]!, window.offsets[k + 1]!);
-  return of;
-}

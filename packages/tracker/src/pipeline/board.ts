@@ -7,7 +7,7 @@ import type { CalibrationTally } from '../detections/calibrate.js';
 import type { Dump, DumpScan } from '../detections/dump.js';
 import type { FarAwayTally, FieldLimits } from '../detections/far-away.js';
 import type { GridResult } from '../eulerian/grid.js';
-import type { FitRunner } from '../kinematics/fit-stage.js';
+import type { StartRemoteFit } from '../kinematics/fit-stage.js';
 import type { GivenTally } from '../linking/given-pathlines.js';
 import type { LinkTally } from '../linking/linker.js';
 import type { ResolvedRun } from '../run/settings.js';
@@ -28,8 +28,8 @@ export interface RunTools {
   readonly hdf5: Hdf5Opener | null;
   readonly hasher: HasherFactory;
   readonly place: ResultPlace;
-  /** Runs fits elsewhere; absent: in this thread. */
-  readonly fit?: FitRunner;
+  /** Starts the fit in another thread; absent: in this one. */
+  readonly fit?: StartRemoteFit;
   readonly host: { readonly name: string; readonly platform: string; readonly runtime: string };
   /** Wall clock for provenance only: ISO 8601, and monotonic seconds. */
   readonly clock: { now(): string; seconds(): number };

@@ -1,6 +1,5 @@
 import type { LinkedBlock, SampleBlock } from '../core/columns.js';
 import type { FitParameters } from '../kinematics/fit-parameters.js';
-import type { CoreRange } from '../kinematics/fit-window.js';
 import type { RunRequest } from '../pipeline/board.js';
 import type { ResolvedRun } from '../run/settings.js';
 import type { RunRecord } from '../store/run-record.js';
@@ -10,11 +9,15 @@ export type SourceRef =
   | { readonly kind: 'path'; readonly path: string }
   | { readonly kind: 'blob'; readonly blob: Blob; readonly name: string };
 
-/** Pure kernels, which the coordinating worker hands to the others. Their buffers are meant to be moved. */
+/** Work that the coordinating worker gives to the others. Buffers are meant to be moved. */
 export type KernelOperations = {
-  'fit-window': {
-    readonly args: { readonly window: LinkedBlock; readonly core: CoreRange; readonly parameters: FitParameters };
-    readonly value: SampleBlock;
+  /**
+   * The next frames of a fit that goes on in the worker, null for none any more; the samples finished by then. A fit is
+   * begun by the first call that names it, and over with the call without a block.
+   */
+  'fit-frames': {
+    readonly args: { readonly fit: string; readonly parameters: FitParameters; readonly block: LinkedBlock | null };
+    readonly value: readonly SampleBlock[];
   };
 };
 

@@ -1,16 +1,17 @@
 import type { ByteSource, HasherFactory } from '../core/bytes.js';
+import type { SampleBlock } from '../core/columns.js';
 import type { RunContext } from '../core/context.js';
 import { abortedError } from '../core/errors.js';
 import type { Hdf5Opener } from '../core/hdf5.js';
 import type { ResultPlace } from '../core/result-place.js';
-import type { FitRunner } from '../kinematics/fit-stage.js';
-import { fitWindowInSteps } from '../kinematics/fit-window.js';
+import { createFrameFit } from '../kinematics/create-frame-fit.js';
+import type { StartRemoteFit } from '../kinematics/fit-stage.js';
+import type { FrameFit } from '../kinematics/frame-fit.js';
 import type { RunTools } from '../pipeline/board.js';
-import { createWorkerClient } from './client.js';
+import { createWorkerClient, type WorkerClient } from './client.js';
 import type { StartWorker } from './handle.js';
 import type { OperationBodies } from './host.js';
 import type { KernelOperations, RunOperations, SourceRef } from './operation-table.js';
-import { createPool, type KernelRunner } from './pool.js';
 import { buffersIn } from './transfer.js';
 
 /** What the operations need from where they run; `entry-node.ts` and `entry-web.ts` differ in this and nowhere else. */
@@ -24,26 +25,52 @@ export interface Platform {
   readonly host: RunTools['host'];
 }
 
-const kernelBodies: OperationBodies<KernelOperations, Platform> = {
-  async 'fit-window'({ window, core, parameters }, context) {
-    const steps = fitWindowInSteps(window, core, parameters);
-    for (;;) {
-      await context.breathe();
-      const step = steps.next();
-      if (step.done) return { value: step.value, transfer: buffersIn(step.value) };
-    }
-  },
-};
+/** Fits that go on in this worker by their name; each call waits for the one before. */
+interface GoingFit {
+  readonly fit: FrameFit;
+  done: Promise<void>;
+}
 
-/** Bodies of what every tracker worker answers. */
+function kernelBodies(): OperationBodies<KernelOperations, Platform> {
+  const fits = new Map<string, GoingFit>();
+  return {
+    async 'fit-frames'({ fit: name, parameters, block }, context) {
+      const going = fits.get(name) ?? { fit: createFrameFit(parameters), done: Promise.resolve() };
+      fits.set(name, going);
+      const before = going.done;
+      let end = (): void => {};
+      going.done = new Promise((resolve) => {
+        end = resolve;
+      });
+      await before;
+      try {
+        const value: SampleBlock[] = [];
+        for (const samples of block === null ? going.fit.finish() : going.fit.add(block)) {
+          if (samples !== null) value.push(samples);
+          await context.breathe();
+        }
+        if (block === null) fits.delete(name);
+        return { value, transfer: value.flatMap(buffersIn) };
+      } catch (error) {
+        fits.delete(name);
+        throw error;
+      } finally {
+        end();
+      }
+    },
+  };
+}
+
+/** Bodies of what every tracker worker answers; to be used once in a worker. */
 export const runBodies: OperationBodies<RunOperations, Platform> = {
-  ...kernelBodies,
+  ...kernelBodies(),
   async process({ request, sources, out }, context, platform) {
     // Loaded here, so that a worker that only runs kernels stays small.
     const loaded = Promise.all([import('../pipeline/process-run.js'), platform.hasher(), platform.hdf5()]);
     const [{ processRun }, hasher, hdf5] = await unlessAborted(loaded, context.signal);
     const place = await platform.openPlace(out);
-    const helpers = startHelpers(platform.startHelper, context.budget.threads - 1);
+    const helper =
+      context.budget.threads > 1 ? createWorkerClient<KernelOperations>(platform.startHelper('tracker 2')) : null;
     const opened: ByteSource[] = [];
     try {
       for (const ref of sources) opened.push(await platform.openSource(ref));
@@ -52,13 +79,13 @@ export const runBodies: OperationBodies<RunOperations, Platform> = {
         hdf5,
         hasher,
         place,
-        fit: helpers === null ? undefined : fitIn(helpers, context),
+        fit: helper === null ? undefined : fitIn(helper, context),
         host: platform.host,
         clock: { now: () => new Date().toISOString(), seconds: () => performance.now() / 1000 },
       };
       return { value: await processRun(request, tools, context), transfer: [] };
     } finally {
-      await Promise.all([helpers?.terminate(), ...opened.map((source) => source.close())]);
+      await Promise.all([helper?.terminate(), ...opened.map((source) => source.close())]);
     }
   },
 };
@@ -73,20 +100,12 @@ function unlessAborted<Value>(value: Promise<Value>, signal: AbortSignal): Promi
   });
 }
 
-/** A pool of further workers; null where there is to be none, and the coordinator runs the kernels itself. */
-function startHelpers(start: StartWorker, count: number): KernelRunner<KernelOperations> | null {
-  if (!(count >= 1)) return null;
-  const clients = Array.from({ length: count }, (_, i) =>
-    createWorkerClient<KernelOperations>(start(`tracker ${i + 2}`)),
-  );
-  return createPool(clients);
-}
-
-function fitIn(helpers: KernelRunner<KernelOperations>, context: RunContext): FitRunner {
-  return (window, core, parameters) =>
-    helpers.run(
-      'fit-window',
-      { window, core, parameters },
-      { signal: context.signal, transfer: buffersIn(window), bytes: context.budget.bytes },
+/** The fit of a run in another worker. */
+function fitIn(helper: WorkerClient<KernelOperations>, context: RunContext): StartRemoteFit {
+  return (parameters) => (block) =>
+    helper.run(
+      'fit-frames',
+      { fit: 'run', parameters, block },
+      { signal: context.signal, transfer: block === null ? [] : buffersIn(block), bytes: context.budget.bytes },
     );
 }
