@@ -37,6 +37,11 @@ export interface ResultPlace {
   readonly hdf5: Hdf5Build;
   readonly scratch: Scratch;
   readonly hasher: HasherFactory;
+  /**
+   * A cheap checksum to hold what was read back against what was written; absent: the digest itself serves. It need not be
+   * safe against intent, only against disks.
+   */
+  readonly checksum?: HasherFactory;
   /** Path under which the HDF5 build opens the file. */
   hdf5Path(file: string): string;
   /** Opens a file that is there. */

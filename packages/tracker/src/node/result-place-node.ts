@@ -19,7 +19,7 @@ import { join } from 'node:path';
 import { WakeloomError } from '../core/errors.js';
 import type { PlaceFile, ResultPlace } from '../core/result-place.js';
 import { writeError } from './file-errors.js';
-import { nodeHasher } from './hasher.js';
+import { nodeChecksum, nodeHasher } from './hasher.js';
 import { nodeHdf5Build } from './hdf5-build.js';
 import { nodeScratch } from './scratch.js';
 
@@ -43,6 +43,7 @@ export async function openNodeResultPlace(folder: string, options: { create: boo
     hdf5,
     scratch: nodeScratch(folder),
     hasher: nodeHasher,
+    checksum: nodeChecksum,
     hdf5Path: path,
     open: (file) => openPlaceFile(path(file), guard),
     freeBytes() {

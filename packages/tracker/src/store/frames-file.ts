@@ -2,6 +2,7 @@ import { FLAG } from '../core/columns.js';
 import type { RunContext } from '../core/context.js';
 import type { ResultPlace } from '../core/result-place.js';
 import { columnAttributes, fileAttributes, type ResultUnits, THINNING, thinningAttributes } from './file-attributes.js';
+import { gatherValues } from './move-values.js';
 import { createNetcdf, type NetcdfWriter } from './netcdf-writer.js';
 import type { Numbering } from './numbering.js';
 import { type Kept, LEFT_OUT } from './pathlines-file.js';
@@ -21,6 +22,8 @@ export interface FramesInput {
   readonly kept: Kept | null;
   /** 1 for each stuck pathline. [pathlines] */
   readonly stuck: Uint8Array;
+  /** Samples of kept pathlines in each frame, by index of the frame. */
+  readonly sizes: Int32Array;
   readonly columns: readonly SampleColumn[];
   readonly keep: 'all' | 'thinned';
   readonly units: ResultUnits;
@@ -38,11 +41,10 @@ export function inOverview(row: number, rows: number): boolean {
 /**
  * Writes frames.nc from the spill: CF indexed ragged array, so that each sample has its own `sample_time`;
  * `first_row` and `row_size` by frame. Walks the spill
- * twice (the first time the pathline numbers only). Resolves to the content digest.
+ * once. Resolves to the content digest.
  */
 export async function writeFramesFile(place: ResultPlace, input: FramesInput, context: RunContext): Promise<string> {
-  const { spilled, numbering, keep } = input;
-  const sizes = await keptPerFrame(input, context);
+  const { spilled, numbering, keep, sizes } = input;
   const frameCount = sizes.length;
   const shown = (frame: number) => keep === 'all' || frame % THINNING === 0;
   const indices: number[] = [];
@@ -85,19 +87,6 @@ export async function writeFramesFile(place: ResultPlace, input: FramesInput, co
     file.abandon();
     throw error;
   }
-}
-
-/** Samples of kept pathlines in each frame. */
-async function keptPerFrame({ spilled, numbering }: FramesInput, context: RunContext): Promise<Int32Array> {
-  const sizes = new Int32Array(spilled.frameRows.length);
-  for await (const { order, pathline, frames } of walkBatches(spilled, context)) {
-    for (const { frame, first, end } of frames) {
-      let count = 0;
-      for (let i = first; i < end; i++) if (numbering.final[pathline[order[i]]] >= 0) count++;
-      sizes[frame] += count;
-    }
-  }
-  return sizes;
 }
 
 interface FrameBatch {
@@ -189,7 +178,7 @@ async function writeSamples(
       const values = new Type(read, 0, batch.rows);
       const out = gathered[c].subarray(0, used);
       readBatch(spilled, batch, spilled.stored.indexOf(column), 0, values);
-      for (let i = 0; i < used; i++) out[i] = values[picked[i]];
+      gatherValues(values, picked, used, out);
       if (column.key === 'flags') for (let i = 0; i < used; i++) if (stuck[numbers[i]] === 1) out[i] |= FLAG.stuck;
       let at = firstFew;
       for (let i = 0; i < used; i++) if (inOverview(firstRow + i, samples)) few[c][at++] = out[i];

@@ -43,7 +43,7 @@ export interface NetcdfWriter {
 interface OpenVariable {
   readonly type: Hdf5Type;
   readonly shape: readonly number[];
-  readonly digest: VariableDigest;
+  readonly digests: readonly VariableDigest[];
   /** Values of one row, and rows written. */
   readonly rowValues: number;
   written: number;
@@ -59,9 +59,12 @@ interface OpenVariable {
  * Codes: `store/disk-full`, `store/read-back`, `store/not-writable`.
  */
 export function createNetcdf(place: ResultPlace, file: string, attributes: Attributes): NetcdfWriter {
-  const { hdf5, hasher } = place;
+  const { hdf5, hasher, checksum } = place;
   const partial = PARTIAL_PREFIX + file;
   const ledger = openLedger(hasher);
+  // The digest is taken once, of what is written; a cheaper sum holds what is read back against it.
+  const check = checksum === undefined ? ledger : openLedger(checksum);
+  const ledgers = checksum === undefined ? [ledger] : [ledger, check];
   const dimensions = new Map<string, { size: number; made: boolean }>();
   const variables = new Map<string, OpenVariable>();
   // Made by the place first, which says why when it cannot; HDF5 only prints.
@@ -80,7 +83,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
       // HDF5 has no text without characters.
       if (value === '') continue;
       writeAttribute(owner === '/' ? handle : (handle.get(owner) as AttributeTarget), name, value);
-      ledger.attribute(owner, name, value);
+      for (const each of ledgers) each.attribute(owner, name, value);
     }
   };
   const closeMetadata = () => {
@@ -150,7 +153,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
       variables.set(name, {
         type,
         shape,
-        digest: ledger.variable(name, type, shape, options.dimensions),
+        digests: ledgers.map((each) => each.variable(name, type, shape, options.dimensions)),
         rowValues: shape.slice(1).reduce((product, size) => product * size, 1),
         written: 0,
         position: 0,
@@ -168,7 +171,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
       const file = body ?? beginValues();
       if (!reserved) checkRoom(place, bytes.length);
       const done = write(file, variable.position + variable.written * rowBytes, bytes);
-      variable.digest.update(bytes);
+      for (const digest of variable.digests) digest.update(bytes);
       variable.written += rows;
       bytesWritten += bytes.length;
       return done;
@@ -179,16 +182,16 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
         if (variable.written !== variable.shape[0]) {
           throw new Error(`netcdf: ${name} has ${variable.written} of ${variable.shape[0]} rows`);
         }
-        variable.digest.end();
+        for (const digest of variable.digests) digest.end();
       }
       await Promise.allSettled(underWay);
       if (failure !== null) throw failure.error;
-      const expected = ledger.hex();
+      const expected = check.hex();
       whole.close();
       await place.sync(partial);
-      const found = await readBackDigest(place, partial, context);
+      const found = await readBackDigest(place, partial, context, checksum);
       if (found !== expected) throw readBackError(place, file, bytesWritten, expected, found);
-      return expected;
+      return ledger.hex();
     },
     abandon() {
       closeMetadata();
@@ -203,7 +206,7 @@ export function createNetcdf(place: ResultPlace, file: string, attributes: Attri
     if (dimension === undefined || dimension.made) return;
     createEmpty(hdf5, handle.file_id, name, 'f32', [dimension.size]);
     hdf5.module.set_scale(handle.file_id, `/${name}`, SIZE_ONLY + String(dimension.size).padStart(10));
-    ledger.dimension(name, dimension.size);
+    for (const each of ledgers) each.dimension(name, dimension.size);
     dimension.made = true;
   }
 }

@@ -1,4 +1,5 @@
 import type * as H5 from 'h5wasm';
+import type { HasherFactory } from '../core/bytes.js';
 import type { RunContext } from '../core/context.js';
 import type { Hdf5Type } from '../core/hdf5.js';
 import type { ResultPlace } from '../core/result-place.js';
@@ -11,15 +12,21 @@ const WINDOW = 1 << 20;
 /**
  * Content digest of a NetCDF file as it lies in the folder (recipe in digest.ts): what a file says, against what was
  * meant to be written. Reads every byte once, in a window of 1 MB. A file that cannot be opened gives `unreadable`.
+ * `hasher`: another one, for a sum to compare with one taken in the same way.
  */
-export async function readBackDigest(place: ResultPlace, file: string, context: RunContext): Promise<string> {
+export async function readBackDigest(
+  place: ResultPlace,
+  file: string,
+  context: RunContext,
+  hasher: HasherFactory = place.hasher,
+): Promise<string> {
   const { hdf5 } = place;
   const handle = new hdf5.File(place.hdf5Path(file), 'r');
   if (handle.file_id < 0n) return 'unreadable';
   let windowBytes = WINDOW;
   let window = hdf5.module._malloc(windowBytes);
   try {
-    const ledger = openLedger(place.hasher);
+    const ledger = openLedger(hasher);
     readAttributes(handle, '/', ledger);
     for (const name of handle.keys()) {
       const dataset = handle.get(name) as H5.Dataset;

@@ -155,7 +155,9 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
       shortest: options.stuckFewest ?? options.shortest,
     };
     const statistics = sampleStatistics(options.frameStep);
-    for await (const rows of transpose(spilled, numbering, columns, context, options.working?.groupBytes)) {
+    const sizes = new Int32Array(spilled.frameRows.length);
+    const groups = transpose(spilled, numbering, columns, sizes, context, options.working?.groupBytes);
+    for await (const rows of groups) {
       flagStuck(rows, rule, stuck);
       statistics.add(rows);
       // The rows are written while they are looked at.
@@ -169,7 +171,7 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     pathlinesFile = null;
     rewind(numbering, spilled.counts);
     if (withFrames) {
-      const input = { spilled, numbering, kept, stuck, columns: frameColumns, keep: keepFrames, units, title };
+      const input = { spilled, numbering, kept, stuck, sizes, columns: frameColumns, keep: keepFrames, units, title };
       digests['frames.nc'] = await writeFramesFile(place, input, context);
     }
     open.discard();

@@ -6,6 +6,7 @@ import type { ResultPlace } from '../core/result-place.js';
 import { sortByBucket } from './bucket-sort.js';
 import { checkRoom } from './disk-space.js';
 import { type Growable, growable } from './growable.js';
+import { scatterValues } from './move-values.js';
 import type { SampleColumn, SampleKey } from './sample-columns.js';
 
 /** Rows sorted and written at once: about 13 MB in the plane, and again as much while they are sorted. */
@@ -154,7 +155,7 @@ function bytesOf(array: Column): Uint8Array {
 function scatter(source: Column, slots: Int32Array, room: Float64Array, rows: number): Column {
   const Type = source.constructor as new (buffer: ArrayBufferLike, offset: number, length: number) => Column;
   const target = new Type(room.buffer, 0, rows);
-  for (let i = 0; i < rows; i++) target[slots[i]] = source[i];
+  scatterValues(source, slots, rows, target);
   return target;
 }
 

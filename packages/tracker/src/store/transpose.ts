@@ -1,5 +1,6 @@
 import type { RunContext } from '../core/context.js';
 import { BUCKET_PATHLINES } from './bucket-sort.js';
+import { scatterValues } from './move-values.js';
 import type { Numbering } from './numbering.js';
 import type { PathlineRows } from './pathline-rows.js';
 import type { SampleColumn } from './sample-columns.js';
@@ -23,12 +24,13 @@ interface Group {
  * From batches in frame order to whole pathlines: yields groups of consecutive pathlines, rows of each in frame
  * order. Every batch is read once for each group it touches; with the batches sorted by bucket that is, all in all,
  * a little more than one reading of the spill. Memory: one group and a window of 1 MB. The yielded columns are used
- * again for the next group.
+ * again for the next group. Samples of kept pathlines are counted into `keptPerFrame`, by index of the frame.
  */
 export async function* transpose(
   spilled: Spilled,
   numbering: Numbering,
   columns: readonly SampleColumn[],
+  keptPerFrame: Int32Array,
   context: RunContext,
   groupBytes = GROUP_BYTES,
 ): AsyncGenerator<PathlineRows> {
@@ -47,7 +49,7 @@ export async function* transpose(
     const lastBucket = Math.floor((group.end - 1) / BUCKET_PATHLINES);
     for (const batch of spilled.batches) {
       if (batch.buckets[0] > lastBucket || lastOf(batch.buckets) < firstBucket) continue;
-      gather(spilled, batch, firstBucket, lastBucket, group, numbering, columns, held, windows);
+      gather(spilled, batch, firstBucket, lastBucket, group, numbering, columns, held, windows, keptPerFrame);
       await context.breathe();
     }
     yield rowsOf(group, numbering, spilled, columns, held, pathline);
@@ -105,6 +107,7 @@ function gather(
   columns: readonly SampleColumn[],
   held: readonly Column[],
   windows: Windows,
+  keptPerFrame: Int32Array,
 ): void {
   const from = lowerBound(batch.buckets, firstBucket);
   const to = lowerBound(batch.buckets, lastBucket + 1);
@@ -124,17 +127,25 @@ function gather(
     const values = new Type(windows.bytes, 0, rows);
     readBatch(spilled, batch, index, start, values);
     if (column.key === 'frame') {
-      scatterInto(held[columns.findIndex((each) => each.key === 'time')], target, values, spilled.frameTime.array);
-      scatterInto(out, target, values, spilled.frameNumber.array);
+      const frames = values as Int32Array;
+      const time = held[columns.findIndex((each) => each.key === 'time')] as Float64Array;
+      for (let i = 0; i < rows; i++) if (target[i] >= 0) keptPerFrame[frames[i]]++;
+      scatterTimes(time, target, frames, spilled.frameTime.array);
+      scatterNumbers(out as Int32Array, target, frames, spilled.frameNumber.array);
     } else {
-      for (let i = 0; i < rows; i++) if (target[i] >= 0) out[target[i]] = values[i];
+      scatterValues(values, target, rows, out);
     }
   });
 }
 
-/** Frame indices to what the table holds for them. */
-function scatterInto(out: Column, target: Int32Array, frames: Column, table: Int32Array | Float64Array): void {
-  for (let i = 0; i < target.length; i++) if (target[i] >= 0) out[target[i]] = table[frames[i]];
+/** Frame indices to the times of the frames. */
+function scatterTimes(out: Float64Array, target: Int32Array, frames: Int32Array, times: Float64Array): void {
+  for (let i = 0; i < target.length; i++) if (target[i] >= 0) out[target[i]] = times[frames[i]];
+}
+
+/** Frame indices to the numbers of the frames. */
+function scatterNumbers(out: Int32Array, target: Int32Array, frames: Int32Array, numbers: Int32Array): void {
+  for (let i = 0; i < target.length; i++) if (target[i] >= 0) out[target[i]] = numbers[frames[i]];
 }
 
 function rowsOf(
