@@ -51,6 +51,10 @@ export const storeStage: Stage = {
       const streamed = tools.clock.seconds();
       for await (const block of board.samples!) await writer.add(block);
       seconds['stream'] = tools.clock.seconds() - streamed;
+      // A stream that has ended still holds what it worked with: the linker's and the fit's columns.
+      delete board.detections;
+      delete board.linked;
+      delete board.samples;
       if (board.extent!.samples === 0) throw nothingLinked();
       const { detections } = board.calibration!;
       context.event({
