@@ -44,35 +44,52 @@ const OTHERS = [
 export async function measureCase(one: LinkingCase, places: Places): Promise<CaseResult> {
   const start = performance.now();
   const truth = await madeTruth(one, places);
-  const { block, particle, frame } = truth;
-  const made = performance.now();
-  const care: Record<string, string> = one.care === 'default' ? {} : { care: one.care };
-  const linked = await linkBlock(block, { ...clockOf(one, truth), ...care });
-  const done = performance.now();
-  const bridge = one.pairs ? 0 : BRIDGE;
-  const fewest = one.pairs ? 2 : FEWEST;
-  const score = (pathline: Int32Array) => withErrors(scoreLinks(pathline, particle, frame, bridge, fewest));
-  const risk = emptyPool();
-  const truthLinks = joinedBefore(particle, frame, fewest, bridge + 1);
-  addLinks(risk, joinedBefore(linked.pathline, frame, fewest), truthLinks, linked.risk);
+  const truthSeconds = (performance.now() - start) / 1000;
+  const ours = await measureOurs(one, truth);
   const { care: _ours, ...same } = one;
   const others = cached(places, { oracleAndNearest: same }, [...TRUTH_SOURCES, ...OTHERS], () => {
-    const { flow, noise, oracleSteps: steps, spacing } = truth;
-    const oracle = score(linkByTrueFlow(block, { flow, noise, steps, bridge, depthNoise: DEPTH_NOISE }));
-    const nearest = score(linkToNearest(block, 0.5 * spacing, bridge));
-    const counts = ({ made: links, right, true: all }: CaseScore) => Int32Array.of(links, right, all);
+    const { block, flow, noise, oracleSteps: steps, spacing } = truth;
+    const { bridge } = rulesOf(one);
+    const oracle = scored(one, truth, linkByTrueFlow(block, { flow, noise, steps, bridge, depthNoise: DEPTH_NOISE }));
+    const nearest = scored(one, truth, linkToNearest(block, 0.5 * spacing, bridge));
+    const counts = ({ made, right, true: all }: CaseScore) => Int32Array.of(made, right, all);
     return { oracle: counts(oracle), nearest: counts(nearest) };
   });
   return {
     case: one,
-    detections: particle.length,
-    ours: score(linked.pathline),
+    detections: truth.particle.length,
+    ...ours,
     oracle: fromCounts(others.oracle),
     nearest: fromCounts(others.nearest),
-    risk,
-    truthSeconds: (made - start) / 1000,
-    linkSeconds: (done - made) / 1000,
+    truthSeconds,
   };
+}
+
+/** The linker alone on a dump that is made: its score, its links by their stated risk, its time. */
+export async function measureOurs(
+  one: LinkingCase,
+  truth: MadeTruth,
+): Promise<Pick<CaseResult, 'ours' | 'risk' | 'linkSeconds'>> {
+  const { block, particle, frame } = truth;
+  const care: Record<string, string> = one.care === 'default' ? {} : { care: one.care };
+  const start = performance.now();
+  const linked = await linkBlock(block, { ...clockOf(one, truth), ...care });
+  const linkSeconds = (performance.now() - start) / 1000;
+  const { fewest, bridge } = rulesOf(one);
+  const risk = emptyPool();
+  const trueLinks = joinedBefore(particle, frame, fewest, bridge + 1);
+  addLinks(risk, joinedBefore(linked.pathline, frame, fewest), trueLinks, linked.risk);
+  return { ours: scored(one, truth, linked.pathline), risk, linkSeconds };
+}
+
+/** What counts as a link: no pathline of image pairs has more than two samples, and none crosses a frame. */
+function rulesOf({ pairs }: LinkingCase): { fewest: number; bridge: number } {
+  return pairs ? { fewest: 2, bridge: 0 } : { fewest: FEWEST, bridge: BRIDGE };
+}
+
+function scored(one: LinkingCase, { particle, frame }: MadeTruth, pathline: Int32Array): CaseScore {
+  const { fewest, bridge } = rulesOf(one);
+  return withErrors(scoreLinks(pathline, particle, frame, bridge, fewest));
 }
 
 /** Options of a run with the clock and the scale of the case. */
