@@ -173,7 +173,14 @@ async function writeSamples(
         }
       }
     }
-    const writes = columns.map((column, c) => {
+    let before: Promise<void> | null = null;
+    const append = async (name: string, values: Column) => {
+      // As in pathlines.nc: written while the next one is gathered and hashed.
+      const written = file.append(name, values);
+      await before;
+      before = written;
+    };
+    for (const [c, column] of columns.entries()) {
       const Type = few[c].constructor as new (buffer: ArrayBuffer, offset: number, length: number) => Column;
       const values = new Type(read, 0, batch.rows);
       const out = gathered[c].subarray(0, used);
@@ -182,12 +189,12 @@ async function writeSamples(
       if (column.key === 'flags') for (let i = 0; i < used; i++) if (stuck[numbers[i]] === 1) out[i] |= FLAG.stuck;
       let at = firstFew;
       for (let i = 0; i < used; i++) if (inOverview(firstRow + i, samples)) few[c][at++] = out[i];
-      return file.append(column.name, out);
-    });
-    writes.push(file.append('pathline_index', numbers.subarray(0, used)));
-    if (kept !== null) writes.push(file.append('pathlines_row', fileRows.subarray(0, used)));
-    writes.push(file.append('sample_time', times.subarray(0, used)));
-    await Promise.all(writes);
+      await append(column.name, out);
+    }
+    await append('pathline_index', numbers.subarray(0, used));
+    if (kept !== null) await append('pathlines_row', fileRows.subarray(0, used));
+    await append('sample_time', times.subarray(0, used));
+    await before;
   }
   for (const [index, column] of columns.entries()) await file.append(`overview_${column.name}`, few[index]);
   await file.append('overview_pathline', fewPathline);

@@ -84,12 +84,15 @@ export function openPathlinesFile(
         done++;
         if (thinned) picked.push(k);
       }
-      // Written while the next one is hashed.
-      const writes = columns.map((column) => {
+      // Each is written while the next one is hashed, and no two at a time: they would wait for one another in the system.
+      let before: Promise<void> | null = null;
+      for (const column of columns) {
         const values = rows[column.key];
-        return file.append(column.name, thinned ? pick(values, rows.offsets, picked) : values);
-      });
-      await Promise.all(writes);
+        const written = file.append(column.name, thinned ? pick(values, rows.offsets, picked) : values);
+        await before;
+        before = written;
+      }
+      await before;
     },
     async finish(context) {
       await file.append('pathline', number);
