@@ -2,8 +2,8 @@ import type { Dims, LinkedBlock } from '../core/columns.js';
 import { LastSamples } from './last-samples.js';
 
 /** Rows of a frame and frames of a gap that fit one number of `before` and `after`. */
-const PLACE_BITS = 24;
-const PLACE_MASK = (1 << PLACE_BITS) - 1;
+export const PLACE_BITS = 24;
+export const PLACE_MASK = (1 << PLACE_BITS) - 1;
 const LONGEST_GAP = 127;
 
 type Column = Float64Array | Float32Array | Int32Array | Uint16Array | Uint8Array;

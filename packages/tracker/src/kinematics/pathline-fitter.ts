@@ -13,7 +13,7 @@ export const REFIT = {
 } as const;
 
 /** Below this share of the noise variance a residual says nothing: the fit passes through the sample. */
-const LEAST_REDUNDANCY = 1e-6;
+export const LEAST_REDUNDANCY = 1e-6;
 
 /**
  * Fits one pathline after the other. The columns below hold the pathline that the caller has loaded last, one entry a
@@ -155,23 +155,25 @@ export class PathlineFitter {
     high[i] = hi;
   }
 
+  /** Weights of all samples in the window of sample i, which is set. Borrowed until the next call. */
+  weightsOf(i: number): FitWeights {
+    const { frame, low, high, table, members } = this;
+    const lo = low[i]!;
+    const hi = high[i]!;
+    const n = hi - lo + 1;
+    if (table.even && frame[hi]! - frame[lo]! === n - 1) return table.gapless(n, i - lo);
+    for (let j = 0; j < n; j++) members[j] = lo + j;
+    return table.at(frame, this.time, members, n, i);
+  }
+
   /** Fits samples `from .. to - 1` over all samples of their windows, and takes their residuals; returns the largest of these. */
   fit(from: number, to: number): number {
-    const { frame, low, high, table, members, residual, x, y, z, px, py, pz, deep } = this;
+    const { low, residual, x, y, z, px, py, pz, deep } = this;
     const [sx, sy, sz] = this.parameters.noise;
-    const even = table.even;
     let largest = 0;
     for (let i = from; i < to; i++) {
-      const lo = low[i]!;
-      const hi = high[i]!;
-      const n = hi - lo + 1;
-      let weights: FitWeights;
-      if (even && frame[hi]! - frame[lo]! === n - 1) weights = table.gapless(n, i - lo);
-      else {
-        for (let j = 0; j < n; j++) members[j] = lo + j;
-        weights = table.at(frame, this.time, members, n, i);
-      }
-      this.apply(i, lo, weights);
+      const weights = this.weightsOf(i);
+      this.apply(i, low[i]!, weights);
       const redundancy = 1 - weights.positionGain;
       if (redundancy < LEAST_REDUNDANCY) {
         residual[i] = Number.NaN;

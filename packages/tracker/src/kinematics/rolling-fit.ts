@@ -4,6 +4,7 @@ import { fitFlags, linkFlag } from '../screening/flags.js';
 import { MedianScreen } from '../screening/normalised-median.js';
 import { markOffFit } from '../screening/off-fit.js';
 import { emitSamples } from './emit-samples.js';
+import { EvenFit } from './even-fit.js';
 import type { FitParameters } from './fit-parameters.js';
 import { fitLag, fitReach } from './fit-parameters.js';
 import type { FrameFit } from './frame-fit.js';
@@ -11,6 +12,7 @@ import { HeldFrames } from './held-frames.js';
 import { MARK } from './marks.js';
 import { neighboursInHeld } from './neighbours-in-held.js';
 import { PathlineFitter, REFIT } from './pathline-fitter.js';
+import { WindowPatterns } from './window-patterns.js';
 
 /** Rows fitted between two looks at messages: about 5 ms. */
 const STEP_ROWS = 20_000;
@@ -41,6 +43,7 @@ export class RollingFit implements FrameFit {
   private readonly half: number;
   private readonly screen: MedianScreen;
   private readonly scratch: Float64Array;
+  private readonly even: EvenFit | null;
   private readonly off = new Uint8Array(256);
   private held: HeldFrames | null = null;
   private fitter: PathlineFitter | null = null;
@@ -66,6 +69,7 @@ export class RollingFit implements FrameFit {
       noise: parameters.noise,
     });
     this.scratch = new Float64Array(2 * parameters.span);
+    this.even = WindowPatterns.serve(parameters) ? new EvenFit(parameters) : null;
   }
 
   /** Takes the next frames; samples that are finished come out. The block is borrowed. */
@@ -110,7 +114,8 @@ export class RollingFit implements FrameFit {
     const freed = up(judged - reach, this.freed);
     const screened = up(freed - 1, this.screened);
     const given = up(screened - reach, this.given);
-    yield* this.fitNew(held, this.fitted, fitted);
+    if (this.even === null) yield* this.fitNew(held, this.fitted, fitted);
+    else yield* this.fitEven(held, this.even, this.fitted, fitted);
     this.judge(held, this.judged, judged);
     yield* this.fitWithout(held, MARK.offFit, MARK.offFit, this.freed, freed);
     yield* this.screenFrames(held, this.screened, screened);
@@ -157,6 +162,19 @@ export class RollingFit implements FrameFit {
           done = 0;
           yield null;
         }
+      }
+    }
+  }
+
+  /** The same where the clock is even. */
+  private *fitEven(held: HeldFrames, even: EvenFit, from: number, to: number): Generator<null, void> {
+    let done = 0;
+    for (let k = from; k < to; k++) {
+      even.fitFrame(held, k);
+      done += held.rows[k]!;
+      if (done > STEP_ROWS) {
+        done = 0;
+        yield null;
       }
     }
   }
