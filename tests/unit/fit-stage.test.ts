@@ -28,15 +28,16 @@ function stageInput(options: Parameters<typeof createContext>[0] = {}): StageInp
   return { settings, prior, scan: undefined as unknown as StageInput['scan'], context: createContext(options) };
 }
 
-async function* oneByOne(block: LinkedBlock): AsyncGenerator<LinkedBlock> {
-  for (let k = 0; k < block.number.length; k += 5) yield sliceFrames(block, k, Math.min(k + 5, block.number.length));
+async function* oneByOne(block: LinkedBlock, frames = 5): AsyncGenerator<LinkedBlock> {
+  const all = block.number.length;
+  for (let k = 0; k < all; k += frames) yield sliceFrames(block, k, Math.min(k + frames, all));
 }
 
 /** The block several times, each time later: frames and pathlines of their own. */
 async function* repeated(block: LinkedBlock, times: number): AsyncGenerator<LinkedBlock> {
   const frames = block.number[block.number.length - 1]! + 10;
   for (let n = 0; n < times; n++) {
-    for await (const piece of oneByOne(block)) {
+    for await (const piece of oneByOne(block, 30)) {
       yield {
         ...piece,
         number: piece.number.map((number) => number + n * frames),
@@ -82,7 +83,7 @@ describe('fit stage', () => {
     const start: StartRemoteFit = (parameters) => {
       const fit = createFrameFit(parameters);
       let before: Promise<unknown> = Promise.resolve();
-      return (block) => {
+      const frames = (block: LinkedBlock | null) => {
         const rows = block === null ? 0 : rowCount(block);
         waiting += rows;
         most = Math.max(most, waiting);
@@ -98,6 +99,7 @@ describe('fit stage', () => {
         before = answer;
         return answer;
       };
+      return { frames, release: () => {} };
     };
     const late = await gather(fitStage(stageInput({ threads: 2 }), repeated(block, 6), start));
     const alone = await gather(fitStage(stageInput(), repeated(block, 6)));
@@ -110,10 +112,13 @@ describe('fit stage', () => {
   it('an abort ends it with run/aborted, a failing runner with its own error', async () => {
     const controller = new AbortController();
     const aborted = gather(
-      fitStage(stageInput({ signal: controller.signal }), oneByOne(block), () => async () => {
-        controller.abort();
-        throw new Error('worker gone');
-      }),
+      fitStage(stageInput({ signal: controller.signal }), oneByOne(block), () => ({
+        frames: async () => {
+          controller.abort();
+          throw new Error('worker gone');
+        },
+        release: () => {},
+      })),
     );
     await expect(aborted).rejects.toMatchObject({ message: expect.stringMatching(/worker gone|aborted/) });
     const stopped = new AbortController();
@@ -122,7 +127,10 @@ describe('fit stage', () => {
       code: 'run/aborted',
     });
     const failing = gather(
-      fitStage(stageInput(), oneByOne(block), () => () => Promise.reject(new Error('worker gone'))),
+      fitStage(stageInput(), oneByOne(block), () => ({
+        frames: () => Promise.reject(new Error('worker gone')),
+        release: () => {},
+      })),
     );
     await expect(failing).rejects.toThrow('worker gone');
   });

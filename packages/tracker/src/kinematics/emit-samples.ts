@@ -28,11 +28,15 @@ export function* emitSamples(
 function samplesOf(held: HeldFrames, parameters: FitParameters, first: number, last: number): SampleBlock {
   const { columns, start, rows } = held;
   const { pathline } = columns;
+  let most = 0;
+  for (let k = first; k < last; k++) most += rows[k]!;
+  /** Row of each sample. */
+  const list = new Int32Array(most);
   const offsets = new Uint32Array(last - first + 1);
   let count = 0;
   for (let k = first; k < last; k++) {
     const end = start[k]! + rows[k]!;
-    for (let row = start[k]!; row < end; row++) if (pathline[row]! >= 0) count++;
+    for (let row = start[k]!; row < end; row++) if (pathline[row]! >= 0) list[count++] = row;
     offsets[k - first + 1] = count;
   }
   const samples = sampleColumns(held.dims, count, {
@@ -41,57 +45,64 @@ function samplesOf(held: HeldFrames, parameters: FitParameters, first: number, l
     segment: held.segment.slice(first, last),
     offsets,
   });
-  let s = 0;
-  for (let k = first; k < last; k++) {
-    const end = start[k]! + rows[k]!;
-    for (let row = start[k]!; row < end; row++) if (pathline[row]! >= 0) write(held, row, samples, s++, parameters);
+  // Column after column: with all of them open at once each sample would touch fifty places in memory.
+  const [sx, sy, sz] = parameters.noise;
+  const { positionRoot, velocityRoot, accelerationRoot } = columns;
+  for (let s = 0; s < count; s++) samples.pathline[s] = pathline[list[s]!]!;
+  takeDoubles(columns.px, list, samples.x);
+  takeDoubles(columns.py, list, samples.y);
+  takeDoubles(columns.x, list, samples.measuredX);
+  takeDoubles(columns.y, list, samples.measuredY);
+  takeDoubles(columns.detection, list, samples.detection);
+  takeSingles(columns.u, 1, list, samples.u);
+  takeSingles(columns.v, 1, list, samples.v);
+  takeSingles(columns.ax, 1, list, samples.ax);
+  takeSingles(columns.ay, 1, list, samples.ay);
+  takeSingles(positionRoot, sx, list, samples.xSe);
+  takeSingles(positionRoot, sy, list, samples.ySe);
+  takeSingles(velocityRoot, sx, list, samples.uSe);
+  takeSingles(velocityRoot, sy, list, samples.vSe);
+  takeSingles(accelerationRoot, sx, list, samples.axSe);
+  takeSingles(accelerationRoot, sy, list, samples.aySe);
+  takeSingles(columns.linkRisk, 1, list, samples.linkRisk);
+  if (held.dims === 3) {
+    takeDoubles(columns.pz, list, samples.z);
+    takeDoubles(columns.z, list, samples.measuredZ);
+    takeSingles(columns.w, 1, list, samples.w);
+    takeSingles(columns.az, 1, list, samples.az);
+    takeSingles(positionRoot, sz, list, samples.zSe);
+    takeSingles(velocityRoot, sz, list, samples.wSe);
+    takeSingles(accelerationRoot, sz, list, samples.azSe);
   }
+  takeFlags(held, parameters, list, samples);
   return samples;
 }
 
-function write(held: HeldFrames, row: number, samples: SampleBlock, s: number, parameters: FitParameters): void {
-  const { columns } = held;
-  const [sx, sy, sz] = parameters.noise;
-  const position = columns.positionRoot[row]!;
-  const velocity = columns.velocityRoot[row]!;
-  const acceleration = columns.accelerationRoot[row]!;
-  const px = columns.px[row]!;
-  const py = columns.py[row]!;
-  samples.pathline[s] = columns.pathline[row]!;
-  samples.x[s] = px;
-  samples.y[s] = py;
-  samples.u[s] = oneNaN(columns.u[row]!);
-  samples.v[s] = oneNaN(columns.v[row]!);
-  samples.ax[s] = oneNaN(columns.ax[row]!);
-  samples.ay[s] = oneNaN(columns.ay[row]!);
-  samples.xSe[s] = oneNaN(sx * position);
-  samples.ySe[s] = oneNaN(sy * position);
-  samples.uSe[s] = oneNaN(sx * velocity);
-  samples.vSe[s] = oneNaN(sy * velocity);
-  samples.axSe[s] = oneNaN(sx * acceleration);
-  samples.aySe[s] = oneNaN(sy * acceleration);
-  samples.measuredX[s] = columns.x[row]!;
-  samples.measuredY[s] = columns.y[row]!;
-  if (held.dims === 3) {
-    samples.z[s] = columns.pz[row]!;
-    samples.w[s] = oneNaN(columns.w[row]!);
-    samples.az[s] = oneNaN(columns.az[row]!);
-    samples.zSe[s] = oneNaN(sz * position);
-    samples.wSe[s] = oneNaN(sz * velocity);
-    samples.azSe[s] = oneNaN(sz * acceleration);
-    samples.measuredZ[s] = columns.z[row]!;
-  }
-  samples.linkRisk[s] = columns.linkRisk[row]!;
-  samples.detection[s] = columns.detection[row]!;
-  const mark = columns.marks[row]!;
-  let flags = columns.flags[row]!;
-  if ((mark & (MARK.offFit | MARK.restsOnOff)) !== 0) flags |= FLAG['off-fit'];
-  if ((mark & MARK.offNeighbours) !== 0) flags |= FLAG['off-neighbours'];
-  if (parameters.bodies.length > 0) flags |= atBody(parameters.bodies, parameters.rim, px, py);
-  samples.flags[s] = flags;
+/** `into[s] = from[list[s]]`. */
+function takeDoubles(from: Float64Array, list: Int32Array, into: Float64Array): void {
+  for (let s = 0; s < into.length; s++) into[s] = from[list[s]!]!;
 }
 
-/** NaN of any sign or payload becomes the one that results carry. */
-function oneNaN(value: number): number {
-  return Number.isNaN(value) ? NAN : value;
+/** `into[s] = factor from[list[s]]`; NaN of any sign or payload becomes the one that results carry. */
+function takeSingles(from: Float32Array, factor: number, list: Int32Array, into: Float32Array): void {
+  for (let s = 0; s < into.length; s++) {
+    const value = factor * from[list[s]!]!;
+    into[s] = Number.isNaN(value) ? NAN : value;
+  }
+}
+
+function takeFlags(held: HeldFrames, parameters: FitParameters, list: Int32Array, samples: SampleBlock): void {
+  const { marks, flags } = held.columns;
+  const { bodies, rim } = parameters;
+  const into = samples.flags;
+  for (let s = 0; s < into.length; s++) {
+    const row = list[s]!;
+    const mark = marks[row]!;
+    let set = flags[row]!;
+    if ((mark & (MARK.offFit | MARK.restsOnOff)) !== 0) set |= FLAG['off-fit'];
+    if ((mark & MARK.offNeighbours) !== 0) set |= FLAG['off-neighbours'];
+    into[s] = set;
+  }
+  if (bodies.length === 0) return;
+  for (let s = 0; s < into.length; s++) into[s] = into[s]! | atBody(bodies, rim, samples.x[s]!, samples.y[s]!);
 }

@@ -6,7 +6,6 @@ import { createFrameFit } from './create-frame-fit.js';
 import type { FitParameters } from './fit-parameters.js';
 import { fitParameters } from './fit-parameters.js';
 import type { FrameFit } from './frame-fit.js';
-import { copyBlock } from './rolling-frames.js';
 
 /**
  * Rows that may lie with another thread unanswered: it works through some 200 000 at once (six frames at least) and is
@@ -14,11 +13,16 @@ import { copyBlock } from './rolling-frames.js';
  */
 const ROWS_AHEAD = 400_000;
 
-/**
- * A fit that goes on in another thread: takes the next frames (null: there are no more), which are given away, and
- * resolves to the samples that are finished by then. Calls are answered in order.
- */
-export type RemoteFit = (block: LinkedBlock | null) => Promise<readonly SampleBlock[]>;
+/** Blocks that may lie there: each call listens to the signal, and Node warns of more than ten listeners. */
+const BLOCKS_AHEAD = 9;
+
+/** A fit that goes on in another thread. */
+export interface RemoteFit {
+  /** Sends the next frames (null: there are no more), borrowed until it returns; resolves in order to the samples finished by then. */
+  frames(block: LinkedBlock | null): Promise<readonly SampleBlock[]>;
+  /** Takes samples back that are done with. */
+  release(samples: SampleBlock): void;
+}
 
 /** Starts such a fit. */
 export type StartRemoteFit = (parameters: FitParameters) => RemoteFit;
@@ -26,7 +30,8 @@ export type StartRemoteFit = (parameters: FitParameters) => RemoteFit;
 /**
  * The fit stage: linked blocks in frame order to samples in frame order. With `start` the fit runs in another thread,
  * while this one reads, links and stores; without it here, with a breath every few ms. The samples are the same.
- * Memory: that of the fit (`RollingFit`), and 32 bytes for each row that lies with the other thread.
+ * Memory: that of the fit (`RollingFit`), and 32 bytes for each row that lies with the other thread. Samples are borrowed
+ * until the next are asked for.
  */
 export async function* fitStage(
   input: StageInput,
@@ -75,27 +80,30 @@ async function* fitElsewhere(
   const flight: { readonly samples: Promise<readonly SampleBlock[]>; readonly rows: number }[] = [];
   let ahead = 0;
   const send = (block: LinkedBlock | null): void => {
-    const samples = fit(block);
+    const samples = fit.frames(block);
     // Awaited in its turn; until then a failure must not count as unhandled.
     samples.catch(() => {});
     const rows = block === null ? 0 : rowCount(block);
     flight.push({ samples, rows });
     ahead += rows;
   };
-  const next = async (): Promise<readonly SampleBlock[]> => {
+  async function* next(): AsyncGenerator<SampleBlock> {
     const { samples, rows } = flight.shift()!;
     const answer = await samples;
     ahead -= rows;
-    return answer;
-  };
+    for (const one of answer) {
+      yield one;
+      fit.release(one);
+    }
+  }
   try {
     for await (const block of blocks) {
       await context.breathe();
-      send(copyBlock(block));
-      while (ahead > ROWS_AHEAD) yield* await next();
+      send(block);
+      while (ahead > ROWS_AHEAD || flight.length >= BLOCKS_AHEAD) yield* next();
     }
     send(null);
-    while (flight.length > 0) yield* await next();
+    while (flight.length > 0) yield* next();
   } finally {
     await Promise.allSettled(flight.map(({ samples }) => samples));
   }

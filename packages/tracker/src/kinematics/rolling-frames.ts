@@ -109,25 +109,6 @@ function wider<C extends Column>(old: C, empty: C): C {
   return empty;
 }
 
-/** A block of its own, to be given away. */
-export function copyBlock(block: LinkedBlock): LinkedBlock {
-  return {
-    dims: block.dims,
-    number: block.number.slice(),
-    time: block.time.slice(),
-    segment: block.segment.slice(),
-    offsets: block.offsets.slice(),
-    x: block.x.slice(),
-    y: block.y.slice(),
-    z: block.z.slice(),
-    brightness: new Float32Array(0),
-    row: block.row.slice(),
-    given: new Int32Array(0),
-    pathline: block.pathline.slice(),
-    linkRisk: block.linkRisk.slice(),
-  };
-}
-
 /** Blocks as one, for kernels that look at a few blocks at once. New arrays. */
 export function joinBlocks(blocks: readonly LinkedBlock[]): LinkedBlock {
   const joined = new RollingFrames();

@@ -1,8 +1,8 @@
-import type { LinkedBlock, SampleBlock } from '../core/columns.js';
 import type { FitParameters } from '../kinematics/fit-parameters.js';
 import type { RunRequest } from '../pipeline/board.js';
 import type { ResolvedRun } from '../run/settings.js';
 import type { RunRecord } from '../store/run-record.js';
+import type { Crate } from './crate.js';
 
 /** One file of a dump as it is named to a worker: a path in Node, a Blob or File in browsers. */
 export type SourceRef =
@@ -12,12 +12,18 @@ export type SourceRef =
 /** Work that the coordinating worker gives to the others. Buffers are meant to be moved. */
 export type KernelOperations = {
   /**
-   * The next frames of a fit that goes on in the worker, null for none any more; the samples finished by then. A fit is
-   * begun by the first call that names it, and over with the call without a block.
+   * The next frames of a fit that goes on in the worker (a `LinkedBlock`, null for none any more) and the samples finished
+   * by then (`SampleBlock`s). A fit is begun by the first call that names it, and over with the call without frames.
+   * `spares`: buffers of samples that came, to be filled anew, and back with the answer those of frames.
    */
   'fit-frames': {
-    readonly args: { readonly fit: string; readonly parameters: FitParameters; readonly block: LinkedBlock | null };
-    readonly value: readonly SampleBlock[];
+    readonly args: {
+      readonly fit: string;
+      readonly parameters: FitParameters;
+      readonly frames: Crate | null;
+      readonly spares: readonly ArrayBuffer[];
+    };
+    readonly value: { readonly samples: readonly Crate[]; readonly spares: readonly ArrayBuffer[] };
   };
 };
 

@@ -1,18 +1,13 @@
 import type { ByteSource, HasherFactory } from '../core/bytes.js';
-import type { SampleBlock } from '../core/columns.js';
-import type { RunContext } from '../core/context.js';
 import { abortedError } from '../core/errors.js';
 import type { Hdf5Opener } from '../core/hdf5.js';
 import type { ResultPlace } from '../core/result-place.js';
-import { createFrameFit } from '../kinematics/create-frame-fit.js';
-import type { StartRemoteFit } from '../kinematics/fit-stage.js';
-import type { FrameFit } from '../kinematics/frame-fit.js';
 import type { RunTools } from '../pipeline/board.js';
-import { createWorkerClient, type WorkerClient } from './client.js';
+import { createWorkerClient } from './client.js';
+import { fitFramesBody, fitInHelper } from './fit-frames.js';
 import type { StartWorker } from './handle.js';
 import type { OperationBodies } from './host.js';
 import type { KernelOperations, RunOperations, SourceRef } from './operation-table.js';
-import { buffersIn } from './transfer.js';
 
 /** What the operations need from where they run; `entry-node.ts` and `entry-web.ts` differ in this and nowhere else. */
 export interface Platform {
@@ -25,45 +20,9 @@ export interface Platform {
   readonly host: RunTools['host'];
 }
 
-/** Fits that go on in this worker by their name; each call waits for the one before. */
-interface GoingFit {
-  readonly fit: FrameFit;
-  done: Promise<void>;
-}
-
-function kernelBodies(): OperationBodies<KernelOperations, Platform> {
-  const fits = new Map<string, GoingFit>();
-  return {
-    async 'fit-frames'({ fit: name, parameters, block }, context) {
-      const going = fits.get(name) ?? { fit: createFrameFit(parameters), done: Promise.resolve() };
-      fits.set(name, going);
-      const before = going.done;
-      let end = (): void => {};
-      going.done = new Promise((resolve) => {
-        end = resolve;
-      });
-      await before;
-      try {
-        const value: SampleBlock[] = [];
-        for (const samples of block === null ? going.fit.finish() : going.fit.add(block)) {
-          if (samples !== null) value.push(samples);
-          await context.breathe();
-        }
-        if (block === null) fits.delete(name);
-        return { value, transfer: value.flatMap(buffersIn) };
-      } catch (error) {
-        fits.delete(name);
-        throw error;
-      } finally {
-        end();
-      }
-    },
-  };
-}
-
 /** Bodies of what every tracker worker answers; to be used once in a worker. */
 export const runBodies: OperationBodies<RunOperations, Platform> = {
-  ...kernelBodies(),
+  ...fitFramesBody(),
   async process({ request, sources, out }, context, platform) {
     // Loaded here, so that a worker that only runs kernels stays small.
     const loaded = Promise.all([import('../pipeline/process-run.js'), platform.hasher(), platform.hdf5()]);
@@ -79,7 +38,7 @@ export const runBodies: OperationBodies<RunOperations, Platform> = {
         hdf5,
         hasher,
         place,
-        fit: helper === null ? undefined : fitIn(helper, context),
+        fit: helper === null ? undefined : fitInHelper(helper, context),
         host: platform.host,
         clock: { now: () => new Date().toISOString(), seconds: () => performance.now() / 1000 },
       };
@@ -98,14 +57,4 @@ function unlessAborted<Value>(value: Promise<Value>, signal: AbortSignal): Promi
     signal.addEventListener('abort', abort);
     value.then(resolve, reject).finally(() => signal.removeEventListener('abort', abort));
   });
-}
-
-/** The fit of a run in another worker. */
-function fitIn(helper: WorkerClient<KernelOperations>, context: RunContext): StartRemoteFit {
-  return (parameters) => (block) =>
-    helper.run(
-      'fit-frames',
-      { fit: 'run', parameters, block },
-      { signal: context.signal, transfer: block === null ? [] : buffersIn(block), bytes: context.budget.bytes },
-    );
 }
