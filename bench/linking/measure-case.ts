@@ -28,6 +28,7 @@ export interface CaseResult {
 
 /** Sources that the two other linkers are made of, beside those of the truth. */
 const OTHERS = [
+  'bench/linking/cases.ts',
   'bench/linking/true-flow-linker.ts',
   'bench/linking/nearest-linker.ts',
   'bench/linking/measure-case.ts',

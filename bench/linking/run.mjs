@@ -47,13 +47,15 @@ async function measure(values, cases, harness, address) {
   const pool = harness.emptyPool();
   const done = [];
   const failed = [];
+  const told = new Set();
   await runCases(cases, {
     address,
     places: { root: ROOT, cache },
     workers: Number(values.workers ?? 2),
     onCase(index, { result, error }) {
+      told.add(index);
       const name = harness.caseName(cases[index]);
-      const place = `[${String(done.length + failed.length + 1).padStart(String(cases.length).length)}/${cases.length}]`;
+      const place = `[${String(told.size).padStart(String(cases.length).length)}/${cases.length}]`;
       if (error !== undefined) {
         failed.push({ case: cases[index], error });
         console.log(`${place} ${name} FAILED: ${error}`);
@@ -70,6 +72,9 @@ async function measure(values, cases, harness, address) {
       console.log(`${place} ${scoreLine(name, one)}`);
     },
   });
+  for (const [index, one] of cases.entries()) {
+    if (!told.has(index)) failed.push({ case: one, error: 'not begun: no worker process started' });
+  }
   const risk = harness.summarise(pool);
   const record = {
     ...head,
