@@ -6,7 +6,7 @@ export class LastSamples {
   private size = 1024;
   private used = 0;
   private keys = new Int32Array(this.size).fill(-1);
-  private frames = new Float64Array(this.size);
+  private frames = new Int32Array(this.size);
   private places = new Int32Array(this.size);
   /** Found by the last `move`: the frame count and place of the sample before, frame -1 for none. */
   frame = -1;
@@ -36,7 +36,7 @@ export class LastSamples {
     for (let at = 0; at < keys.length; at++) if (keys[at] !== -1 && frames[at]! >= oldest) kept++;
     while (4 * kept >= this.size) this.size *= 2;
     this.keys = new Int32Array(this.size).fill(-1);
-    this.frames = new Float64Array(this.size);
+    this.frames = new Int32Array(this.size);
     this.places = new Int32Array(this.size);
     this.used = kept;
     for (let old = 0; old < keys.length; old++) {

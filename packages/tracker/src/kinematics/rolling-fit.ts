@@ -18,7 +18,7 @@ import { WindowPatterns } from './window-patterns.js';
 const STEP_ROWS = 20_000;
 
 /** Rows worked through at once at least, where they are not more frames than `MOST_REACHES` says: costs little beside them. */
-const CHUNK_ROWS = 200_000;
+const CHUNK_ROWS = 150_000;
 const MOST_REACHES = 4;
 
 /**
@@ -89,19 +89,25 @@ export class RollingFit implements FrameFit {
   }
 
   private hold(dims: Dims, rows: number): HeldFrames {
-    const chunk = Math.min(MOST_REACHES * this.reach, Math.max(this.reach, Math.ceil(CHUNK_ROWS / Math.max(1, rows))));
+    const most = MOST_REACHES * this.reach;
+    const chunk = Math.min(most, Math.max(this.fewest, Math.ceil(CHUNK_ROWS / Math.max(1, rows))));
     return new HeldFrames(dims, fitLag(this.parameters) + this.reach + chunk);
   }
 
-  /** Whether there are new frames enough: each costs as many more looked at on either side as a fit may reach. */
+  /** Whether there are new frames enough. */
   private enough(held: HeldFrames): boolean {
     const from = this.fitted + this.reach;
     const frames = held.frames - from;
-    if (frames < this.reach) return false;
+    if (frames < this.fewest) return false;
     if (frames >= MOST_REACHES * this.reach) return true;
     let rows = 0;
     for (let k = from; k < held.frames; k++) rows += held.rows[k]!;
     return rows >= CHUNK_ROWS;
+  }
+
+  /** New frames at least: on an uneven clock each chunk costs as many more, looked at on either side, as a fit may reach. */
+  private get fewest(): number {
+    return this.even === null ? this.reach : 1;
   }
 
   private *advance(held: HeldFrames, ended: boolean): Generator<SampleBlock | null, void> {
