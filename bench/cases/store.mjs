@@ -76,7 +76,7 @@ export async function run() {
     for (const id of samples.pathline) bySize.set(id, (bySize.get(id) ?? 0) + 1);
     const kept = [...bySize.values()].filter((count) => count >= 5).reduce((sum, count) => sum + count, 0);
     check(finished.samples === kept, `${finished.samples} samples stored, expected ${kept}`);
-    const file = openHdf5Reader(place.hdf5, place.hdf5Path('.partial-pathlines.nc'), 'pathlines.nc');
+    const file = openHdf5Reader(await place.hdf5(), place.hdf5Path('.partial-pathlines.nc'), 'pathlines.nc');
     const detection = file.dataset('/detection').rows(0, kept);
     const u = file.dataset('/u').rows(0, kept);
     const rowOf = new Map();

@@ -35,7 +35,7 @@ const TYPES: readonly Hdf5Type[] = ['f64', 'f32', 'i32', 'i64', 'u16', 'u8'];
 
 describe('a NetCDF file', () => {
   it('gives back variables of every type and rank, however their values were handed in', async () => {
-    const file = createNetcdf(place, 'made.nc', { title: 'OHDR\u0002 is no header here' });
+    const file = await createNetcdf(place, 'made.nc', { title: 'OHDR\u0002 is no header here' });
     const sizes = [5, 3, 4];
     ['a', 'b', 'c'].forEach((name, k) => {
       file.dimension(name, sizes[k]);
@@ -61,7 +61,7 @@ describe('a NetCDF file', () => {
     await file.finish(createContext());
 
     const path = place.hdf5Path(`${PARTIAL_PREFIX}made.nc`);
-    const reader = openHdf5Reader(place.hdf5, path, 'made.nc');
+    const reader = openHdf5Reader(await place.hdf5(), path, 'made.nc');
     for (const { name, dimensions, values } of made) {
       const dataset = reader.dataset(name);
       expect(dataset?.shape, name).toEqual(sizes.slice(0, dimensions.length));
@@ -73,7 +73,7 @@ describe('a NetCDF file', () => {
   });
 
   it('that lost a value on the disk does not pass', async () => {
-    const file = createNetcdf(place, 'made.nc', {});
+    const file = await createNetcdf(place, 'made.nc', {});
     file.dimension('row', 1000);
     file.variable({ name: 'value', type: 'i32', dimensions: ['row'], attributes: {} });
     await file.append('value', new Int32Array(1000).fill(0x01020304));
@@ -86,7 +86,7 @@ describe('a NetCDF file', () => {
   });
 
   it('is refused where its headers are not what is expected', async () => {
-    const file = createNetcdf(place, 'made.nc', {});
+    const file = await createNetcdf(place, 'made.nc', {});
     file.dimension('row', 2);
     file.variable({ name: 'value', type: 'i32', dimensions: ['row'], attributes: {} });
     await file.append('value', Int32Array.of(1, 2));

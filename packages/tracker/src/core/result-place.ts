@@ -3,7 +3,7 @@ import type { HasherFactory, Scratch } from './bytes.js';
 
 /**
  * The HDF5 build in use, handed in because Node's (`h5wasm/node`) and the browser's (`h5wasm`) differ. `module` is
- * what the build's `ready` promise resolved to; it must have resolved before a place is made.
+ * what the build's `ready` promise resolved to.
  */
 export interface Hdf5Build {
   readonly module: typeof H5.Module;
@@ -34,7 +34,8 @@ export interface PlaceFile {
 export interface ResultPlace {
   /** The folder as the user wrote it, for messages. */
   readonly name: string;
-  readonly hdf5: Hdf5Build;
+  /** The HDF5 build, loaded when it is first asked for: a run streams without it, and it takes some 35 MB. */
+  hdf5(): Promise<Hdf5Build>;
   readonly scratch: Scratch;
   readonly hasher: HasherFactory;
   /**

@@ -1,6 +1,5 @@
 import { openSync } from 'node:fs';
 import { devNull } from 'node:os';
-import * as h5wasm from 'h5wasm/node';
 import type { Hdf5Build } from '../core/result-place.js';
 
 /** What we touch of the build's file system: the stream behind its standard error. */
@@ -15,6 +14,7 @@ let quiet = false;
  * what fails shows in return values and in the read-back, and is said in our words.
  */
 export async function nodeHdf5Build(): Promise<Hdf5Build> {
+  const h5wasm = await import('h5wasm/node');
   const module = await h5wasm.ready;
   if (!quiet) {
     const stream = (module.FS as unknown as Streams).streams?.[2];

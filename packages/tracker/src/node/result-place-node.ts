@@ -28,7 +28,6 @@ import { nodeScratch } from './scratch.js';
  * place without files. Codes: `store/not-a-folder`, `store/not-writable`, `store/disk-full`.
  */
 export async function openNodeResultPlace(folder: string, options: { create: boolean }): Promise<ResultPlace> {
-  const hdf5 = await nodeHdf5Build();
   const guard = <T>(path: string, need: number, work: () => T): T => {
     try {
       return work();
@@ -40,7 +39,7 @@ export async function openNodeResultPlace(folder: string, options: { create: boo
   const path = (file: string) => join(folder, file);
   return {
     name: folder,
-    hdf5,
+    hdf5: nodeHdf5Build,
     scratch: nodeScratch(folder),
     hasher: nodeHasher,
     checksum: nodeChecksum,

@@ -56,7 +56,11 @@ export async function writeFramesFile(place: ResultPlace, input: FramesInput, co
   }
   let overview = 0;
   for (let row = 0; row < samples; row++) if (inOverview(row, samples)) overview++;
-  const file = createNetcdf(place, 'frames.nc', fileAttributes(input.title, 'trajectory', thinningAttributes(keep)));
+  const file = await createNetcdf(
+    place,
+    'frames.nc',
+    fileAttributes(input.title, 'trajectory', thinningAttributes(keep)),
+  );
   try {
     declare(file, input, indices.length, samples, overview);
     await file.append(

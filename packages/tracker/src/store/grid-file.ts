@@ -22,7 +22,7 @@ export async function writeGridFile(
 ): Promise<string> {
   const { shape } = grid;
   const own = { ...shapeAttributes(shape), ...fieldList(grid), ...attributes };
-  const file = createNetcdf(place, 'grid.nc', fileAttributes(title, null, own));
+  const file = await createNetcdf(place, 'grid.nc', fileAttributes(title, null, own));
   try {
     const axes = AXES.slice(0, shape.dims);
     axes.forEach((axis, index) => {

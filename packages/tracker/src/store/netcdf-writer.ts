@@ -58,8 +58,9 @@ interface OpenVariable {
  * file later.
  * Codes: `store/disk-full`, `store/read-back`, `store/not-writable`.
  */
-export function createNetcdf(place: ResultPlace, file: string, attributes: Attributes): NetcdfWriter {
-  const { hdf5, hasher, checksum } = place;
+export async function createNetcdf(place: ResultPlace, file: string, attributes: Attributes): Promise<NetcdfWriter> {
+  const { hasher, checksum } = place;
+  const hdf5 = await place.hdf5();
   const partial = PARTIAL_PREFIX + file;
   const ledger = openLedger(hasher);
   // The digest is taken once, of what is written; a cheaper sum holds what is read back against it.

@@ -46,20 +46,20 @@ export function keptRows(keep: 'all' | 'thinned', numbering: Numbering, spilled:
 }
 
 /** Starts the file. Memory: 16 bytes a pathline kept. */
-export function openPathlinesFile(
+export async function openPathlinesFile(
   place: ResultPlace,
   columns: readonly SampleColumn[],
   kept: Kept,
   units: ResultUnits,
   title: string,
   bridge: number,
-): PathlinesFile {
+): Promise<PathlinesFile> {
   const thinned = kept.shift !== null;
   const extra: Attributes = {
     missing_frames_crossed_at_most: { type: 'i32', values: [bridge] },
     ...thinningAttributes(thinned ? 'thinned' : 'all'),
   };
-  const file = createNetcdf(place, 'pathlines.nc', fileAttributes(title, 'trajectory', extra));
+  const file = await createNetcdf(place, 'pathlines.nc', fileAttributes(title, 'trajectory', extra));
   try {
     declare(file, columns, kept, units);
   } catch (error) {

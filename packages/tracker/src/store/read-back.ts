@@ -20,7 +20,7 @@ export async function readBackDigest(
   context: RunContext,
   hasher: HasherFactory = place.hasher,
 ): Promise<string> {
-  const { hdf5 } = place;
+  const hdf5 = await place.hdf5();
   const handle = new hdf5.File(place.hdf5Path(file), 'r');
   if (handle.file_id < 0n) return 'unreadable';
   let windowBytes = WINDOW;

@@ -20,7 +20,7 @@ export function placeFiles(place: ResultPlace): ResultFiles {
     name: place.name,
     has: (file) => place.size(file) >= 0,
     text: async (file) => place.readText(file),
-    hdf5: async (file) => openHdf5Reader(place.hdf5, place.hdf5Path(file), `${place.name}/${file}`),
+    hdf5: async (file) => openHdf5Reader(await place.hdf5(), place.hdf5Path(file), `${place.name}/${file}`),
   };
 }
 

@@ -147,7 +147,7 @@ export function openResultWriter(place: ResultPlace, options: ResultWriterOption
     const numbering = numberPathlines(spilled.counts, options.shortest);
     checkRoom(place, numbering.samples * fileBytes + 20 * numbering.pathlines);
     const kept = keepPathlines === 'none' ? null : keptRows(keepPathlines, numbering, spilled);
-    if (kept !== null) pathlinesFile = openPathlinesFile(place, columns, kept, units, title, options.bridge);
+    if (kept !== null) pathlinesFile = await openPathlinesFile(place, columns, kept, units, title, options.bridge);
     const stuck = new Uint8Array(numbering.pathlines);
     const rule = {
       factor: options.stuckFactor,

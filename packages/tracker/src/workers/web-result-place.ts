@@ -46,7 +46,7 @@ export function createMemoryResultPlace(
   };
   return {
     name,
-    hdf5,
+    hdf5: () => Promise.resolve(hdf5),
     hasher,
     scratch: createMemoryScratch(limitBytes),
     hdf5Path: path,
