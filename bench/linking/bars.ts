@@ -1,6 +1,6 @@
 import { type LinkingCase, PAIRS, unusual } from './cases';
 import { flowCase } from './flows';
-import type { RiskSummary } from './risk-pool';
+import type { RiskDecade, RiskSummary } from './risk-pool';
 
 /** What a case is held against. */
 export interface Bar {
@@ -55,18 +55,36 @@ export const RISK_BARS = {
   sumOff: 0.15,
 } as const;
 
-/** What of the link risk misses its bar, in words; empty where all holds. */
-export function riskMisses({ decades, areaUnderCurve, expected, wrong }: RiskSummary): string[] {
-  const misses: string[] = [];
-  for (const decade of decades) {
-    if (decade.expected < RISK_BARS.fewestExpected) continue;
-    const ratio = decade.wrong / decade.expected;
-    if (ratio >= RISK_BARS.least && ratio <= RISK_BARS.most) continue;
-    misses.push(`stated risk ${decade.from} to ${decade.to}: observed over stated ${ratio.toFixed(2)}`);
-  }
+/** A decade with what its bar says. */
+export interface JudgedDecade extends RiskDecade {
+  readonly verdict: 'met' | 'missed' | 'not judged';
+}
+
+/** The link risk with what its bars say: `misses` in words, empty where all holds. */
+export interface JudgedRisk extends RiskSummary {
+  readonly decades: readonly JudgedDecade[];
+  readonly misses: readonly string[];
+}
+
+/** Holds the link risk against its bars. */
+export function judgeRisk(summary: RiskSummary): JudgedRisk {
+  const { areaUnderCurve, expected, wrong } = summary;
+  const decades = summary.decades.map((decade) => ({ ...decade, verdict: judgeDecade(decade) }));
+  const misses = decades
+    .filter(({ verdict }) => verdict === 'missed')
+    .map(({ from, to, ...counts }) => {
+      const ratio = (counts.wrong / counts.expected).toFixed(2);
+      return `stated risk ${from.toExponential(0)} to ${to.toExponential(0)}: observed over stated ${ratio}`;
+    });
   if (!(areaUnderCurve >= RISK_BARS.areaUnderCurve)) misses.push(`area under the curve ${areaUnderCurve.toFixed(3)}`);
   if (!(Math.abs(expected / wrong - 1) <= RISK_BARS.sumOff)) {
     misses.push(`sum of risks over wrong links ${(expected / wrong).toFixed(2)}`);
   }
-  return misses;
+  return { ...summary, decades, misses };
+}
+
+function judgeDecade({ expected, wrong }: RiskDecade): JudgedDecade['verdict'] {
+  if (expected < RISK_BARS.fewestExpected) return 'not judged';
+  const ratio = wrong / expected;
+  return ratio >= RISK_BARS.least && ratio <= RISK_BARS.most ? 'met' : 'missed';
 }

@@ -94,11 +94,24 @@ function imagePairs(seeds: readonly number[]): LinkingCase[] {
   return PAIRS.flows.flatMap((flow) => seeds.map((seed) => ({ ...USUAL, flow, ratio, frames, pairs: true, seed })));
 }
 
-/** What of a case is not as usual, `noise 0.2` and the like; empty where all is. */
+const percent = (share: number) => `${+(100 * share).toFixed(3)} %`;
+/** What each field of a case is called where it is not as usual. */
+const WORDS: { readonly [Name in keyof typeof USUAL]: (one: LinkingCase) => string } = {
+  noise: ({ noise }) => `noise ${noise} px`,
+  losses: ({ losses }) => `${percent(losses)} lost`,
+  ghosts: ({ ghosts }) => `${percent(ghosts)} false`,
+  perFrame: ({ perFrame }) => `${perFrame} a frame`,
+  frames: ({ frames, pairs }) => (pairs ? '' : `${frames} frames`),
+  pairs: ({ frames }) => `${frames / 2} pairs`,
+  side: ({ side }) => `${percent(side)} of the sides`,
+  care: ({ care }) => care,
+};
+
+/** What of a case is not as usual, `noise 0.2 px` and the like; empty where all is. */
 export function unusual(one: LinkingCase): string {
   const names = Object.keys(USUAL) as (keyof typeof USUAL)[];
-  const differs = names.filter((name) => one[name] !== USUAL[name] && !(one.pairs && name === 'frames'));
-  return differs.map((name) => (name === 'pairs' ? `${one.frames / 2} pairs` : `${name} ${one[name]}`)).join(', ');
+  const words = names.filter((name) => one[name] !== USUAL[name]).map((name) => WORDS[name](one));
+  return words.filter((word) => word !== '').join(', ');
 }
 
 /** Short name for progress lines and messages. */

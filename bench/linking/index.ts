@@ -1,5 +1,5 @@
 /** What the runner and its worker processes use of the harness, in one bundle. */
-export { barOf, RISK_BARS, riskMisses } from './bars';
+export { barOf, judgeRisk } from './bars';
 export { ALL_FLOWS, caseName, casesOf, SET_NAMES, USUAL, unusual } from './cases';
 export { FLOW_CASES } from './flows';
 export { measureCase } from './measure-case';

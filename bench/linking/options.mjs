@@ -17,6 +17,16 @@ const CHOICES = [
   ['care', 'care', false],
 ];
 
+/** Field of a case by the word that `--risk-by` takes. */
+export const FIELDS = {
+  flow: 'flow',
+  ratio: 'ratio',
+  noise: 'noise',
+  losses: 'losses',
+  ghosts: 'ghosts',
+  particles: 'perFrame',
+};
+
 /** The words that `--help` prints. */
 export const HELP = `Links dumps with known truth and scores the links, beside a linker that is told the true flow
 (oracle) and plain nearest neighbour. Reads the sources of the library; no build needed.
@@ -31,6 +41,7 @@ export const HELP = `Links dumps with known truth and scores the links, beside a
                  --noise in px, --losses and --ghosts as shares, --particles a frame
 --side SHARE     look at the middle of the view only: share of its sides (default 1)
 --pairs          image pairs; --frames is twice their number (default 200)
+--risk-by WORD   show the links by stated risk for each flow, ratio, noise, losses, ghosts or particles apart as well
 --workers N      processes (default 2)
 --out FILE       write the figures as JSON
 --record         write them to bench/results and make the tables anew (needs --set full or held-out)
@@ -46,6 +57,7 @@ export function readOptions(words) {
       ...Object.fromEntries(CHOICES.map(([name]) => [name, text])),
       set: text,
       workers: text,
+      'risk-by': text,
       out: text,
       pairs: flag,
       record: flag,
@@ -59,6 +71,10 @@ export function readOptions(words) {
     if (chosen || (values.set !== 'full' && values.set !== 'held-out')) {
       throw new Error('--record: expected --set full or --set held-out beside it, and no choice of cases');
     }
+  }
+  const part = values['risk-by'];
+  if (part !== undefined && !Object.hasOwn(FIELDS, part)) {
+    throw new Error(`--risk-by: got ${part}, expected ${Object.keys(FIELDS).join(', ')}`);
   }
   return values;
 }

@@ -47,5 +47,5 @@ export function riskLines({ decades, areaUnderCurve, expected, wrong, misses }) 
 export function speedLine({ cases, seconds }) {
   const rates = cases.map(({ detections, linkSeconds }) => detections / linkSeconds / 1000).sort((a, b) => a - b);
   const at = (part) => rates[Math.min(rates.length - 1, Math.floor(part * rates.length))].toFixed(0);
-  return `first look and linking: median ${at(0.5)} thousand detections/s a process (tenth to nine tenths ${at(0.1)} to ${at(0.9)}); ${seconds} s in all`;
+  return `First look and linking: median ${at(0.5)} thousand detections/s a process (${at(0.1)} to ${at(0.9)} for the middle eight tenths), ${seconds} s in all`;
 }

@@ -4,7 +4,7 @@ import { mkdirSync, rmSync, writeFileSync } from 'node:fs';
 import { dirname, join } from 'node:path';
 import { changed, commit, machine } from '../lib/provenance.mjs';
 import { bundleHarness, ROOT, SCRATCH } from './bundle.mjs';
-import { chosenCases, HELP, readOptions } from './options.mjs';
+import { chosenCases, FIELDS, HELP, readOptions } from './options.mjs';
 import { riskLines, scoreLine, speedLine } from './print.mjs';
 import { RESULTS, writeTables } from './record.mjs';
 import { runCases } from './run-cases.mjs';
@@ -45,6 +45,7 @@ async function measure(values, cases, harness, address) {
   const head = { begun, date: begun.slice(0, 10), commit: commit(), changed: changed(), machine: machine() };
   const started = performance.now();
   const pool = harness.emptyPool();
+  const parts = new Map();
   const done = [];
   const failed = [];
   const told = new Set();
@@ -62,6 +63,11 @@ async function measure(values, cases, harness, address) {
         return;
       }
       harness.addPool(pool, result.risk);
+      if (values['risk-by'] !== undefined) {
+        const part = result.case[FIELDS[values['risk-by']]];
+        if (!parts.has(part)) parts.set(part, harness.emptyPool());
+        harness.addPool(parts.get(part), result.risk);
+      }
       const one = {
         ...result,
         unusual: harness.unusual(result.case),
@@ -75,15 +81,21 @@ async function measure(values, cases, harness, address) {
   for (const [index, one] of cases.entries()) {
     if (!told.has(index)) failed.push({ case: one, error: 'not begun: no worker process started' });
   }
-  const risk = harness.summarise(pool);
+  const risk = harness.judgeRisk(harness.summarise(pool));
   const record = {
     ...head,
     set: values.set ?? 'chosen',
     seconds: Math.round((performance.now() - started) / 1000),
     cases: done.sort((a, b) => a.index - b.index).map(({ one }) => one),
     failed,
-    risk: { ...risk, misses: harness.riskMisses(risk) },
+    risk,
+    flows: harness.FLOW_CASES.map(({ name, why }) => ({ name, why })),
   };
+  for (const [part, of] of parts) {
+    console.log(
+      [`\n== ${values['risk-by']} ${part}`, ...riskLines(harness.judgeRisk(harness.summarise(of)))].join('\n'),
+    );
+  }
   if (done.length > 0) console.log([...riskLines(record.risk), speedLine(record)].join('\n'));
   if (failed.length > 0) console.log(`${failed.length} of ${cases.length} cases failed`);
   return record;

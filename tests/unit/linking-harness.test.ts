@@ -5,7 +5,7 @@ import { fileURLToPath } from 'node:url';
 import { potentialCylinder } from '@wakeloom/tracker/synthesis/flows-bodies';
 import { solidRotation, uniformFlow } from '@wakeloom/tracker/synthesis/flows-elementary';
 import { afterAll, describe, expect, it } from 'vitest';
-import { barOf, riskMisses } from '../../bench/linking/bars';
+import { barOf, judgeRisk } from '../../bench/linking/bars';
 import * as cases from '../../bench/linking/cases';
 import { FLOW_CASES } from '../../bench/linking/flows';
 import { madeTruth } from '../../bench/linking/made-truth';
@@ -173,7 +173,9 @@ describe('links by their stated risk', () => {
   it('are held against bars', () => {
     const decade = { from: 1e-2, to: 1e-1, links: 4000, expected: 200, wrong: 200 };
     const good = { decades: [decade], areaUnderCurve: 0.95, expected: 200, wrong: 200 };
+    const riskMisses = (summary: typeof good) => judgeRisk(summary).misses;
     expect(riskMisses(good)).toEqual([]);
+    expect(judgeRisk(good).decades[0].verdict).toBe('met');
     expect(riskMisses({ ...good, decades: [{ ...decade, wrong: 301 }] })).toHaveLength(1);
     expect(riskMisses({ ...good, decades: [{ ...decade, wrong: 133 }] })).toHaveLength(1);
     expect(riskMisses({ ...good, decades: [{ ...decade, expected: 99, wrong: 0 }] })).toEqual([]);
@@ -224,6 +226,7 @@ describe('cases and bars', () => {
     expect(() => chosen('--flows', 'nowhere')).toThrow('street');
     expect(() => chosen('--ratios', 'fast')).toThrow('expected a number');
     expect(() => chosen('--set', 'all')).toThrow('quick, table');
+    expect(() => readOptions(['--risk-by', 'colour'])).toThrow('flow, ratio');
     expect(() => readOptions(['--record', '--set', 'full', '--flows', 'street'])).toThrow('--record');
   });
 });
@@ -246,8 +249,12 @@ describe('tables', () => {
       ours: score(precision, 0.999, 0.002),
       oracle: score(0.9999, 0.9999, 0.0005),
       nearest: score(0.5, 0.4, 1),
+      detections: 1000,
+      linkSeconds: 1,
     };
   };
+  const decade = { from: 1e-2, to: 1e-1, links: 4000, expected: 200, wrong: 20 };
+  const risk = judgeRisk({ decades: [decade], areaUnderCurve: 0.95, expected: 200, wrong: 200 });
   const record = (list: unknown[]) => ({
     file: 'linking-x.json',
     date: '2020-01-01',
@@ -258,7 +265,8 @@ describe('tables', () => {
     machine: { processor: 'p', cores: 2, memoryGigabytes: 8, platform: 'x', node: 'v20' },
     cases: list,
     failed: [],
-    risk: { decades: [], areaUnderCurve: 0.95, expected: 10, wrong: 10, misses: [] },
+    flows: [{ name: 'street', why: 'known' }],
+    risk,
   });
 
   it('mark a miss plainly, of any seed', () => {
@@ -267,7 +275,9 @@ describe('tables', () => {
     expect(fullTable(record([good]), null)).toContain('| street | 0.3 | 0.9985 / 0.9990 | 0.998 / 0.995 met |');
     const text = fullTable(record([good, bad]), null);
     expect(text).toContain('| street | 0.3 | 0.9979 / 0.9990 | 0.998 / 0.995 **missed** |');
-    expect(text).toContain('2 times not reached');
+    expect(text).toContain('| 4.0 | 2 times not reached |');
+    expect(text).toContain('| 1e-2 to 1e-1 | 4000 | 200.0 | 20 | 0.10 | **missed** |');
+    expect(compactTable(record([good]))).toContain('Link risk: 1 bars missed');
     expect(compactTable(record([good]))).toContain('All bars met');
     expect(compactTable(record([good, bad]))).toContain('1 of 1 bars missed');
     expect(compactTable(record([good, bad]))).toContain('| street | 0.9979 / 0.9990 **missed** |');
@@ -278,7 +288,7 @@ describe('tables', () => {
     const noisy = one('street', 0.3, 0.9, { noise: 0.3 });
     const text = fullTable(record([one('street', 0.3, 0.9985), noisy, pairs]), record([one('wake', 1, 0.95)]));
     expect(text).toContain('| wake, pairs | 0.6 | 0.9700 / 0.9990 | 0.98 / 0.95 **missed** |');
-    expect(text).toContain('| noise 0.3 | 0.9000 / 0.9990 |');
+    expect(text).toContain('| noise 0.3 px | 0.9000 / 0.9990 |');
     expect(text.slice(text.indexOf('## Seeds set aside'))).toContain(
       '| wake | 1 | 0.9500 / 0.9990 | 0.99 / 0.95 **missed** |',
     );
