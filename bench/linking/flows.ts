@@ -59,7 +59,7 @@ export const FLOW_CASES: readonly FlowCase[] = [
     box: sheet(-24, -25.6),
     flow: async () => vortexStreet({ spacing: 32, gap: 0.2805499 * 32, circulation: 480, speed: 30, coreRadius: 4.5 }),
     period: 1.3,
-    why: 'two spacings of the street in view; rows in the stable ratio, 9 mm apart; cores grown to half the gap (10 spacings across); circulation 2.5 speeds times a body a fifth of the spacing wide, so that the street is carried at 0.85 of the stream',
+    why: 'two spacings of the street in view; rows in the stable ratio, 9 mm apart; cores grown to half the gap (10 spacings across); circulation 2.5 speeds times a body a fifth of the spacing wide, so that the street is carried at 0.84 of the stream',
   },
   {
     name: 'wake',
@@ -103,14 +103,14 @@ export const FLOW_CASES: readonly FlowCase[] = [
     dims: 2,
     box: sheet(0, 0),
     flow: async (seed) => eddies(seed, 64, 24),
-    why: 'wavelengths from the width of the view down to 24 mm: eddies (half a wavelength) of 13 spacings and more; phases drift by half a turn-over; no mean stream',
+    why: 'wavelengths from the width of the view down to 24 mm: eddies (half a wavelength) of 13 spacings and more; modes drift at half the root mean square speed; no mean stream',
   },
   {
     name: 'random-steep',
     dims: 2,
     box: sheet(0, 0),
     flow: async (seed) => eddies(seed, 64, 16),
-    why: 'the same with wavelengths down to 16 mm: eddies from 9 spacings, gradients about a third steeper',
+    why: 'the same with wavelengths down to 16 mm: eddies from 9 spacings, gradients a sixth steeper',
   },
   {
     name: 'channel',

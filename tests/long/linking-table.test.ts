@@ -21,21 +21,21 @@ const ROWS = [...new Set(BARRED.filter(({ pairs }) => !pairs).map(({ flow, ratio
   (name) => [name.split(' ')[0], Number(name.split(' ')[1])] as const,
 );
 
-interface Record {
+interface Figures {
   readonly cases: readonly (Omit<CaseResult, 'risk'> & { readonly risk: RiskSummary })[];
   readonly failed: readonly { readonly case: LinkingCase; readonly error: string }[];
   readonly risk: RiskSummary;
 }
 
 const folder = mkdtempSync(join(tmpdir(), 'wakeloom-linking-'));
-let record: Record;
+let record: Figures;
 
 beforeAll(async () => {
   const out = join(folder, 'full.json');
   const harness = spawn(process.execPath, [HARNESS, '--set', 'full', '--out', out], { stdio: 'inherit' });
   // 1: a case failed, which the first test below shows.
   expect([0, 1]).toContain((await once(harness, 'exit'))[0]);
-  record = JSON.parse(readFileSync(out, 'utf8')) as Record;
+  record = JSON.parse(readFileSync(out, 'utf8')) as Figures;
 }, LONGEST);
 afterAll(() => rmSync(folder, { recursive: true }));
 
