@@ -4,11 +4,11 @@
  * kd-tree-javascript. Counts of rows are checked in all of them, and that threads and searches leave the same result.
  * The bar: 400 MB resident.
  */
-import { createReadStream, mkdirSync, openSync, readFileSync, readSync, rmSync } from 'node:fs';
+import { createReadStream, mkdirSync, openSync, readSync, rmSync } from 'node:fs';
 import { fileURLToPath } from 'node:url';
 import papaparse from 'papaparse';
 import { writeMadeCsv } from '../lib/made-csv.mjs';
-import { runWatched } from '../lib/run-watched.mjs';
+import { processed, stagesOf } from '../lib/processed.mjs';
 import { check, print, rate, seconds } from '../lib/timed.mjs';
 
 const FRAMES = 1000;
@@ -18,20 +18,7 @@ const ROWS = FRAMES * PER_FRAME;
 const MEMORY_BAR = 400e6;
 
 const folder = fileURLToPath(new URL('../scratch/whole-run/', import.meta.url));
-const command = fileURLToPath(new URL('../../packages/cli/bin/wakeloom.mjs', import.meta.url));
-
-/** One run of the command; its record and what it took. */
-async function process10M(csv, rows, ...options) {
-  const out = `${folder}result`;
-  rmSync(out, { recursive: true, force: true });
-  const words = ['process', csv, '--rate', '100 Hz', '--scale', '0.05 mm/px', '--out', out, '--quiet', ...options];
-  const watched = await runWatched([command, ...words]);
-  check(watched.code === 0, `exit ${watched.code}: ${watched.said}`);
-  const record = JSON.parse(readFileSync(`${out}/run.json`, 'utf8'));
-  check(record.counts.rowsRead === rows, `${record.counts.rowsRead} rows read, expected ${rows}`);
-  check(record.counts.samples > 0.9 * rows, `${record.counts.samples} samples of ${rows} rows`);
-  return { ...watched, record };
-}
+const out = `${folder}result`;
 
 function countNewlines(csv) {
   const buffer = new Uint8Array(1 << 20);
@@ -71,17 +58,16 @@ export async function run() {
     const rows = [];
     let digest = null;
     for (const threads of [1, 2]) {
-      const { seconds: took, peakBytes, record } = await process10M(csv, ROWS, '--threads', String(threads));
+      const { seconds: took, peakBytes, record } = await processed(csv, out, ROWS, '--threads', String(threads));
       digest ??= record.digest.content;
       check(digest === record.digest.content, `${threads} threads leave another result`);
-      const parts = Object.entries(record.clockTimes.seconds).filter(([, value]) => value > 0.05);
       rows.push({
         name: `whole run, 10 million detections, ${threads} thread${threads > 1 ? 's' : ' (default)'}`,
         medianSeconds: took,
         ...once,
         rate: rate(ROWS, took, 'detections'),
         peakMegabytes: megabytes(peakBytes),
-        note: `${threads > 1 ? '' : peakBytes <= MEMORY_BAR ? 'within 400 MB; ' : 'ABOVE 400 MB; '}${parts.map(([stage, value]) => `${stage} ${value.toFixed(1)} s`).join(', ')}`,
+        note: `${threads > 1 ? '' : peakBytes <= MEMORY_BAR ? 'within 400 MB; ' : 'ABOVE 400 MB; '}${stagesOf(record)}`,
       });
     }
     const perSecond = (took) => `${Math.round(bytes / took / 1e6)} MB/s`;
@@ -95,7 +81,7 @@ export async function run() {
       rate: perSecond(parsed),
     });
 
-    const tree = await process10M(csv, ROWS, '--search', 'kd-tree');
+    const tree = await processed(csv, out, ROWS, '--search', 'kd-tree');
     check(digest === tree.record.digest.content, 'the two searches leave other results');
     rows.push({
       name: 'whole run, 10 million detections, linked on kd-tree-javascript',

@@ -37,5 +37,6 @@ export function print(rows) {
     console.log(
       `${row.name.padEnd(64)} ${row.medianSeconds.toFixed(3).padStart(8)} s  ${spread.padStart(12)}  ${row.rate}${peak}`,
     );
+    if (row.note) console.log(`    ${row.note}`);
   }
 }
