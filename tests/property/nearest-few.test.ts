@@ -44,7 +44,7 @@ describe('nearest few', () => {
             const slot = (j: number) => search.slotOf[j]!;
             const want = all.sort((a, b) => square(a) - square(b) || slot(a) - slot(b)).slice(0, 8);
             const found = search.near(slot(i));
-            const rows = Array.from(search.slots.subarray(0, found), (at) => search.rowOf[at]!);
+            const rows = Array.from(search.slots.subarray(8 * slot(i), 8 * slot(i) + found), (at) => search.rowOf[at]!);
             if (rows.some((row, rank) => row !== want[rank])) expect(rows).toEqual(want);
             expect(found).toBe(Math.min(8, n - 1));
           }
@@ -60,7 +60,7 @@ describe('nearest few', () => {
       const rows = Uint32Array.from({ length: n }, (_, i) => i);
       search.build(points, rows, n, 2);
       expect(search.near(search.slotOf[n - 1]!)).toBe(3);
-      const nearest = search.rowOf[search.slots[0]!]!;
+      const nearest = search.rowOf[search.slots[3 * search.slotOf[n - 1]!]!]!;
       const distance = (j: number) => Math.hypot(points.x[j]! - points.x[n - 1]!, points.y[j]! - points.y[n - 1]!);
       const best = Math.min(...Array.from(rows.subarray(0, n - 1), distance));
       expect(distance(nearest)).toBeCloseTo(best, 12);

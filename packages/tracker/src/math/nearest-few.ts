@@ -1,10 +1,7 @@
 import type { Dims } from '../core/columns.js';
 import type { PointColumns } from './neighbour-search.js';
-import { PointCells } from './point-cells.js';
 import { Ranking } from './ranking.js';
-
-/** A hair below 1: squared distances to borders of cells are shrunk by it, so that rounding can hide no point. */
-const ROUNDING = 1 - 1e-9;
+import { RingSearch, ROUNDING } from './ring-search.js';
 
 /** Points taken at most by the quick way, in clusters many lie closer together than the density round them implies. */
 const MOST_TAKEN = 48;
@@ -26,15 +23,17 @@ const BALL = { 2: Math.PI, 3: (4 / 3) * Math.PI } as const;
  * insertion costs. Where the guess holds too few the radius grows to what the gathered surely cover; where these are too
  * few as well, or too many, cells are looked at in growing rings until no closer point can lie outside.
  *
- * Cost for k = 8: about 0.1 us a query in the plane, 0.2 us in space. Mutable: one a user; buffers are kept between builds.
+ * Cost for k = 8: about 0.2 us a point in the plane, 0.4 us in space. Memory: 4 k + 50 bytes a point. Mutable: one a user;
+ * buffers are kept between builds.
  */
-export class NearestFew extends PointCells {
-  /** Slots of the neighbours of the last query, nearest first; see `rowOf`. [k] */
-  readonly slots: Uint32Array;
-  private readonly k: number;
+export class NearestFew extends RingSearch {
+  readonly k: number;
+  /** Slots of the neighbours of each point that was asked for, nearest first: those of slot s from k s on. */
+  slots = new Int32Array(0);
+  /** How many there are; -1 for a point that was not asked for yet. */
+  private found = new Int32Array(0);
   /** Points that the guessed radius should hold: P(fewer than k) is then about 1 in 8. */
   private readonly aim: number;
-  private readonly square: Float64Array;
   /** Coordinates, one point after the other, of the points of the cells round `blockCell`, by ascending slot. */
   private blockCell = -1;
   private blockCount = 0;
@@ -54,8 +53,6 @@ export class NearestFew extends PointCells {
     super();
     this.k = k;
     this.aim = k + 1.25 * Math.sqrt(k);
-    this.slots = new Uint32Array(k);
-    this.square = new Float64Array(k);
   }
 
   /** Takes the points `points[candidates[0 .. count - 1]]`, all finite. Cost O(count). */
@@ -63,15 +60,30 @@ export class NearestFew extends PointCells {
     // A cell as wide as the radius that should hold what is aimed at, and the point itself.
     this.sort(points, candidates, count, dims, (this.aim + 1) / BALL[dims]);
     this.blockCell = -1;
+    if (this.found.length < count) {
+      const size = Math.ceil(1.25 * count);
+      this.found = new Int32Array(size);
+      this.slots = new Int32Array(size * this.k);
+    }
+    this.found.fill(-1, 0, count);
   }
 
-  /** Finds the neighbours of the point in slot `own`; returns how many there are (k, or all others where there are fewer). */
+  /** Finds the neighbours of the point in slot `own`, once; returns how many there are (k, or all others where there are fewer). */
   near(own: number): number {
+    const known = this.found[own]!;
+    return known >= 0 ? known : this.search(own);
+  }
+
+  private search(own: number): number {
     const cell = this.cellOfSlot[own]!;
     if (cell !== this.blockCell) this.gather(cell);
     const { k } = this;
-    if (this.takeWithin(own, this.blockSquare) >= k || this.takeWithin(own, this.surely(own)) >= k) return k;
-    return this.nearByRings(own);
+    let found = k;
+    if (this.takeWithin(own, this.blockSquare) < k && this.takeWithin(own, this.surely(own)) < k) {
+      found = this.nearByRings(own, k, this.slots, k * own);
+    }
+    this.found[own] = found;
+    return found;
   }
 
   /** Gathers the points of a cell and of those around it. */
@@ -144,7 +156,7 @@ export class NearestFew extends PointCells {
   /** The k nearest points of the block within a squared radius of point `own` are the answer where there are as many. */
   private takeWithin(own: number, within: number): number {
     const m = this.dims === 3 ? this.scanSpace(own, within) : this.scanPlane(own, within);
-    return m < this.k || m > MOST_TAKEN ? 0 : this.rankTaken(m);
+    return m < this.k || m > MOST_TAKEN ? 0 : this.rankTaken(own, m);
   }
 
   // Each loop is a method of its own: together they need more registers than there are, which doubles their time.
@@ -185,111 +197,13 @@ export class NearestFew extends PointCells {
     return m;
   }
 
-  /** Puts the first k of the m points taken, which come by ascending slot, into `slots`. */
-  private rankTaken(m: number): number {
+  /** Keeps the nearest k of the m points taken, which come by ascending slot. */
+  private rankTaken(own: number, m: number): number {
     const { taken, ranked, slots, blockSlot, k } = this;
     const rank = this.ranking.of(this.far, m);
     for (let i = 0; i < m; i++) ranked[rank[i]!] = taken[i]!;
-    for (let i = 0; i < k; i++) slots[i] = blockSlot[ranked[i]!]!;
+    for (let i = 0; i < k; i++) slots[k * own + i] = blockSlot[ranked[i]!]!;
     return k;
-  }
-
-  /** The same by rings of cells, however the points lie. */
-  private nearByRings(own: number): number {
-    const { px, py, pz, dims, countX, countY, countZ, edge, k, square } = this;
-    const qx = px[own]!;
-    const qy = py[own]!;
-    const qz = dims === 3 ? pz[own]! : 0;
-    const cell = this.cellOfSlot[own]!;
-    const cx = cell % countX;
-    const line = (cell - cx) / countX;
-    const cy = line % countY;
-    const cz = (line - cy) / countY;
-    let found = 0;
-    for (let ring = 0; ; ring++) {
-      found = this.takeRing(ring, cx, cy, cz, own, qx, qy, qz, found);
-      // No point outside the block of cells is nearer than its nearest side; sides beyond the field do not count.
-      let bound = Number.POSITIVE_INFINITY;
-      if (cx - ring > 0) bound = qx - this.minX - (cx - ring) * edge;
-      if (cx + ring < countX - 1) bound = Math.min(bound, this.minX + (cx + ring + 1) * edge - qx);
-      if (cy - ring > 0) bound = Math.min(bound, qy - this.minY - (cy - ring) * edge);
-      if (cy + ring < countY - 1) bound = Math.min(bound, this.minY + (cy + ring + 1) * edge - qy);
-      if (dims === 3) {
-        if (cz - ring > 0) bound = Math.min(bound, qz - this.minZ - (cz - ring) * edge);
-        if (cz + ring < countZ - 1) bound = Math.min(bound, this.minZ + (cz + ring + 1) * edge - qz);
-      }
-      if (bound === Number.POSITIVE_INFINITY) return found;
-      if (found === k && bound > 0 && square[k - 1]! <= bound * bound * ROUNDING) return found;
-    }
-  }
-
-  /** Looks at the cells of one ring (ring 0 is the point's own cell); returns the neighbours held. */
-  private takeRing(
-    ring: number,
-    cx: number,
-    cy: number,
-    cz: number,
-    own: number,
-    qx: number,
-    qy: number,
-    qz: number,
-    held: number,
-  ): number {
-    const { start, countX, countY, countZ, dims, k, square, edge } = this;
-    const deep = dims === 3;
-    const z0 = deep ? Math.max(0, cz - ring) : 0;
-    const z1 = deep ? Math.min(countZ - 1, cz + ring) : 0;
-    const y0 = Math.max(0, cy - ring);
-    const y1 = Math.min(countY - 1, cy + ring);
-    const x0 = Math.max(0, cx - ring);
-    const x1 = Math.min(countX - 1, cx + ring);
-    let found = held;
-    for (let c = z0; c <= z1; c++) {
-      for (let b = y0; b <= y1; b++) {
-        const line = (c * countY + b) * countX;
-        if (b === cy - ring || b === cy + ring || (deep && (c === cz - ring || c === cz + ring))) {
-          if (found === k) {
-            // The whole line of cells may lie beyond the farthest neighbour held.
-            const dy = b < cy ? qy - this.minY - (b + 1) * edge : b > cy ? this.minY + b * edge - qy : 0;
-            const dz = c < cz ? qz - this.minZ - (c + 1) * edge : c > cz ? this.minZ + c * edge - qz : 0;
-            if ((dy > 0 ? dy * dy : 0) + (dz > 0 ? dz * dz : 0) > square[k - 1]! * (2 - ROUNDING)) continue;
-          }
-          found = this.takeSlots(start[line + x0]!, start[line + x1 + 1]!, own, qx, qy, qz, found);
-          continue;
-        }
-        if (cx - ring >= 0)
-          found = this.takeSlots(start[line + cx - ring]!, start[line + cx - ring + 1]!, own, qx, qy, qz, found);
-        if (cx + ring < countX)
-          found = this.takeSlots(start[line + cx + ring]!, start[line + cx + ring + 1]!, own, qx, qy, qz, found);
-      }
-    }
-    return found;
-  }
-
-  private takeSlots(from: number, to: number, own: number, qx: number, qy: number, qz: number, held: number): number {
-    const { px, py, pz, slots, square, k } = this;
-    const deep = this.dims === 3;
-    let found = held;
-    for (let slot = from; slot < to; slot++) {
-      const dx = px[slot]! - qx;
-      const dy = py[slot]! - qy;
-      let d = dx * dx + dy * dy;
-      if (deep) {
-        const dz = pz[slot]! - qz;
-        d += dz * dz;
-      }
-      if (slot === own || (found === k && (d > square[k - 1]! || (d === square[k - 1]! && slot > slots[k - 1]!))))
-        continue;
-      let at = found < k ? found++ : k - 1;
-      while (at > 0 && (square[at - 1]! > d || (square[at - 1]! === d && slots[at - 1]! > slot))) {
-        square[at] = square[at - 1]!;
-        slots[at] = slots[at - 1]!;
-        at--;
-      }
-      square[at] = d;
-      slots[at] = slot;
-    }
-    return found;
   }
 }
 

@@ -94,8 +94,9 @@ function gatherPair(
     dims,
   );
   for (let i = 0; i < rows.length; i += stride) {
-    const found = search.near(search.slotOf[i]!);
-    const near = Array.from({ length: found }, (_, j) => search.rowOf[search.slots[j]!]!);
+    const own = search.slotOf[i]!;
+    const found = search.near(own);
+    const near = Array.from({ length: found }, (_, j) => search.rowOf[search.slots[search.k * own + j]!]!);
     const fit = surface(places, i, near, dims);
     if (fit === null) continue;
     for (let axis = 0; axis < dims; axis++) {

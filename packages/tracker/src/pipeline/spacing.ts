@@ -30,7 +30,7 @@ export function spacingOfNeighbours(blocks: readonly DetectionBlock[], dims: Dim
       for (let slot = 0; slot < rows; slot++) {
         const found = search.near(slot);
         if (found < NEIGHBOUR) continue;
-        const other = search.slots[NEIGHBOUR - 1];
+        const other = search.slots[NEIGHBOUR * slot + NEIGHBOUR - 1];
         const dx = search.px[other] - search.px[slot];
         const dy = search.py[other] - search.py[slot];
         const dz = dims === 3 ? search.pz[other] - search.pz[slot] : 0;

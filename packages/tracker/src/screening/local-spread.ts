@@ -25,29 +25,28 @@ const FEWEST_SPREADS = 3;
 export class LocalSpread {
   private readonly search: NearestFew;
   private readonly plane: PlaneTest;
-  private readonly around: Int32Array;
   private readonly values: Float64Array;
   private readonly votes = new Int32Array(3);
 
   constructor(search: NearestFew, plane: PlaneTest, neighbours: number) {
     this.search = search;
     this.plane = plane;
-    this.around = new Int32Array(neighbours);
     this.values = new Float64Array(neighbours);
   }
 
   /**
-   * `deviation[c]`: how far component c of sample `own` is off, NaN where it passed. Neighbours are those of the last
-   * query, which is lost. True where one component stands out.
+   * `deviation[c]`: how far component c of sample `own` is off, NaN where it passed. The search must know
+   * the neighbours of `own`. True where one component stands out.
    */
   standsOut(velocity: readonly Float64Array[], own: number, found: number, deviation: Float64Array): boolean {
-    const { search, around, votes } = this;
-    for (let i = 0; i < found; i++) around[i] = search.slots[i]!;
+    const { search, votes } = this;
+    const base = search.k * own;
     votes.fill(0);
     let told = 0;
     // Farther than so many times the median of the spreads: farther than that of more than half of them.
     for (let i = 0; i < found; i++) {
-      const near = search.near(around[i]!);
+      const other = search.slots[base + i]!;
+      const near = search.near(other);
       if (near < FEWEST_SPREADS + 1) continue;
       told++;
       let open = false;
@@ -55,8 +54,8 @@ export class LocalSpread {
         if (Number.isNaN(deviation[c]!)) continue;
         const least = deviation[c]! / (STANDS_OUT * SIGMA_PER_MEDIAN);
         if (
-          this.beside(velocity[c]!, own, near) < least ||
-          this.plane.spread(velocity[c]!, around[i]!, near, own) < least
+          this.beside(velocity[c]!, other, near, own) < least ||
+          this.plane.spread(velocity[c]!, other, near, own) < least
         ) {
           votes[c] = votes[c]! + 1;
           if (2 * votes[c]! > found) return true;
@@ -69,12 +68,13 @@ export class LocalSpread {
     return 2 * Math.max(votes[0]!, votes[1]!, votes[2]!) > told;
   }
 
-  /** Median distance of the neighbours' velocities from their median, `without` left out. */
-  private beside(velocity: Float64Array, without: number, near: number): number {
+  /** Median distance of the velocities of the neighbours of `other` from their median, `without` left out. */
+  private beside(velocity: Float64Array, other: number, near: number, without: number): number {
     const { values, search } = this;
+    const base = search.k * other;
     let n = 0;
     for (let i = 0; i < near; i++) {
-      const slot = search.slots[i]!;
+      const slot = search.slots[base + i]!;
       if (slot !== without) values[n++] = velocity[slot]!;
     }
     const middle = medianOfFew(values, n);

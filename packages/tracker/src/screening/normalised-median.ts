@@ -51,26 +51,27 @@ export function normalisedMedianResidual(centre: number, values: Float64Array, c
 const ROOM = 1e-12;
 
 /**
- * True where the published test surely passes against eight neighbours `values[slots[0 .. 7]]`: without the second
+ * True where the published test surely passes against eight neighbours `values[slots[base .. base + 7]]`: without the second
  * median, for it lies at least as high as a bound that at most three distances from the first stay below. False where
  * that does not show it, which says nothing. `sorted`: scratch of 8.
  */
 export function surelyPassesEight(
   values: Float64Array,
-  slots: Uint32Array,
+  slots: Int32Array,
+  base: number,
   centre: number,
   epsilon: number,
   threshold: number,
   sorted: Float64Array,
 ): boolean {
-  const a = values[slots[0]!]!;
-  const b = values[slots[1]!]!;
-  const c = values[slots[2]!]!;
-  const d = values[slots[3]!]!;
-  const e = values[slots[4]!]!;
-  const f = values[slots[5]!]!;
-  const g = values[slots[6]!]!;
-  const h = values[slots[7]!]!;
+  const a = values[slots[base]!]!;
+  const b = values[slots[base + 1]!]!;
+  const c = values[slots[base + 2]!]!;
+  const d = values[slots[base + 3]!]!;
+  const e = values[slots[base + 4]!]!;
+  const f = values[slots[base + 5]!]!;
+  const g = values[slots[base + 6]!]!;
+  const h = values[slots[base + 7]!]!;
   sortEight(a, b, c, d, e, f, g, h, sorted);
   const middle = (sorted[3]! + sorted[4]!) / 2;
   // Passes where |centre - middle| <= threshold (spread + epsilon).
@@ -137,7 +138,11 @@ export class MedianScreen {
   /** By slot of the search: velocity, and what its standard error is a multiple of. */
   private velocity: [Float64Array, Float64Array, Float64Array];
   private root = new Float64Array(0);
+  private floor = new Float64Array(0);
+  /** By slot: row of a sample that is judged, -1 for one that is a neighbour only. */
   private judgedRow = new Int32Array(0);
+  /** By slot: bits of the components that do not surely pass. */
+  private open = new Uint8Array(0);
 
   constructor(test: MedianTest) {
     this.test = test;
@@ -161,42 +166,81 @@ export class MedianScreen {
     bit: number,
   ): number {
     if (count <= FEWEST_NEIGHBOURS) return 0;
-    const { search, test, deviation } = this;
-    const { dims } = columns;
-    search.build(columns, candidates, count, dims);
-    this.gather(columns, candidates, count, judged);
-    const { root, judgedRow } = this;
-    const [u, v, w] = this.velocity;
-    let failed = 0;
-    // In the order of slots: neighbours of one sample are still at hand for the next.
+    const { search, open, dims } = this.take(columns, candidates, count, judged);
     for (let slot = 0; slot < count; slot++) {
-      const row = judgedRow[slot]!;
-      if (row < 0) continue;
-      const found = search.near(slot);
-      if (found < FEWEST_NEIGHBOURS) continue;
-      const speed = Math.abs(u[slot]!) + Math.abs(v[slot]!) + (dims === 3 ? Math.abs(w[slot]!) : 0);
-      const floor = speed * ROUNDING_SHARE;
-      const gain = root[slot]!;
-      deviation[0] = this.off(u, slot, found, floor + (test.epsilon ?? gain * test.noise[0]));
-      deviation[1] = this.off(v, slot, found, floor + (test.epsilon ?? gain * test.noise[1]));
-      deviation[2] = dims === 3 ? this.off(w, slot, found, floor + (test.epsilon ?? gain * test.noise[2])) : Number.NaN;
-      if (!(deviation[0] >= 0 || deviation[1] >= 0 || deviation[2] >= 0)) continue;
-      if (this.local.standsOut(this.velocity, slot, found, deviation)) {
-        flags[row] = flags[row]! | bit;
-        failed++;
-      }
+      // Not judged: too few neighbours.
+      if (this.judgedRow[slot]! >= 0 && search.near(slot) < FEWEST_NEIGHBOURS) this.judgedRow[slot] = -1;
+    }
+    for (let c = 0; c < dims; c++) this.sift(c, count);
+    let failed = 0;
+    for (let slot = 0; slot < count; slot++) {
+      if (open[slot] === 0 || !this.fails(slot, dims)) continue;
+      const row = this.judgedRow[slot]!;
+      flags[row] = flags[row]! | bit;
+      failed++;
     }
     return failed;
+  }
+
+  /** Leaves open those judged samples whose component c does not surely pass. */
+  private sift(c: number, count: number): void {
+    const { judgedRow, open, sorted, search } = this;
+    const { slots, k } = search;
+    const { threshold } = this.test;
+    const velocity = this.velocity[c]!;
+    const bit = 1 << c;
+    for (let slot = 0; slot < count; slot++) {
+      if (judgedRow[slot]! < 0) continue;
+      // Known by now: no search.
+      const eight = search.near(slot) === 8;
+      const epsilon = this.epsilon(c, slot);
+      if (eight && surelyPassesEight(velocity, slots, k * slot, velocity[slot]!, epsilon, threshold, sorted)) continue;
+      open[slot] = open[slot]! | bit;
+    }
+  }
+
+  /** Decides about a sample by its open components. */
+  private fails(slot: number, dims: Dims): boolean {
+    const { search, deviation, open } = this;
+    const found = search.near(slot);
+    let off = false;
+    for (let c = 0; c < 3; c++) {
+      const tested = c < dims && (open[slot]! & (1 << c)) !== 0;
+      deviation[c] = tested ? this.off(this.velocity[c]!, slot, found, this.epsilon(c, slot)) : Number.NaN;
+      if (deviation[c]! >= 0) off = true;
+    }
+    return off && this.local.standsOut(this.velocity, slot, found, deviation);
+  }
+
+  /** Noise of component c of a sample, with room for rounding. */
+  private epsilon(c: number, slot: number): number {
+    const { epsilon, noise } = this.test;
+    return this.floor[slot]! + (epsilon ?? this.root[slot]! * noise[c]!);
+  }
+
+  /** Sorts the candidates into cells and takes their velocities along. */
+  private take(
+    columns: VelocityColumns,
+    candidates: Uint32Array,
+    count: number,
+    judged: number,
+  ): { readonly search: NearestFew; readonly open: Uint8Array; readonly dims: Dims } {
+    const { search } = this;
+    search.build(columns, candidates, count, columns.dims);
+    this.gather(columns, candidates, count, judged);
+    return { search, open: this.open, dims: columns.dims };
   }
 
   private gather(columns: VelocityColumns, candidates: Uint32Array, count: number, judged: number): void {
     if (this.root.length < count) {
       const size = Math.ceil(count * 1.25);
       this.root = new Float64Array(size);
+      this.floor = new Float64Array(size);
+      this.open = new Uint8Array(size);
       this.judgedRow = new Int32Array(size);
       this.velocity = [new Float64Array(size), new Float64Array(size), new Float64Array(columns.dims === 3 ? size : 0)];
     }
-    const { root, judgedRow } = this;
+    const { root, floor, open, judgedRow } = this;
     const { slotOf } = this.search;
     const [u, v, w] = this.velocity;
     const deep = columns.dims === 3;
@@ -207,6 +251,9 @@ export class MedianScreen {
       v[slot] = columns.v[row]!;
       if (deep) w[slot] = columns.w[row]!;
       root[slot] = columns.root[row]!;
+      const speed = Math.abs(u[slot]!) + Math.abs(v[slot]!) + (deep ? Math.abs(w[slot]!) : 0);
+      floor[slot] = speed * ROUNDING_SHARE;
+      open[slot] = 0;
       judgedRow[slot] = i < judged ? row : -1;
     }
   }
@@ -217,11 +264,11 @@ export class MedianScreen {
     const { slots } = this.search;
     const threshold = this.test.threshold;
     const centre = velocity[slot]!;
-    if (found === 8 && surelyPassesEight(velocity, slots, centre, epsilon, threshold, this.sorted)) return Number.NaN;
+    const base = this.search.k * slot;
     const close = threshold * epsilon;
     let within = 0;
     for (let i = 0; i < found; i++) {
-      const value = velocity[slots[i]!]!;
+      const value = velocity[slots[base + i]!]!;
       values[i] = value;
       if (Math.abs(value - centre) <= close) within++;
     }

@@ -28,7 +28,7 @@ export class PlaneTest {
   /** Distance of the judged sample from the plane, of the last call of `residual`; NaN where there was none. */
   deviation = Number.NaN;
 
-  /** `velocity` by slot; the neighbours are those of the search's last query. NaN where they determine no plane. */
+  /** `velocity` by slot; the search must know the neighbours of `own`. NaN where they determine no plane. */
   residual(velocity: Float64Array, own: number, found: number, epsilon: number): number {
     const spread = this.spread(velocity, own, found, -1);
     return this.deviation / (spread + epsilon);
@@ -40,7 +40,8 @@ export class PlaneTest {
     const { slots, px, py, pz, dims } = search;
     const p = dims + 1;
     this.deviation = Number.NaN;
-    const far = slots[found - 1]!;
+    const base = search.k * own;
+    const far = slots[base + found - 1]!;
     let reach = Math.abs(px[far]! - px[own]!) + Math.abs(py[far]! - py[own]!);
     if (dims === 3) reach += Math.abs(pz[far]! - pz[own]!);
     if (!(reach > 0)) return Number.NaN;
@@ -50,7 +51,7 @@ export class PlaneTest {
     const q = p + 1;
     let n = 0;
     for (let i = 0; i < found; i++) {
-      const slot = slots[i]!;
+      const slot = slots[base + i]!;
       if (slot === without) continue;
       const at = 4 * n;
       design[at] = 1;
@@ -78,6 +79,7 @@ export class PlaneTest {
   private spreadInPlane(velocity: Float64Array, own: number, found: number, without: number, scale: number): number {
     const { search, design, sizes } = this;
     const { slots, px, py } = search;
+    const base = search.k * own;
     const x0 = px[own]!;
     const y0 = py[own]!;
     const v0 = velocity[own]!;
@@ -91,7 +93,7 @@ export class PlaneTest {
     let syv = 0;
     let n = 0;
     for (let i = 0; i < found; i++) {
-      const slot = slots[i]!;
+      const slot = slots[base + i]!;
       if (slot === without) continue;
       const x = (px[slot]! - x0) * scale;
       const y = (py[slot]! - y0) * scale;
