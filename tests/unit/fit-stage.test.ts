@@ -83,11 +83,11 @@ describe('fit stage', () => {
     const start: StartRemoteFit = (parameters) => {
       const fit = createFrameFit(parameters);
       let before: Promise<unknown> = Promise.resolve();
-      const frames = (block: LinkedBlock | null) => {
-        const rows = block === null ? 0 : rowCount(block);
+      const frames = (block: LinkedBlock) => {
+        const rows = rowCount(block);
         waiting += rows;
         most = Math.max(most, waiting);
-        const samples = [...(block === null ? fit.finish() : fit.add(block))].filter((one) => one !== null);
+        const samples = [...fit.add(block)].filter((one) => one !== null);
         // The first answer waits until many more frames lie here, and the others wait for it.
         const first = ++calls === 1;
         const answer = before.then(async () => {
@@ -99,7 +99,14 @@ describe('fit stage', () => {
         before = answer;
         return answer;
       };
-      return { frames, release: () => {} };
+      const rest = fit.finish();
+      // What is left comes a block at a time.
+      const next = async () => {
+        for (const samples of { [Symbol.iterator]: () => ({ next: () => rest.next() }) })
+          if (samples !== null) return [samples];
+        return [];
+      };
+      return { frames, rest: next, release: () => {} };
     };
     const late = await gather(fitStage(stageInput({ threads: 2 }), repeated(block, 6), start));
     const alone = await gather(fitStage(stageInput(), repeated(block, 6)));
@@ -117,6 +124,7 @@ describe('fit stage', () => {
           controller.abort();
           throw new Error('worker gone');
         },
+        rest: async () => [],
         release: () => {},
       })),
     );
@@ -129,6 +137,7 @@ describe('fit stage', () => {
     const failing = gather(
       fitStage(stageInput(), oneByOne(block), () => ({
         frames: () => Promise.reject(new Error('worker gone')),
+        rest: async () => [],
         release: () => {},
       })),
     );

@@ -18,8 +18,10 @@ const BLOCKS_AHEAD = 9;
 
 /** A fit that goes on in another thread. */
 export interface RemoteFit {
-  /** Sends the next frames (null: there are no more), borrowed until it returns; resolves in order to the samples finished by then. */
-  frames(block: LinkedBlock | null): Promise<readonly SampleBlock[]>;
+  /** Sends the next frames, borrowed until it returns; resolves in order to the samples finished by then. */
+  frames(block: LinkedBlock): Promise<readonly SampleBlock[]>;
+  /** When all frames were sent: some of the samples that are left. To be called until it resolves to none. */
+  rest(): Promise<readonly SampleBlock[]>;
   /** Takes samples back that are done with. */
   release(samples: SampleBlock): void;
 }
@@ -79,11 +81,11 @@ async function* fitElsewhere(
 ): AsyncGenerator<SampleBlock> {
   const flight: { readonly samples: Promise<readonly SampleBlock[]>; readonly rows: number }[] = [];
   let ahead = 0;
-  const send = (block: LinkedBlock | null): void => {
+  const send = (block: LinkedBlock): void => {
     const samples = fit.frames(block);
     // Awaited in its turn; until then a failure must not count as unhandled.
     samples.catch(() => {});
-    const rows = block === null ? 0 : rowCount(block);
+    const rows = rowCount(block);
     flight.push({ samples, rows });
     ahead += rows;
   };
@@ -91,10 +93,7 @@ async function* fitElsewhere(
     const { samples, rows } = flight.shift()!;
     const answer = await samples;
     ahead -= rows;
-    for (const one of answer) {
-      yield one;
-      fit.release(one);
-    }
+    yield* released(answer, fit);
   }
   try {
     for await (const block of blocks) {
@@ -102,9 +101,20 @@ async function* fitElsewhere(
       send(block);
       while (ahead > ROWS_AHEAD || flight.length >= BLOCKS_AHEAD) yield* next();
     }
-    send(null);
     while (flight.length > 0) yield* next();
+    for (;;) {
+      const answer = await fit.rest();
+      if (answer.length === 0) break;
+      yield* released(answer, fit);
+    }
   } finally {
     await Promise.allSettled(flight.map(({ samples }) => samples));
+  }
+}
+
+function* released(answer: readonly SampleBlock[], fit: RemoteFit): Generator<SampleBlock> {
+  for (const samples of answer) {
+    yield samples;
+    fit.release(samples);
   }
 }

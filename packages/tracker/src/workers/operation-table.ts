@@ -12,8 +12,9 @@ export type SourceRef =
 /** Work that the coordinating worker gives to the others. Buffers are meant to be moved. */
 export type KernelOperations = {
   /**
-   * The next frames of a fit that goes on in the worker (a `LinkedBlock`, null for none any more) and the samples finished
-   * by then (`SampleBlock`s). A fit is begun by the first call that names it, and over with the call without frames.
+   * The next frames of a fit that goes on in the worker (a `LinkedBlock`) and the samples finished by then
+   * (`SampleBlock`s). Without frames: there are no more, and some of the samples left; to be called until none come. A fit
+   * is begun by the first call that names it.
    * `spares`: buffers of samples that came, to be filled anew, and back with the answer those of frames.
    */
   'fit-frames': {
