@@ -11,18 +11,23 @@ export class ActivePathlines {
   z = new Float64Array(0);
   /** Time of the last detection. */
   time = new Float64Array(0);
+  /** Where and when it was last detected; as x, y, z, time unless it missed frames. */
+  rx = new Float64Array(0);
+  ry = new Float64Array(0);
+  rz = new Float64Array(0);
+  rtime = new Float64Array(0);
+  /** Where it is expected in the frame at hand. */
+  px = new Float64Array(0);
+  py = new Float64Array(0);
+  pz = new Float64Array(0);
   /** Velocity over the last link, at its middle; NaN for a pathline with one detection. */
   u = new Float64Array(0);
   v = new Float64Array(0);
   w = new Float64Array(0);
-  /** Velocity over the link before; NaN with fewer than three detections. */
-  u0 = new Float64Array(0);
-  v0 = new Float64Array(0);
-  w0 = new Float64Array(0);
-  /** Middle of the last link. */
-  mx = new Float64Array(0);
-  my = new Float64Array(0);
-  mz = new Float64Array(0);
+  /** Velocity of the flow about it in the frame at hand, NaN: not looked at. */
+  fu = new Float64Array(0);
+  fv = new Float64Array(0);
+  fw = new Float64Array(0);
   /** Own deviation from the flow picture, averaged over the last links. */
   du = new Float64Array(0);
   dv = new Float64Array(0);
@@ -45,6 +50,28 @@ export class ActivePathlines {
     this.missed = missed;
   }
 
+  /** Notes the velocity of the flow about entry `i`. */
+  noteFlow(i: number, flow: Float64Array): void {
+    this.fu[i] = flow[0];
+    this.fv[i] = flow[1];
+    this.fw[i] = flow[2];
+  }
+
+  /** Entry `i` missed the frame at `time`: it goes on from where it was expected. */
+  miss(i: number, time: number): void {
+    const per = 1 / (time - this.time[i]);
+    if (this.age[i] >= 2) {
+      this.u[i] = (this.px[i] - this.x[i]) * per;
+      this.v[i] = (this.py[i] - this.y[i]) * per;
+      this.w[i] = (this.pz[i] - this.z[i]) * per;
+    }
+    this.x[i] = this.px[i];
+    this.y[i] = this.py[i];
+    this.z[i] = this.pz[i];
+    this.time[i] = time;
+    this.missed[i]++;
+  }
+
   /** Appends entry `i` of `from` with one more missed frame. */
   carry(from: ActivePathlines, i: number): void {
     const j = this.count++;
@@ -53,18 +80,17 @@ export class ActivePathlines {
     this.y[j] = from.y[i];
     this.z[j] = from.z[i];
     this.time[j] = from.time[i];
+    this.rx[j] = from.rx[i];
+    this.ry[j] = from.ry[i];
+    this.rz[j] = from.rz[i];
+    this.rtime[j] = from.rtime[i];
+    this.fu[j] = Number.NaN;
     this.u[j] = from.u[i];
     this.v[j] = from.v[i];
     this.w[j] = from.w[i];
-    this.u0[j] = from.u0[i];
-    this.v0[j] = from.v0[i];
-    this.w0[j] = from.w0[i];
     this.du[j] = from.du[i];
     this.dv[j] = from.dv[i];
     this.dw[j] = from.dw[i];
-    this.mx[j] = from.mx[i];
-    this.my[j] = from.my[i];
-    this.mz[j] = from.mz[i];
     this.age[j] = from.age[i];
     this.missed[j] = from.missed[i];
   }
@@ -75,18 +101,22 @@ const ACTIVE_FLOATS = [
   'y',
   'z',
   'time',
+  'fu',
+  'fv',
+  'fw',
+  'px',
+  'py',
+  'pz',
+  'rx',
+  'ry',
+  'rz',
+  'rtime',
   'u',
   'v',
   'w',
-  'u0',
-  'v0',
-  'w0',
   'du',
   'dv',
   'dw',
-  'mx',
-  'my',
-  'mz',
 ] as const;
 
 function copyInt(old: Int32Array, size: number): Int32Array<ArrayBuffer> {

@@ -2,28 +2,35 @@ import type { DetectionBlock, Dims } from '../core/columns.js';
 import type { NeighbourSearch } from '../math/neighbour-search.js';
 import type { ActivePathlines } from './active-pathlines.js';
 import { Candidates } from './candidates.js';
+import type { FrameLinks } from './frame-links.js';
 import { decay } from './link-risk.js';
-import { GUESS_SIZE, type Predictors } from './predictors.js';
+import type { Prediction } from './predictors.js';
+import type { Presence } from './presence.js';
 
 /**
  * Gate: a candidate farther than this many times its expected square is none. Wide (7 standard deviations an axis),
- * because expected squares are averages over a cell and surprises have heavier tails than Gaussian ones; what lies
- * near the gate carries a high risk and is left out by that.
+ * because expected squares are averages and surprises have heavier tails than Gaussian ones; what lies near the gate
+ * carries a high risk and is left out by that.
  */
 const GATE = 25;
 /** Handicap of a pathline with a single detection against one that has proved itself, in units of expected squares. */
 const NEWBORN_HANDICAP = 3;
 /** Cost above which a pathline had better stay without a detection: no candidate within the gate costs more. */
 export const PRICE = GATE + NEWBORN_HANDICAP;
-/** A pathline with a single detection may itself be a stray one: its candidates weigh half. */
-const NEWBORN_TRUST = 0.5;
 
-/** Finds the candidates of every active pathline in one frame. Buffers are kept; one object a thread. */
+/** What decides where a pathline is looked for. */
+export interface Guide {
+  /** Predicts entry `i` at `time` into `prediction`; false: this pathline waits for a later round. */
+  predict(active: ActivePathlines, i: number, time: number, prediction: Prediction): boolean;
+}
+
+/** Finds the candidates of pathlines in one frame. Buffers are kept; one object a thread. */
 export class CandidateSearch {
   readonly candidates = new Candidates();
-  /** Guesses behind each pathline's prediction and the cell they were made in, for the record. */
-  guessOfRow = new Float64Array(0);
-  cellOfRow = new Int32Array(0);
+  /** Active pathline of each row of the candidates. */
+  rowEntry = new Int32Array(0);
+  /** Probability that each row's particle is in this frame at all. */
+  trustOfRow = new Float64Array(0);
   private near = new Int32Array(0);
   private readonly dims: Dims;
   private readonly reach: number;
@@ -37,57 +44,78 @@ export class CandidateSearch {
     this.search = search;
   }
 
-  /** Rows `from` .. `to` - 1 of the block are the frame at `time`. */
+  /** Takes the frame in rows `from` .. `to` - 1 of the block. */
+  begin(block: DetectionBlock, from: number, to: number): void {
+    const { dims, reach, search } = this;
+    if (this.near.length < to - from) this.near = new Int32Array((to - from) * 2);
+    search.build(block, from, to, dims, [reach, reach, dims === 3 ? reach * this.depthNoise : reach]);
+  }
+
+  /**
+   * Candidates of the `count` active pathlines listed in `entries`, among the detections of the frame
+   * that are free in the links. Those that the guide lets wait get no row.
+   */
   collect(
     active: ActivePathlines,
+    entries: Int32Array,
+    count: number,
     block: DetectionBlock,
     from: number,
-    to: number,
     time: number,
-    predictors: Predictors,
+    { columns, takenBy }: FrameLinks,
+    guide: Guide,
+    prediction: Prediction,
+    presence: Presence,
   ): void {
-    const { candidates, dims, reach, search } = this;
+    const { candidates, dims, reach, search, near } = this;
     const depth = dims === 3 ? 1 / this.depthNoise : 1;
-    this.reserve(active.count, to - from);
-    const { guessOfRow, cellOfRow, near } = this;
-    candidates.begin(active.count, to - from);
-    search.build(block, from, to, dims, [reach, reach, dims === 3 ? reach * this.depthNoise : reach]);
+    if (this.rowEntry.length < count) {
+      this.rowEntry = new Int32Array(count * 2);
+      this.trustOfRow = new Float64Array(count * 2);
+    }
+    const { rowEntry, trustOfRow } = this;
+    candidates.begin(count, columns);
     const { x, y, z } = block;
-    for (let i = 0; i < active.count; i++) {
-      predictors.predict(active, i, time);
-      guessOfRow.set(predictors.guess, i * GUESS_SIZE);
-      cellOfRow[i] = predictors.cell;
-      const { expected } = predictors;
+    const reachSquare = reach * reach;
+    let rows = 0;
+    for (let k = 0; k < count; k++) {
+      const i = entries[k];
+      if (!guide.predict(active, i, time, prediction)) continue;
+      rowEntry[rows] = i;
+      const { expected } = prediction;
+      const px = prediction.x;
+      const py = prediction.y;
+      const pz = prediction.z;
+      active.px[i] = px;
+      active.py[i] = py;
+      active.pz[i] = pz;
       const newborn = active.age[i] < 2;
-      const gate = Math.min(GATE * expected, reach * reach);
+      const gate = Math.min(GATE * prediction.widest, reachSquare);
       const handicap = newborn ? NEWBORN_HANDICAP : 0;
       const scale = 1 / expected;
-      const peak = peakDensity(dims, expected) * (newborn ? NEWBORN_TRUST : 1);
-      const found = search.near(predictors.x, predictors.y, predictors.z, near);
+      const perWidest = 1 / prediction.widest;
+      const trust = presence.of(active.age[i], active.missed[i]);
+      trustOfRow[rows] = trust;
+      const peak = peakDensity(dims, expected) * trust;
+      const found = search.near(px, py, pz, near);
       candidates.reserve(found);
       for (let n = 0; n < found; n++) {
         const row = near[n];
-        const dx = x[row] - predictors.x;
-        const dy = y[row] - predictors.y;
-        const dz = dims === 3 ? (z[row] - predictors.z) * depth : 0;
+        if (takenBy[row - from] !== -1) continue;
+        const dx = x[row] - px;
+        const dy = y[row] - py;
+        const dz = dims === 3 ? (z[row] - pz) * depth : 0;
         const square = dx * dx + dy * dy + dz * dz;
         if (square > gate) continue;
         const q = square * scale;
         const e = candidates.edges++;
         candidates.column[e] = row - from;
-        candidates.cost[e] = q + handicap;
+        candidates.cost[e] = square * perWidest + handicap;
         candidates.density[e] = peak * surpriseDecay(dims, q);
       }
-      candidates.start[i + 1] = candidates.edges;
+      candidates.start[++rows] = candidates.edges;
     }
-  }
-
-  private reserve(rows: number, columns: number): void {
-    if (this.cellOfRow.length < rows) {
-      this.cellOfRow = new Int32Array(rows * 2);
-      this.guessOfRow = new Float64Array(rows * 2 * GUESS_SIZE);
-    }
-    if (this.near.length < columns) this.near = new Int32Array(columns * 2);
+    candidates.rows = rows;
   }
 }
 
@@ -99,7 +127,7 @@ export function peakDensity(dims: Dims, expected: number): number {
   return dims === 2 ? 1 / (Math.PI * expected) : 0.329843 / (expected * Math.sqrt(expected));
 }
 
-/** How the density falls off with the squared distance in units of E: exp(-q) in the plane, exp(-3/2 q) in space. */
+/** How the density falls off with the squared distance in units of E: like exp(-q) in the plane, exp(-3/2 q) in space, with a heavier tail. */
 export function surpriseDecay(dims: Dims, q: number): number {
   return decay(dims === 2 ? q : 1.5 * q);
 }

@@ -2,9 +2,11 @@ import { CellIndex } from '../math/cell-index.js';
 import { KdSearch } from '../math/kd-search.js';
 import type { NeighbourSearch } from '../math/neighbour-search.js';
 import type { LinkingSettings } from '../run/settings.js';
-import type { FlowGridData } from './flow-grid.js';
-import { Linker } from './linker.js';
-import { FlowPictures } from './pictures.js';
+import { FlowGrid, type FlowGridData } from './flow-grid.js';
+import { Linker, type LinkKnowledge } from './linker.js';
+
+/** How far from the flow about it a lone detection's link may lead, in spacings, unless the reach was set. */
+const LONE_REACH = 0.8;
 
 /** What linking takes from the first look at the data. */
 export interface LinkPrior {
@@ -18,6 +20,8 @@ export interface LinkPrior {
   /** Particles per area (volume) of link space. */
   readonly density: number;
   readonly flow: FlowGridData;
+  /** What was learnt of the first frames; null: nothing yet. */
+  readonly knowledge: LinkKnowledge | null;
   /** Image pairs: no pathline has more than two detections. */
   readonly pairs: boolean;
 }
@@ -29,9 +33,15 @@ export function searchFor(name: LinkingSettings['search']): NeighbourSearch {
 
 /** A linker ready for the first frame. */
 export function createLinker(settings: LinkingSettings, prior: LinkPrior): Linker {
+  const flow = prior.knowledge?.flow ?? prior.flow;
   const linker = new Linker({
+    pairs: prior.pairs,
     dims: prior.dims,
     reach: prior.reach,
+    loneReach:
+      settings.reach === 'auto'
+        ? LONE_REACH / (prior.dims === 2 ? Math.sqrt(prior.density) : Math.cbrt(prior.density))
+        : prior.reach,
     bridge: prior.pairs ? 0 : settings.bridge,
     care: settings.care,
     riskLimit: settings.riskLimit,
@@ -39,9 +49,9 @@ export function createLinker(settings: LinkingSettings, prior: LinkPrior): Linke
     noiseSquare: prior.noiseSquare,
     expected: prior.expected,
     density: prior.density,
-    pictures: new FlowPictures(prior.flow),
+    picture: new FlowGrid({ ...flow, moments: flow.moments.slice() }),
     search: searchFor(settings.search),
   });
-  linker.pairsOnly = prior.pairs;
+  if (prior.knowledge !== null) linker.recall(prior.knowledge);
   return linker;
 }

@@ -122,6 +122,17 @@ export class FlowGrid {
     for (let n = 0; n < moments.length; n++) moments[n] *= keep;
   }
 
+  /** The same flow with time turned round: all velocities change sign. */
+  turnRound(): void {
+    const { moments, model, stride, modelStride, dims } = this;
+    const still = dims === 2 ? 6 : 10;
+    const stillModel = 1 + dims;
+    for (let cell = 0; cell < this.cells; cell++) {
+      for (let n = still; n < stride; n++) moments[cell * stride + n] = -moments[cell * stride + n];
+      for (let n = stillModel; n < modelStride; n++) model[cell * modelStride + n] = -model[cell * modelStride + n];
+    }
+  }
+
   /** Adds a velocity seen at a place to the cell that holds it. */
   learn(x: number, y: number, z: number, u: number, v: number, w: number): void {
     this.learnIn(this.cellAt(x, y, z), 1, x, y, z, u, v, w);

@@ -1,71 +1,56 @@
 import type { ActivePathlines } from './active-pathlines.js';
-import type { FlowGrid } from './flow-grid.js';
+import type { LastStep } from './last-step.js';
 
-/** Weight of the newest link in a pathline's own deviation from the flow picture. */
+/** Weight of the newest link in a pathline's own deviation from the flow about it. */
 const DEVIATION_GAIN = 0.5;
 /** Detections beyond which more tell nothing new. */
 const AGE_CAP = 200;
 
-/** One detection of the frame. */
-export interface Place {
-  readonly x: number;
-  readonly y: number;
-  readonly z: number;
-  readonly time: number;
-}
-
-/** Appends a pathline that begins with this detection to `to`. */
-export function beginPathline(to: ActivePathlines, id: number, place: Place): void {
-  const j = append(to, id, place);
+/** Appends a pathline that begins with a detection to `to`. */
+export function beginPathline(to: ActivePathlines, id: number, x: number, y: number, z: number, time: number): void {
+  const j = append(to, id, x, y, z, time);
   to.age[j] = 1;
   to.u[j] = to.v[j] = to.w[j] = Number.NaN;
-  to.u0[j] = to.v0[j] = to.w0[j] = Number.NaN;
-  to.mx[j] = to.my[j] = to.mz[j] = Number.NaN;
-  to.du[j] = to.dv[j] = to.dw[j] = 0;
+  to.du[j] = to.dv[j] = to.dw[j] = Number.NaN;
 }
 
-/** Appends entry `i` of `from`, grown by this detection, to `to`. `flow` is borrowed as scratch [3]. */
+/** Appends entry `i` of `from`, grown by a detection that it reached with `step`, to `to`. */
 export function growPathline(
   from: ActivePathlines,
   i: number,
   to: ActivePathlines,
-  place: Place,
-  picture: FlowGrid,
-  flow: Float64Array,
+  x: number,
+  y: number,
+  z: number,
+  time: number,
+  step: LastStep,
 ): void {
-  const j = append(to, from.id[i], place);
-  const perStep = 1 / (place.time - from.time[i]);
-  const u = (place.x - from.x[i]) * perStep;
-  const v = (place.y - from.y[i]) * perStep;
-  const w = (place.z - from.z[i]) * perStep;
-  const mx = 0.5 * (place.x + from.x[i]);
-  const my = 0.5 * (place.y + from.y[i]);
-  const mz = 0.5 * (place.z + from.z[i]);
+  const j = append(to, from.id[i], x, y, z, time);
+  to.u[j] = step.u;
+  to.v[j] = step.v;
+  to.w[j] = step.w;
+  // Own deviation from the flow about it, if that was looked at.
+  if (Number.isNaN(from.fu[i])) to.du[j] = to.dv[j] = to.dw[j] = Number.NaN;
+  else {
+    const first = Number.isNaN(from.du[i]);
+    const gain = first ? 1 : DEVIATION_GAIN;
+    const kept = 1 - gain;
+    to.du[j] = gain * (step.u - from.fu[i]) + (first ? 0 : kept * from.du[i]);
+    to.dv[j] = gain * (step.v - from.fv[i]) + (first ? 0 : kept * from.dv[i]);
+    to.dw[j] = gain * (step.w - from.fw[i]) + (first ? 0 : kept * from.dw[i]);
+  }
   const age = from.age[i];
-  const known = picture.at(mx, my, mz, flow) > 0 ? 1 : 0;
-  const gain = age < 2 ? 1 : DEVIATION_GAIN;
-  to.u[j] = u;
-  to.v[j] = v;
-  to.w[j] = w;
-  to.mx[j] = mx;
-  to.my[j] = my;
-  to.mz[j] = mz;
-  to.u0[j] = from.u[i];
-  to.v0[j] = from.v[i];
-  to.w0[j] = from.w[i];
-  to.du[j] = from.du[i] + gain * (known * (u - flow[0]) - from.du[i]);
-  to.dv[j] = from.dv[i] + gain * (known * (v - flow[1]) - from.dv[i]);
-  to.dw[j] = from.dw[i] + gain * (known * (w - flow[2]) - from.dw[i]);
   to.age[j] = age < AGE_CAP ? age + 1 : AGE_CAP;
 }
 
-function append(to: ActivePathlines, id: number, place: Place): number {
+function append(to: ActivePathlines, id: number, x: number, y: number, z: number, time: number): number {
   const j = to.count++;
   to.id[j] = id;
-  to.x[j] = place.x;
-  to.y[j] = place.y;
-  to.z[j] = place.z;
-  to.time[j] = place.time;
+  to.x[j] = to.rx[j] = x;
+  to.y[j] = to.ry[j] = y;
+  to.z[j] = to.rz[j] = z;
+  to.time[j] = to.rtime[j] = time;
   to.missed[j] = 0;
+  to.fu[j] = Number.NaN;
   return j;
 }

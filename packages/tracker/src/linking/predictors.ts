@@ -1,191 +1,346 @@
 import type { ActivePathlines } from './active-pathlines.js';
 import type { FlowGrid } from './flow-grid.js';
-
-/** Pictures of the flow that are kept: see `pictures.ts`. */
-export const PICTURES = 3;
-/** Guesses: flow alone and flow plus own deviation for each picture, constant velocity, constant change of velocity. */
-const GUESSES = 2 * PICTURES + 2;
-/** Numbers of a pathline's guesses, x y z each. */
-export const GUESS_SIZE = 3 * GUESSES;
-const CONSTANT_VELOCITY = 2 * PICTURES;
-const CONSTANT_CHANGE = CONSTANT_VELOCITY + 1;
-
-/** Guesses that a pathline can make with one detection, with two, and with more. */
-const WITH_ONE = Array.from({ length: PICTURES }, (_, p) => 2 * p);
-const WITH_MORE = Array.from({ length: GUESSES }, (_, g) => g);
-const WITH_TWO = WITH_MORE.filter((g) => g !== CONSTANT_CHANGE);
-
-/** Links from which records are kept: enough to compare, few enough to follow a changing flow. */
-const RECORD_PRIOR = 12;
+import type { NeighbourFlow } from './neighbour-flow.js';
+import { SurpriseRecord } from './surprise-record.js';
+import { SurpriseScale } from './surprise-scale.js';
 
 /**
- * Predicts where a pathline goes, from simple guesses weighted by how well each has done lately at this place. For
- * each picture of the flow: the picture alone, and the picture plus the pathline's own deviation from it (averaged
- * over its links for the first picture, of the last link for the others). Besides: constant velocity, and constant
- * change of velocity. Pictures are read at the middle of the coming step, so that their gradient along the path
- * stands for the acceleration without amplifying position noise.
+ * Ways to guess where a pathline goes: the long picture of the flow; constant velocity; the flow of the interval
+ * before, alone or with the pathline's own deviation from the flow about it; the same with the flow of this interval.
+ */
+const PICTURE = 0;
+const VELOCITY = 1;
+const BEFORE = 2;
+const NOW = 4;
+/** Added to BEFORE or NOW: with the pathline's own deviation. */
+const OWN = 1;
+const GUESSES = 6;
+/** Guesses that do not come from the flow about the pathline, as bits. */
+const NOT_FLOW = (1 << PICTURE) | (1 << VELOCITY);
+
+/** Weight of neighbours (of about 12 in the midst of a field) below which their fit is no guess. */
+export const LEAST_WEIGHT = 1.2;
+/** Weight of the record against the scatter of the neighbours about their fit, in neighbours. */
+const RECORD_WEIGHT = 6;
+/** Share of the weights that is left for the scatter after a quadratic is fitted (36 neighbours, 6 terms). */
+const SCATTER_SHARE = 0.75;
+/** Leverage that a fit in the midst of neighbours has. */
+const TYPICAL_LEVERAGE = 0.2;
+/** Share of a pathline's own squared deviation that is held against the flow alone. */
+const DEVIATION_BLAME = 0.3;
+/** Constant velocity is good enough for the first round where its mean squared surprise is at most this, squared spacings. */
+const EASY = 0.004;
+/** The fit for a single detection is made anew if the middle of the step moved by more than this, spacings. */
+const FAR = 0.2;
+
+/** Where a pathline is expected. */
+export interface Prediction {
+  x: number;
+  y: number;
+  z: number;
+  /** Expected squared distance of a true detection from it, link space. */
+  expected: number;
+  /** Expected square that the gate goes by: at least `expected`. */
+  widest: number;
+}
+
+/**
+ * Predicts where pathlines go. In the first round of a frame those that can be told at little cost: by constant velocity
+ * where that has served of late, else by the flow of the interval before. In later rounds the rest, by the flow of this
+ * interval as the links made so far show it. Guesses are weighted by the inverse fourth power of their mean squared
+ * surprise: the best ones decide and average their errors; which ones is measured, not set.
  *
- * Weights go as the inverse fourth power of each guess's mean squared surprise in the flow cell: the best two or
- * three decide, and average their errors; which ones differs from place to place and is measured, not set.
+ * The expected square of a prediction is that of its best guess, from the record of the cell, the scatter of the
+ * neighbours about their fit and how far the fit reaches (its leverage), scaled so that it is right on the whole.
  */
 export class Predictors {
-  private readonly record: Float64Array[];
-  private readonly recordWeight: Float64Array;
-  private readonly global = new Float64Array(GUESSES);
-  private globalWeight = 0;
-  private readonly flow = new Float64Array(3);
-  /** Guesses of the last call, x y z each, for the record. */
-  readonly guess = new Float64Array(GUESS_SIZE);
-  /** Prediction of the last call. */
-  x = 0;
-  y = 0;
-  z = 0;
-  /** Expected squared distance of a true detection from the prediction, link space. */
-  expected = 0;
-  /** Cell of the first picture that the prediction was made in. */
-  cell = 0;
-  private readonly pictures: readonly FlowGrid[];
+  /** Flow of this interval from the links made so far; null in the first round. */
+  now: NeighbourFlow | null = null;
+  /** Flow of the interval before. */
+  before: NeighbourFlow;
+  /** Predictions since it was last set to 0 that had no neighbours to go by. */
+  unsupported = 0;
+  private readonly record: SurpriseRecord;
+  private readonly scale = new SurpriseScale();
+  private readonly picture: FlowGrid;
   private readonly floor: number;
   private readonly start: number;
+  private readonly easy: number;
+  private readonly far: number;
+  private readonly thorough: boolean;
+  private readonly flow = new Float64Array(3);
+  private readonly extra = new Float64Array(GUESSES);
+  private readonly chosen = new Int32Array(GUESSES);
+  /** Of every active pathline in this frame: guesses (x y z each), which were made (bits), cell, kind, square before scaling. */
+  private guessOf = new Float64Array(0);
+  private madeOf = new Uint8Array(0);
+  private cellOf = new Int32Array(0);
+  private kindOf = new Uint8Array(0);
+  private plainOf = new Float64Array(0);
 
-  /** `floor`: least expected square (position noise), `start`: expected square before anything is known. */
-  constructor(pictures: readonly FlowGrid[], floor: number, start: number) {
-    this.pictures = pictures;
+  /**
+   * `floor`: least expected square (position noise), `start`: expected square before anything is known, `spacing`: mean
+   * spacing of a frame. Without `thorough` only constant velocity and, for single detections, the picture.
+   */
+  constructor(
+    picture: FlowGrid,
+    before: NeighbourFlow,
+    floor: number,
+    start: number,
+    spacing: number,
+    thorough: boolean,
+  ) {
+    this.picture = picture;
+    this.before = before;
     this.floor = floor;
     this.start = start;
-    const { cells } = pictures[0];
-    this.record = Array.from({ length: GUESSES }, () => new Float64Array(cells));
-    this.recordWeight = new Float64Array(cells);
+    this.easy = EASY * spacing * spacing;
+    this.far = FAR * FAR * spacing * spacing;
+    this.thorough = thorough;
+    this.record = new SurpriseRecord(GUESSES, picture.cells, floor, start);
   }
 
-  /** Predicts entry `i` at `time`; results stand in the fields of this object. */
-  predict(active: ActivePathlines, i: number, time: number): void {
-    const { pictures, flow, guess } = this;
+  /** Room for the active pathlines of a frame. */
+  begin(rows: number): void {
+    if (this.madeOf.length < rows) {
+      const size = Math.ceil(rows * 1.3) + 64;
+      this.guessOf = new Float64Array(size * 3 * GUESSES);
+      this.madeOf = new Uint8Array(size);
+      this.cellOf = new Int32Array(size);
+      this.kindOf = new Uint8Array(size);
+      this.plainOf = new Float64Array(size);
+    }
+    this.madeOf.fill(0, 0, rows);
+  }
+
+  /** Predicts entry `i` at `time`; false: it waits for a later round. */
+  predict(active: ActivePathlines, i: number, time: number, to: Prediction): boolean {
+    if (!this.guess(active, i, time, to)) return false;
+    const missed = active.missed[i];
+    // Errors of a way that was only supposed add up from frame to frame.
+    const square = to.expected * (1 + missed);
+    const kind = kindOf(active.age[i], missed, this.madeOf[i]);
+    this.kindOf[i] = kind;
+    this.plainOf[i] = square;
+    const scaled = Math.max(square * this.scale.of(kind), this.floor);
+    to.expected = scaled;
+    // The gate is not scaled down: what is not looked at can never tell that it was too narrow.
+    to.widest = Math.max(scaled, square);
+    return true;
+  }
+
+  private guess(active: ActivePathlines, i: number, time: number, to: Prediction): boolean {
+    const single = active.age[i] < 2;
+    const cell = this.picture.cellAt(active.x[i], active.y[i], active.z[i]);
+    this.cellOf[i] = cell;
+    if (this.thorough) {
+      const first = this.now === null;
+      if (first && (single || active.missed[i] > 0)) return false;
+      const easy = first && this.record.knows(VELOCITY) && this.record.of(cell, VELOCITY) <= this.easy;
+      if (!easy) {
+        if (single) this.singleAlongFlow(active, i, time, cell, to);
+        else this.alongFlow(active, i, time, cell, to);
+        return true;
+      }
+    } else if (single) {
+      this.byPicture(active, i, time, cell, to);
+      return true;
+    }
     const step = time - active.time[i];
+    to.x = active.x[i] + step * active.u[i];
+    to.y = active.y[i] + step * active.v[i];
+    to.z = active.z[i] + step * active.w[i];
+    this.note(i, VELOCITY, to.x, to.y, to.z);
+    to.expected = this.record.of(cell, VELOCITY);
+    return true;
+  }
+
+  /** A single detection goes with the picture, read at the middle of the step. */
+  private byPicture(active: ActivePathlines, i: number, time: number, cell: number, to: Prediction): void {
+    const { picture, flow } = this;
     const x = active.x[i];
     const y = active.y[i];
     const z = active.z[i];
-    const age = active.age[i];
-    this.cell = pictures[0].cellAt(x, y, z);
-    // Velocity towards the middle of the coming step: the pathline's own, or the picture's for one that has none.
-    let u = active.u[i];
-    let v = active.v[i];
-    let w = active.w[i];
-    if (age < 2) {
-      pictures[0].at(x, y, z, flow);
-      [u, v, w] = flow;
-    }
+    const step = time - active.time[i];
     const half = 0.5 * step;
-    const mx = x + half * u;
-    const my = y + half * v;
-    const mz = z + half * w;
-    let known = 0;
-    for (let p = 0; p < PICTURES; p++) {
-      const picture = pictures[p];
-      const weight = picture.at(mx, my, mz, flow);
-      if (p === 0) known = weight;
-      const at = 6 * p;
-      guess[at] = x + step * flow[0];
-      guess[at + 1] = y + step * flow[1];
-      guess[at + 2] = z + step * flow[2];
-      if (age < 2) continue;
-      let du = active.du[i];
-      let dv = active.dv[i];
-      let dw = active.dw[i];
-      if (p > 0) {
-        picture.at(active.mx[i], active.my[i], active.mz[i], flow);
-        du = u - flow[0];
-        dv = v - flow[1];
-        dw = w - flow[2];
-      }
-      guess[at + 3] = guess[at] + step * du;
-      guess[at + 4] = guess[at + 1] + step * dv;
-      guess[at + 5] = guess[at + 2] + step * dw;
+    picture.at(x, y, z, flow);
+    const known = picture.at(x + half * flow[0], y + half * flow[1], z + half * flow[2], flow) > 0;
+    to.x = x + step * flow[0];
+    to.y = y + step * flow[1];
+    to.z = z + step * flow[2];
+    this.note(i, PICTURE, to.x, to.y, to.z);
+    const square = this.record.of(cell, PICTURE);
+    to.expected = known ? square : Math.max(square, this.start);
+  }
+
+  /** A single detection goes with the flow about it. */
+  private singleAlongFlow(active: ActivePathlines, i: number, time: number, cell: number, to: Prediction): void {
+    const { flow, now, before, picture } = this;
+    const near = now ?? before;
+    const x = active.x[i];
+    const y = active.y[i];
+    const z = active.z[i];
+    const step = time - active.time[i];
+    const half = 0.5 * step;
+    picture.at(x, y, z, flow);
+    const mx = x + half * flow[0];
+    const my = y + half * flow[1];
+    const mz = z + half * flow[2];
+    let weight = near.along(x, y, z, step, mx, my, mz, i, flow);
+    if (weight > LEAST_WEIGHT) {
+      const nx = x + half * flow[0];
+      const ny = y + half * flow[1];
+      const nz = z + half * flow[2];
+      const moved = (nx - mx) * (nx - mx) + (ny - my) * (ny - my) + (nz - mz) * (nz - mz);
+      if (moved > this.far) weight = near.along(x, y, z, step, nx, ny, nz, i, flow);
     }
-    if (age < 2) {
-      this.combine(WITH_ONE);
-      this.expected = known > 0 ? grown(this.expected, active.missed[i]) : this.start;
+    if (!(weight > LEAST_WEIGHT)) {
+      this.unsupported++;
+      this.byPicture(active, i, time, cell, to);
       return;
     }
-    const at = 3 * CONSTANT_VELOCITY;
-    guess[at] = x + step * u;
-    guess[at + 1] = y + step * v;
-    guess[at + 2] = z + step * w;
-    if (age >= 3) {
-      guess[at + 3] = guess[at] + step * (u - active.u0[i]);
-      guess[at + 4] = guess[at + 1] + step * (v - active.v0[i]);
-      guess[at + 5] = guess[at + 2] + step * (w - active.w0[i]);
-    }
-    this.combine(age < 3 ? WITH_TWO : WITH_MORE);
-    // A second detection only: its own deviation is no better than two noisy positions.
-    this.expected = grown(this.expected, active.missed[i]) * (age < 3 ? 2 : 1);
+    active.noteFlow(i, flow);
+    to.x = x + step * flow[0];
+    to.y = y + step * flow[1];
+    to.z = z + step * flow[2];
+    const g = now === null ? BEFORE : NOW;
+    this.note(i, g, to.x, to.y, to.z);
+    to.expected = this.squareNear(near, cell, g, step);
   }
 
-  /** Records how far each of the guesses made in `cell` was from the detection that was linked. */
-  learn(x: number, y: number, z: number, depth: number, cell: number, guess: Float64Array): void {
-    const { record, recordWeight, global } = this;
-    recordWeight[cell] += 1;
-    this.globalWeight += 1;
-    for (let g = 0; g < GUESSES; g++) {
-      const dx = guess[3 * g] - x;
-      const dy = guess[3 * g + 1] - y;
-      const dz = (guess[3 * g + 2] - z) * depth;
-      const square = dx * dx + dy * dy + dz * dz;
-      record[g][cell] += square;
-      global[g] += square;
-    }
+  /** Constant velocity and the flow about the pathline, weighted. */
+  private alongFlow(active: ActivePathlines, i: number, time: number, cell: number, to: Prediction): void {
+    const { flow, extra, chosen, now, before, record, guessOf } = this;
+    const near = now ?? before;
+    const g = now === null ? BEFORE : NOW;
+    const x = active.x[i];
+    const y = active.y[i];
+    const z = active.z[i];
+    const u = active.u[i];
+    const v = active.v[i];
+    const w = active.w[i];
+    const step = time - active.time[i];
+    const half = 0.5 * step;
+    // Links of the interval before bear the entries' numbers only while no frame was missed.
+    const without = now !== null || active.missed[i] === 0 ? i : -1;
+    let count = 0;
+    this.note(i, VELOCITY, x + step * u, y + step * v, z + step * w);
+    extra[VELOCITY] = 0;
+    chosen[count++] = VELOCITY;
+    const weight = near.along(x, y, z, step, x + half * u, y + half * v, z + half * w, without, flow);
+    if (weight > LEAST_WEIGHT) {
+      active.noteFlow(i, flow);
+      const du = active.du[i];
+      const dv = active.dv[i];
+      const dw = active.dw[i];
+      const px = x + step * flow[0];
+      const py = y + step * flow[1];
+      const pz = z + step * flow[2];
+      this.note(i, g, px, py, pz);
+      extra[g] = this.squareNear(near, cell, g, step) - record.of(cell, g);
+      chosen[count++] = g;
+      let model = g;
+      if (!Number.isNaN(du)) {
+        extra[g] += DEVIATION_BLAME * step * step * (du * du + dv * dv + dw * dw);
+        model = g + OWN;
+        this.note(i, model, px + step * du, py + step * dv, pz + step * dw);
+        extra[model] = this.squareNear(near, cell, model, step) - record.of(cell, model);
+        chosen[count++] = model;
+      }
+      // Constant velocity is blamed for what it differs by from the flow, beyond what that itself may err.
+      const at = 3 * (GUESSES * i + VELOCITY);
+      const by = 3 * (GUESSES * i + model);
+      const dx = guessOf[at] - guessOf[by];
+      const dy = guessOf[at + 1] - guessOf[by + 1];
+      const dz = guessOf[at + 2] - guessOf[by + 2];
+      const over = dx * dx + dy * dy + dz * dz - record.of(cell, model) - extra[model];
+      if (over > 0) extra[VELOCITY] = over;
+    } else this.unsupported++;
+    this.combine(i, cell, count, to);
   }
 
-  /** Forgets a share of the records. */
-  fade(keep: number): void {
-    for (let cell = 0; cell < this.recordWeight.length; cell++) this.recordWeight[cell] *= keep;
-    for (const squares of this.record) {
-      for (let cell = 0; cell < squares.length; cell++) squares[cell] *= keep;
-    }
-    this.globalWeight *= keep;
-    for (let g = 0; g < GUESSES; g++) this.global[g] *= keep;
-  }
-
-  /** Mean squared surprise of constant velocity in a cell: what two links of unknown pathlines may differ by. */
-  bendIn(cell: number): number {
-    return this.surpriseOf(cell, CONSTANT_VELOCITY);
-  }
-
-  /** Weighted mean of the chosen guesses, and the least of their expected squares. */
-  private combine(chosen: readonly number[]): void {
-    const { guess, cell } = this;
+  /** Weighted mean of the chosen guesses of entry `i`, and the least of their expected squares. */
+  private combine(i: number, cell: number, count: number, to: Prediction): void {
+    const { guessOf, chosen, extra, record } = this;
     let sum = 0;
     let px = 0;
     let py = 0;
     let pz = 0;
     let least = Number.POSITIVE_INFINITY;
-    for (const g of chosen) {
-      const square = this.surpriseOf(cell, g);
+    for (let c = 0; c < count; c++) {
+      const g = chosen[c];
+      const square = Math.max(record.of(cell, g) + extra[g], this.floor);
       if (square < least) least = square;
       // In units of the floor, so that the fourth power neither overflows nor vanishes.
       const ratio = this.floor / square;
       const weight = ratio * ratio * ratio * ratio;
+      const at = 3 * (GUESSES * i + g);
       sum += weight;
-      px += weight * guess[3 * g];
-      py += weight * guess[3 * g + 1];
-      pz += weight * guess[3 * g + 2];
+      px += weight * guessOf[at];
+      py += weight * guessOf[at + 1];
+      pz += weight * guessOf[at + 2];
     }
-    this.x = px / sum;
-    this.y = py / sum;
-    this.z = pz / sum;
-    this.expected = least;
+    to.x = px / sum;
+    to.y = py / sum;
+    to.z = pz / sum;
+    to.expected = least;
   }
 
-  /** Mean squared surprise of one guess in a cell, leaning on the whole field where the cell has seen little. */
-  private surpriseOf(cell: number, g: number): number {
-    const everywhere = this.globalWeight > 0 ? this.global[g] / this.globalWeight : this.start;
-    const square = (this.record[g][cell] + RECORD_PRIOR * everywhere) / (this.recordWeight[cell] + RECORD_PRIOR);
-    return Math.max(square, this.floor);
+  /** Expected square of a guess from the fit just made: scatter about it, leaning on the record, times its reach. */
+  private squareNear(near: NeighbourFlow, cell: number, guess: number, step: number): number {
+    const typical = this.record.of(cell, guess) / (1 + TYPICAL_LEVERAGE);
+    const seen = step * step * near.residual;
+    const scatter = (RECORD_WEIGHT * typical + seen) / (RECORD_WEIGHT + SCATTER_SHARE * near.weight);
+    return Math.max(scatter * (1 + near.leverage), this.floor);
+  }
+
+  private note(i: number, guess: number, x: number, y: number, z: number): void {
+    const at = 3 * (GUESSES * i + guess);
+    this.guessOf[at] = x;
+    this.guessOf[at + 1] = y;
+    this.guessOf[at + 2] = z;
+    this.madeOf[i] |= 1 << guess;
+  }
+
+  /** Counts by how much the detection of entry `i` was off the prediction (z over depth noise). */
+  countSurprise(i: number, dx: number, dy: number, dz: number): void {
+    this.scale.count(this.kindOf[i], (dx * dx + dy * dy + dz * dz) / this.plainOf[i]);
+  }
+
+  /** Records how far each of the guesses made for entry `i` was from its detection; `depth`: 1 / depth noise. */
+  learn(i: number, x: number, y: number, z: number, depth: number): void {
+    const { guessOf, record } = this;
+    const cell = this.cellOf[i];
+    const made = this.madeOf[i];
+    for (let g = 0; g < GUESSES; g++) {
+      if ((made & (1 << g)) === 0) continue;
+      const at = 3 * (GUESSES * i + g);
+      const dx = guessOf[at] - x;
+      const dy = guessOf[at + 1] - y;
+      const dz = (guessOf[at + 2] - z) * depth;
+      record.learn(cell, g, dx * dx + dy * dy + dz * dz);
+    }
+  }
+
+  /** Closes a frame. */
+  fade(): void {
+    this.record.fade();
+    this.scale.fade();
+  }
+
+  /** What was learnt, as copies in plain form. */
+  toData(): Float64Array[] {
+    return [this.scale.toData(), ...this.record.toData()];
+  }
+
+  /** Takes what predictors on the same cells have learnt. */
+  restore([scale, ...record]: readonly Float64Array[]): void {
+    this.scale.restore(scale);
+    this.record.restore(record);
   }
 }
 
-/** Expected squares grow with the square of the step: a velocity error acts over its whole length. */
-function grown(square: number, missed: number): number {
-  const steps = 1 + missed;
-  return square * steps * steps;
+/** Kind of a prediction for `SurpriseScale`: by the flow about it or not, single detection or not, missed frames or not. */
+function kindOf(age: number, missed: number, made: number): number {
+  return ((made & ~NOT_FLOW) !== 0 ? 1 : 0) + (age < 2 ? 2 : 0) + (missed > 0 ? 4 : 0);
 }

@@ -9,6 +9,7 @@ import { chooseReach } from '../linking/reach.js';
 import { StuckLinks, withoutPlaces } from '../linking/stuck-links.js';
 import { findStuckPlaces, type StuckPlace, withinFlow } from '../linking/stuck-places.js';
 import { type FramePair, voteFlow } from '../linking/vote-flow.js';
+import { warmUp } from '../linking/warm-up.js';
 import { estimateNoise } from '../noise/position-noise.js';
 import type { RunSettings } from '../run/settings.js';
 import { linkDisplacements } from './displacements.js';
@@ -94,6 +95,7 @@ export async function firstLook(
     expected: voted.expected,
     density,
     flow: flow.toData(),
+    knowledge: null,
     pairs: pairsClock,
   });
   const at = new Float64Array(3);
@@ -110,7 +112,13 @@ export async function firstLook(
     });
   }
   const free = stuck.length === suspects.length ? moving : withoutStuck(blocks, stuck, settings.linking.bridge);
-  const trial = await trialLinking(free, settings, start(ASSUMED_NOISE * spacing), context);
+  // Pairs know the flow from all of them already.
+  const informed = async (prior: LinkPrior): Promise<LinkPrior> => {
+    if (pairsClock) return prior;
+    const linker = createLinker(settings.linking, prior);
+    return { ...prior, knowledge: await warmUp(linker, free, async () => context.breathe()) };
+  };
+  const trial = await trialLinking(free, settings, await informed(start(ASSUMED_NOISE * spacing)), context);
   await context.breathe();
   const measured = estimateNoise(leading(trial, NOISE_ROWS));
   await context.breathe();
@@ -145,7 +153,7 @@ export async function firstLook(
       displacementRatio95: Number.isNaN(moved.p95) ? null : moved.p95,
     },
     // No real detection is better than a thousandth of a spacing; a gate of rounding errors would lose links.
-    link: start(Math.max(inPlane, LEAST_NOISE * spacing)),
+    link: await informed(start(Math.max(inPlane, LEAST_NOISE * spacing))),
     stuck,
     smoothing: forecast === undefined ? null : Math.sqrt(forecast.bias) / meanInterval(trial),
   };

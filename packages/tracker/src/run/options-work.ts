@@ -9,7 +9,7 @@ import { choice, row } from './setting-row.js';
  * - `screening.median-threshold` 2 and 8 neighbours: Westerweel & Scarano 2005, Exp. Fluids 39, 1096,
  *   doi:10.1007/s00348-005-0016-6.
  * - `screening.stuck-factor` 4: of Gaussian noise 1 position in 16 000 lies farther out.
- * - `linking.risk-limit` 0.5: a link more likely wrong than right is left out.
+ * - `linking.risk-limit` 0.3: three wrong ones in ten of the least sure links that are made.
  */
 export const WORK_SETTINGS: readonly SettingRow[] = [
   row(
@@ -49,7 +49,7 @@ export const WORK_SETTINGS: readonly SettingRow[] = [
     'linking.risk-limit',
     'risk-limit',
     { type: 'share', most: 1 },
-    0.5,
+    0.3,
     '0.2',
     'Links more likely wrong than this are left out',
   ),
