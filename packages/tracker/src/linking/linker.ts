@@ -204,8 +204,19 @@ export class Linker {
     this.gather(block, from, time);
     const { riskLimit, picture } = this.options;
     for (let turn = 0; turn < RELAXATIONS; turn++) {
-      this.wide.copy(this.now);
-      const more = this.relaxation.link(riskLimit, active, block, from, time, links, this.now, this.wide, picture);
+      this.wide.follow(this.now);
+      const more = this.relaxation.link(
+        riskLimit,
+        active,
+        block,
+        from,
+        time,
+        links,
+        turn > 0,
+        this.now,
+        this.wide,
+        picture,
+      );
       if (more === 0) return;
       this.gather(block, from, time);
     }

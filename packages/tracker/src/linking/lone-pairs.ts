@@ -46,7 +46,8 @@ export class LonePairs {
   }
 
   /**
-   * Collects the pairs of the frame that begins at row `from`. The flow comes from the links of this interval nearby
+   * Collects the pairs of the frame that begins at row `from`. Where the flow about a lone one was looked at in this
+   * frame, its prediction stands, unless `anew`. Else the flow comes from the links of this interval nearby
    * (`near`), or about twice as far (`wide`), or else from the picture.
    */
   collect(
@@ -55,6 +56,7 @@ export class LonePairs {
     from: number,
     time: number,
     links: FrameLinks,
+    anew: boolean,
     near: NeighbourFlow,
     wide: NeighbourFlow,
     picture: FlowGrid,
@@ -71,6 +73,10 @@ export class LonePairs {
       const x = active.x[i];
       const y = active.y[i];
       const z = active.z[i];
+      if (!anew && !Number.isNaN(active.fu[i])) {
+        this.add(i, x, y, z, active.px[i], active.py[i], active.pz[i]);
+        continue;
+      }
       const step = time - active.time[i];
       const half = 0.5 * step;
       picture.at(x, y, z, flow);

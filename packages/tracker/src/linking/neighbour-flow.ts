@@ -34,6 +34,7 @@ export class NeighbourFlow {
   residual = 0;
   private near = new Int32Array(0);
   private stale = true;
+  private source: NeighbourFlow | null = null;
   private readonly index = new CellIndex();
   private readonly dims: Dims;
   private readonly radius: number;
@@ -56,6 +57,7 @@ export class NeighbourFlow {
   begin(most: number): void {
     this.count = 0;
     this.stale = true;
+    this.source = null;
     if (this.tag.length >= most) return;
     const size = Math.ceil(most * 1.3) + 16;
     for (const name of COLUMNS) this[name] = new Float64Array(size);
@@ -101,8 +103,14 @@ export class NeighbourFlow {
     this.count = links;
   }
 
-  /** Takes over the links of another. */
-  copy(other: NeighbourFlow): void {
+  /** Holds the links of another from now on; they are only copied once they are asked for. */
+  follow(other: NeighbourFlow): void {
+    this.count = other.count;
+    this.stale = true;
+    this.source = other;
+  }
+
+  private copy(other: NeighbourFlow): void {
     this.begin(other.count);
     for (const name of COLUMNS) this[name].set(other[name].subarray(0, other.count));
     this.tag.set(other.tag.subarray(0, other.count));
@@ -201,6 +209,7 @@ export class NeighbourFlow {
 
   private build(): void {
     const { radius, depth, dims } = this;
+    if (this.source !== null) this.copy(this.source);
     this.stale = false;
     this.index.build(this, 0, this.count, dims, [radius, radius, dims === 3 ? radius / depth : radius]);
   }

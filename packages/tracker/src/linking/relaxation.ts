@@ -51,12 +51,13 @@ export class Relaxation {
     from: number,
     time: number,
     links: FrameLinks,
+    anew: boolean,
     near: NeighbourFlow,
     wide: NeighbourFlow,
     picture: FlowGrid,
   ): number {
     const { pairs } = this;
-    pairs.collect(active, block, from, time, links, near, wide, picture);
+    pairs.collect(active, block, from, time, links, anew, near, wide, picture);
     if (pairs.lone === 0) return 0;
     this.reserve();
     this.gatherSupport();

@@ -14,6 +14,8 @@ export class SurpriseRecord {
   private readonly weight: Float64Array[];
   private readonly wholeSum: Float64Array;
   private readonly wholeWeight: Float64Array;
+  private readonly cells: number;
+  private readonly expected: Float64Array;
   private readonly floor: number;
   private readonly start: number;
 
@@ -25,13 +27,14 @@ export class SurpriseRecord {
     this.wholeWeight = new Float64Array(guesses);
     this.floor = floor;
     this.start = start;
+    this.cells = cells;
+    this.expected = new Float64Array(guesses * cells);
+    this.tabulate();
   }
 
-  /** Expected square of a guess in a cell, length unit squared of link space. */
+  /** Expected square of a guess in a cell, length unit squared of link space, as of the last frame closed. */
   of(cell: number, guess: number): number {
-    const whole = (this.wholeSum[guess] + PRIOR * this.start) / (this.wholeWeight[guess] + PRIOR);
-    const square = (this.sum[guess][cell] + PRIOR * whole) / (this.weight[guess][cell] + PRIOR);
-    return Math.max(square, this.floor);
+    return this.expected[guess * this.cells + cell];
   }
 
   /** True once a guess was seen often enough to be judged. */
@@ -47,9 +50,23 @@ export class SurpriseRecord {
     this.wholeWeight[guess]++;
   }
 
-  /** Closes a frame: forgets a share. */
+  /** Closes a frame: forgets a share, and what was learnt begins to show. */
   fade(): void {
     for (const part of this.parts()) for (let n = 0; n < part.length; n++) part[n] *= KEEP;
+    this.tabulate();
+  }
+
+  private tabulate(): void {
+    const { expected, cells, floor, start } = this;
+    for (const [guess, sum] of this.sum.entries()) {
+      const weight = this.weight[guess];
+      const whole = (this.wholeSum[guess] + PRIOR * start) / (this.wholeWeight[guess] + PRIOR);
+      const first = guess * cells;
+      for (let cell = 0; cell < cells; cell++) {
+        const square = (sum[cell] + PRIOR * whole) / (weight[cell] + PRIOR);
+        expected[first + cell] = Math.max(square, floor);
+      }
+    }
   }
 
   /** Copies in plain form. */
@@ -60,6 +77,7 @@ export class SurpriseRecord {
   /** Takes copies from a record of the same guesses and cells. */
   restore(data: readonly Float64Array[]): void {
     for (const [n, part] of this.parts().entries()) part.set(data[n]);
+    this.tabulate();
   }
 
   private parts(): Float64Array[] {
