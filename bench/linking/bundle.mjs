@@ -1,4 +1,4 @@
-import { mkdirSync } from 'node:fs';
+import { existsSync, mkdirSync, readdirSync, rmSync } from 'node:fs';
 import { join } from 'node:path';
 import { fileURLToPath, pathToFileURL } from 'node:url';
 import { build } from 'vite';
@@ -14,7 +14,9 @@ export const SCRATCH = join(here, '..', 'scratch', 'linking');
  * runs at its full speed. Gives the address of the bundle, one of its own for each process. About 1 s.
  */
 export async function bundleHarness() {
-  const folder = join(SCRATCH, 'bundles', `${process.pid}`);
+  const bundles = join(SCRATCH, 'bundles');
+  removeOrphans(bundles);
+  const folder = join(bundles, `${process.pid}`);
   mkdirSync(folder, { recursive: true });
   await build({
     configFile: false,
@@ -33,4 +35,20 @@ export async function bundleHarness() {
     },
   });
   return { folder, address: pathToFileURL(join(folder, 'harness.mjs')).href };
+}
+
+/** Removes what processes that were killed have left: each folder has its process' number. */
+function removeOrphans(bundles) {
+  if (!existsSync(bundles)) return;
+  for (const name of readdirSync(bundles)) {
+    if (!isRunning(Number(name))) rmSync(join(bundles, name), { recursive: true, force: true });
+  }
+}
+
+function isRunning(number) {
+  try {
+    return process.kill(number, 0);
+  } catch (error) {
+    return error.code === 'EPERM';
+  }
 }
