@@ -6,6 +6,9 @@ import { sumAbout, TERMS } from './neighbour-sums.js';
 const RIDGE_LINEAR = 0.001;
 const RIDGE_QUADRATIC = 0.003;
 
+/** Neighbours beyond which the radius is drawn in: three times what a field of even density has. */
+const CROWD = 120;
+
 const COLUMNS = ['x', 'y', 'z', 'u', 'v', 'w', 'trust'] as const;
 
 /**
@@ -157,7 +160,8 @@ export class NeighbourFlow {
     const { near, radius, depth, dims, matrix, right, slope, place } = this;
     const found = this.index.near(px, py, pz, near);
     if (found === 0) return false;
-    const per = 1 / radius;
+    // Where particles crowd, fewer neighbours about the place tell as much, at a cost that does not grow.
+    const per = found > CROWD ? Math.sqrt(found / CROWD) / radius : 1 / radius;
     const perZ = per * depth;
     place[0] = px;
     place[1] = py;
