@@ -7,15 +7,17 @@ function frame(presence: Presence, age: number, missed: number, linked: number, 
   presence.fade();
 }
 
-const SINGLE = [1, 0] as const;
-const SEEN = [2, 0] as const;
-const MISSED = [7, 1] as const;
+/** Age in detections, and frames missed. */
+type Kind = readonly [number, number];
+const SINGLE: Kind = [1, 0];
+const SEEN: Kind = [2, 0];
+const MISSED: Kind = [7, 1];
 /** What is assumed before any was seen, with the weight of ten cases. */
-const ASSUMED = [
+const ASSUMED: [string, Kind, number][] = [
   ['single detections', SINGLE, 0.6],
   ['pathlines seen in the last frame', SEEN, 0.9],
   ['pathlines that missed frames', MISSED, 0.5],
-] as const;
+];
 
 describe.each(ASSUMED)('presence of %s', (_name, kind, assumed) => {
   it('is assumed before any was seen, and stays so without any', () => {
