@@ -311,9 +311,8 @@ export class Predictors {
   learn(i: number, x: number, y: number, z: number, depth: number): void {
     const { guessOf, record } = this;
     const cell = this.cellOf[i];
-    const made = this.madeOf[i];
-    for (let g = 0; g < GUESSES; g++) {
-      if ((made & (1 << g)) === 0) continue;
+    for (let made = this.madeOf[i]; made !== 0; made &= made - 1) {
+      const g = 31 - Math.clz32(made & -made);
       const at = 3 * (GUESSES * i + g);
       const dx = guessOf[at] - x;
       const dy = guessOf[at + 1] - y;

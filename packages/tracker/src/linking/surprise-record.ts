@@ -7,28 +7,31 @@ const MOST = 6;
 
 /**
  * Mean squared surprise of each way of guessing, in each cell of the flow picture, told from the links made of late.
- * A cell that has seen little leans on the whole field.
+ * A cell that has seen little leans on the whole field. What is learnt shows once the frame is closed.
  */
 export class SurpriseRecord {
-  private readonly sum: Float64Array[];
-  private readonly weight: Float64Array[];
+  /** Sums of counted squares and of links, [guess * cells + cell]; and of the whole field, [guess]. */
+  private readonly sum: Float64Array;
+  private readonly weight: Float64Array;
   private readonly wholeSum: Float64Array;
   private readonly wholeWeight: Float64Array;
-  private readonly cells: number;
   private readonly expected: Float64Array;
+  private readonly guesses: number;
+  private readonly cells: number;
   private readonly floor: number;
   private readonly start: number;
 
   /** `floor`: least expected square (position noise), `start`: expected square before anything is known. */
   constructor(guesses: number, cells: number, floor: number, start: number) {
-    this.sum = Array.from({ length: guesses }, () => new Float64Array(cells));
-    this.weight = Array.from({ length: guesses }, () => new Float64Array(cells));
+    this.sum = new Float64Array(guesses * cells);
+    this.weight = new Float64Array(guesses * cells);
     this.wholeSum = new Float64Array(guesses);
     this.wholeWeight = new Float64Array(guesses);
+    this.expected = new Float64Array(guesses * cells);
+    this.guesses = guesses;
+    this.cells = cells;
     this.floor = floor;
     this.start = start;
-    this.cells = cells;
-    this.expected = new Float64Array(guesses * cells);
     this.tabulate();
   }
 
@@ -43,9 +46,11 @@ export class SurpriseRecord {
   }
 
   learn(cell: number, guess: number, square: number): void {
-    const counted = Math.min(square, MOST * this.of(cell, guess));
-    this.sum[guess][cell] += counted;
-    this.weight[guess][cell]++;
+    const at = guess * this.cells + cell;
+    const most = MOST * this.expected[at];
+    const counted = Math.min(square, most);
+    this.sum[at] += counted;
+    this.weight[at]++;
     this.wholeSum[guess] += counted;
     this.wholeWeight[guess]++;
   }
@@ -54,19 +59,6 @@ export class SurpriseRecord {
   fade(): void {
     for (const part of this.parts()) for (let n = 0; n < part.length; n++) part[n] *= KEEP;
     this.tabulate();
-  }
-
-  private tabulate(): void {
-    const { expected, cells, floor, start } = this;
-    for (const [guess, sum] of this.sum.entries()) {
-      const weight = this.weight[guess];
-      const whole = (this.wholeSum[guess] + PRIOR * start) / (this.wholeWeight[guess] + PRIOR);
-      const first = guess * cells;
-      for (let cell = 0; cell < cells; cell++) {
-        const square = (sum[cell] + PRIOR * whole) / (weight[cell] + PRIOR);
-        expected[first + cell] = Math.max(square, floor);
-      }
-    }
   }
 
   /** Copies in plain form. */
@@ -80,7 +72,17 @@ export class SurpriseRecord {
     this.tabulate();
   }
 
+  private tabulate(): void {
+    const { expected, sum, weight, cells, floor, start } = this;
+    for (let guess = 0; guess < this.guesses; guess++) {
+      const whole = (this.wholeSum[guess] + PRIOR * start) / (this.wholeWeight[guess] + PRIOR);
+      for (let at = guess * cells; at < (guess + 1) * cells; at++) {
+        expected[at] = Math.max((sum[at] + PRIOR * whole) / (weight[at] + PRIOR), floor);
+      }
+    }
+  }
+
   private parts(): Float64Array[] {
-    return [...this.sum, ...this.weight, this.wholeSum, this.wholeWeight];
+    return [this.sum, this.weight, this.wholeSum, this.wholeWeight];
   }
 }
