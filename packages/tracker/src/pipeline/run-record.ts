@@ -4,8 +4,8 @@ import type { Board } from './board.js';
 
 /** Share of samples set aside by screening above which a person should look (1 to 5 % is normal; common practice, no source). */
 const MUCH_SET_ASIDE = 0.05;
-/** Displacement ratio above which linking without knowledge of the flow gets doubtful (common practice, no source). */
-const LARGE_RATIO = 1;
+/** Displacement ratio up to which linking was measured against truth (bench/results/linking.md); the first votes reach two spacings. */
+const LARGE_RATIO = 1.5;
 
 /** Tells what a person should look at in the finished run; to be called once, before `runRecord`. */
 export function tellConcerns(board: Board): void {
@@ -20,7 +20,7 @@ export function tellConcerns(board: Board): void {
   }
   const ratio = prior.displacementRatio;
   if (ratio !== null && ratio > LARGE_RATIO) {
-    const text = `displacement ratio ${ratio.toFixed(2)}: particles move farther than they are apart; wrong links are likely, record at a higher rate or seed less`;
+    const text = `displacement ratio ${ratio.toFixed(2)}: particles move much farther than they are apart; missing and wrong links are likely beyond 1.5, record at a higher rate or seed less`;
     warn('linking/large-ratio', text, { ratio });
   }
   if (!prior.noiseMeasured && board.request.resolved.settings.clock.kind !== 'pairs') {
