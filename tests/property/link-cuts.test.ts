@@ -13,7 +13,7 @@ const settings = resolveRun({ options: { rate: '25 Hz', scale: '1 mm/px' }, dump
 /** Conflicts, gaps and false detections enough that any state lost or doubled at a cut would show. */
 const plane = truthDump({
   flow: taylorGreen(30, (2 * Math.PI) / 30),
-  frames: 12,
+  frames: 11,
   rate: 25,
   perFrame: 420,
   box: [
@@ -86,7 +86,7 @@ const gaps = (k: number) => (k < 6 ? k : k + 2);
 
 describe('links are the same bits however the frames are cut into blocks', () => {
   it.each([
-    ['in the plane', () => [ALL, [1], [3, 1, 2], [6]], (sizes: number[]) => cut(plane, sizes), 'thorough'],
+    ['in the plane', () => [ALL, [1], [3, 1, 2]], (sizes: number[]) => cut(plane, sizes), 'thorough'],
     ['with little care', () => [ALL, [1], [5, 2]], (sizes: number[]) => cut(plane, sizes), 'quick'],
     ['in space', () => [ALL, [1], [3, 2]], (sizes: number[]) => cut(volume, sizes), 'thorough'],
     [

@@ -193,6 +193,37 @@ describe('the fit of the links about a place', () => {
   });
 });
 
+describe('where particles crowd', () => {
+  it.each([
+    [120, 1],
+    [121, Math.sqrt(120 / 121)],
+    [480, 1 / 2],
+    [1920, 1 / 4],
+  ])('of %d neighbours in the plane those within %f of the radius are fitted, about 120', (count, drawn) => {
+    // All within the radius about the origin, evenly.
+    const random = randomStream(45, `crowd ${count}`);
+    const links = Array.from({ length: count }, (): SeenLink => {
+      const [r, angle] = [0.999 * RADIUS * Math.sqrt(random.uniform()), 2 * Math.PI * random.uniform()];
+      const velocity: Place = [random.normal(), random.normal(), 0];
+      return { at: [r * Math.cos(angle), r * Math.sin(angle), 0], velocity, trust: 0.5 + 0.5 * random.uniform() };
+    });
+    const flow = flowOf(2, links);
+    const into = new Float64Array(3);
+    flow.along(0, 0, 0, 0, 0, 0, 0, -1, into);
+    const want = ridgeFit(2, links, [0, 0, 0], drawn * RADIUS, 1, ridgeOf(2, LINEAR, QUADRATIC))!;
+    const loss = 1000 * EPSILON * want.condition ** 2;
+    for (const c of [0, 1]) expect(Math.abs(into[c] - want.value[c])).toBeLessThan(loss);
+    expect(Math.abs(flow.weight / want.weight - 1)).toBeLessThan(loss);
+    expect(Math.abs(flow.leverage / want.leverage - 1)).toBeLessThan(loss);
+    // Of 120 within the radius the mean weight is 1/3 times the mean trust of 3/4: 30, spread by about 3.
+    expect(Math.abs(flow.weight - 30)).toBeLessThan(12);
+    // Gradients are per length, not per radius.
+    const ux = into[0];
+    flow.along(1, 0, 0, 0, 0, 0, 0, -1, into);
+    expect(Math.abs(into[0] - ux - want.slope[0][0])).toBeLessThan(loss);
+  });
+});
+
 describe('sums of the fit', () => {
   it.each([2, 3] as const)('are those of the definition, term by term: %d-D', (dims) => {
     const random = randomStream(44, `sums ${dims}`);

@@ -191,12 +191,17 @@ describe('support by neighbours', () => {
     expect(relax(2, alone, NARROW)).toBe(25);
   });
 
-  it('nor is either of two pathlines that want one detection alike', () => {
+  // Alike, or the one or the other a little more.
+  it.each([
+    [0.05, 0.05],
+    [0.05, 0.04],
+    [0.04, 0.05],
+  ])('nor is either of two pathlines that want one detection and lie %f and %f off', (above, below) => {
     const places = lattice(5, 5);
     const [x, y] = places[12];
     const first = [...places];
-    first[12] = [x, y + 0.05, 0];
-    first.push([x, y - 0.05, 0]);
+    first[12] = [x, y + above, 0];
+    first.push([x, y - below, 0]);
     const frame = loneFrame(2, first, moved(places, SHIFT), 3.4);
     expect(relax(2, frame, NARROW)).toBe(24);
     expect(tookOf(frame)).toEqual(first.map((_, i) => (i === 12 || i === 25 ? -1 : i)));
