@@ -2,7 +2,8 @@ import type { Candidates } from './candidates.js';
 
 /**
  * Fall of a surprise's density with q, its square over the expected one: (1 + q / 4)^-4. Heavier than Gauss's exp(-q),
- * because the expected squares are estimates themselves (Student's law); only * and /, the same bits in every engine.
+ * because the expected squares are estimates themselves (Student's law); only * and /, the same bits in every engine. Not
+ * normalised (its integral over the plane is 4/3 of the peak's area): the measured calibration below takes that in.
  */
 export function decay(q: number): number {
   const base = 1 + q * (1 / 4);

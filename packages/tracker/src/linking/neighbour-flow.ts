@@ -1,5 +1,6 @@
 import type { Dims } from '../core/columns.js';
 import { CellIndex } from '../math/cell-index.js';
+import { cubeRoot } from '../math/cube-root.js';
 import { sumAbout, TERMS } from './neighbour-sums.js';
 
 /** Ridge of the linear and of the quadratic terms, against a neighbour's weight of one at the radius. */
@@ -31,7 +32,7 @@ export class NeighbourFlow {
   tag = new Int32Array(0);
   /** Of the last fit: sum of weights. */
   weight = 0;
-  /** Of the last fit: variance of its value over that of one link's velocity. */
+  /** Of the last fit: variance of its value over that of one link's velocity, at most: weights count as inverse variances. */
   leverage = 0;
   /** Of the last fit: weighted sum of squared residuals, (length per time) squared, along z over depth noise. */
   residual = 0;
@@ -161,7 +162,8 @@ export class NeighbourFlow {
     const found = this.index.near(px, py, pz, near);
     if (found === 0) return false;
     // Where particles crowd, fewer neighbours about the place tell as much, at a cost that does not grow.
-    const per = found > CROWD ? Math.sqrt(found / CROWD) / radius : 1 / radius;
+    const crowding = found / CROWD;
+    const per = (crowding > 1 ? (dims === 2 ? Math.sqrt(crowding) : cubeRoot(crowding)) : 1) / radius;
     const perZ = per * depth;
     place[0] = px;
     place[1] = py;
