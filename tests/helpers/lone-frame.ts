@@ -15,6 +15,8 @@ export interface LoneFrame {
   /** Flow of links nearby and about twice as far: empty. */
   readonly near: NeighbourFlow;
   readonly wide: NeighbourFlow;
+  /** Flow of the interval before: empty. */
+  readonly before: NeighbourFlow;
 }
 
 /** `radius`: of the flow nearby, length unit. */
@@ -49,6 +51,7 @@ export function loneFrame(
     },
     near: new NeighbourFlow(dims, radius, depthNoise),
     wide: new NeighbourFlow(dims, 2 * radius, depthNoise),
+    before: new NeighbourFlow(dims, radius, depthNoise),
   };
 }
 

@@ -7,8 +7,8 @@ const REACH = 0.8;
 
 function collect(dims: 2 | 3, frame: LoneFrame, picture: Place, anew = false, depthNoise = 1, pairs?: LonePairs) {
   const lone = pairs ?? new LonePairs(dims, REACH, depthNoise);
-  const { active, block, links, near, wide } = frame;
-  lone.collect(active, block, 0, 1, links, anew, near, wide, uniformPicture(dims, picture));
+  const { active, block, links, near, wide, before } = frame;
+  lone.collect(active, block, 0, 1, links, anew, near, wide, before, uniformPicture(dims, picture));
   // Pairs as entry, column and offset.
   const found: { pair: string; offset: number[] }[] = [];
   for (let b = 0; b < lone.lone; b++) {
@@ -55,7 +55,7 @@ describe('pairs of lone detections', () => {
       for (const axis of [0, 1, 2]) expect(Math.abs(offset[axis] - want[n].offset[axis])).toBeLessThan(1e-13);
   });
 
-  it('leave out what is linked, pathlines that have proved themselves, and such that missed a frame', () => {
+  it('leave out what is linked and pathlines that missed a frame; age does not matter', () => {
     const places: Place[] = [0, 1, 2, 3, 4, 5].map((n) => [10 * n, 0, 0]);
     const frame = loneFrame(2, places, places, 3);
     frame.links.link(1, 1, 0.01);
@@ -63,6 +63,7 @@ describe('pairs of lone detections', () => {
     frame.active.age[3] = 2;
     frame.active.missed[4] = 1;
     frame.links.link(3, 2, 0.01);
+    frame.active.age[5] = 7;
     expect(names(collect(2, frame, [0, 0, 0]))).toEqual(['0>0', '5>5']);
   });
 
@@ -105,6 +106,14 @@ describe('pairs of lone detections', () => {
       expect(names(collect(2, wide, picture))).toEqual(WIDE);
       addLinks(wide.near, 1, [0, 2, 0]);
       expect(names(collect(2, wide, picture))).toEqual(NEAR);
+    });
+
+    it('the links of the interval before where this one has none nearby', () => {
+      const earlier = frame();
+      addLinks(earlier.before, 1, [0, 2, 0]);
+      expect(names(collect(2, earlier, picture))).toEqual(['0>1']);
+      addLinks(earlier.wide, 1, [-2, 0, 0]);
+      expect(names(collect(2, earlier, picture))).toEqual(WIDE);
     });
 
     it('no neighbours that are too few, or its own link', () => {

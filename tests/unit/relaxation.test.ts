@@ -16,8 +16,8 @@ function relax(
   depthNoise = 1,
 ) {
   const relaxation = new Relaxation(dims, 1, reach, depthNoise);
-  const { active, block, links, near, wide } = frame;
-  return relaxation.link(limit, active, block, 0, 1, links, false, near, wide, uniformPicture(dims, picture));
+  const { active, block, links, near, wide, before } = frame;
+  return relaxation.link(limit, active, block, 0, 1, links, false, near, wide, before, uniformPicture(dims, picture));
 }
 
 /** Columns of the links by entry, -1: none. */

@@ -31,6 +31,8 @@ export class CandidateSearch {
   rowEntry = new Int32Array(0);
   /** Probability that each row's particle is in this frame at all. */
   trustOfRow = new Float64Array(0);
+  /** Area (volume) of all gates of the last call, link space. */
+  gates = 0;
   private near = new Int32Array(0);
   private readonly dims: Dims;
   private readonly reach: number;
@@ -78,6 +80,7 @@ export class CandidateSearch {
     const { x, y, z } = block;
     const reachSquare = reach * reach;
     let rows = 0;
+    let room = 0;
     for (let k = 0; k < count; k++) {
       const i = entries[k];
       if (!guide.predict(active, i, time, prediction)) continue;
@@ -91,6 +94,7 @@ export class CandidateSearch {
       active.pz[i] = pz;
       const newborn = active.age[i] < 2;
       const gate = Math.min(GATE * prediction.widest, reachSquare);
+      room += dims === 2 ? Math.PI * gate : (4 / 3) * Math.PI * gate * Math.sqrt(gate);
       const handicap = newborn ? NEWBORN_HANDICAP : 0;
       const scale = 1 / expected;
       const perWidest = 1 / prediction.widest;
@@ -116,6 +120,7 @@ export class CandidateSearch {
       candidates.start[++rows] = candidates.edges;
     }
     candidates.rows = rows;
+    this.gates = room;
   }
 }
 

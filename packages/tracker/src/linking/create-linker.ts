@@ -7,6 +7,8 @@ import { Linker, type LinkKnowledge } from './linker.js';
 
 /** How far from the flow about it a lone detection's link may lead, in spacings, unless the reach was set. */
 const LONE_REACH = 0.8;
+/** The same where the flow is lost altogether: as far as the first votes look. */
+const LOST_REACH = 2;
 
 /** What linking takes from the first look at the data. */
 export interface LinkPrior {
@@ -33,15 +35,14 @@ export function searchFor(name: LinkingSettings['search']): NeighbourSearch {
 
 /** A linker ready for the first frame. */
 export function createLinker(settings: LinkingSettings, prior: LinkPrior): Linker {
+  const spacing = 1 / (prior.dims === 2 ? Math.sqrt(prior.density) : Math.cbrt(prior.density));
   const flow = prior.knowledge?.flow ?? prior.flow;
   const linker = new Linker({
     pairs: prior.pairs,
     dims: prior.dims,
     reach: prior.reach,
-    loneReach:
-      settings.reach === 'auto'
-        ? LONE_REACH / (prior.dims === 2 ? Math.sqrt(prior.density) : Math.cbrt(prior.density))
-        : prior.reach,
+    loneReach: settings.reach === 'auto' ? LONE_REACH * spacing : prior.reach,
+    lostReach: settings.reach === 'auto' ? LOST_REACH * spacing : prior.reach,
     bridge: prior.pairs ? 0 : settings.bridge,
     care: settings.care,
     riskLimit: settings.riskLimit,

@@ -28,6 +28,10 @@ const RADIUS = { 2: 3.4, 3: 2.2 } as const;
 /** Rounds of relaxation among lone detections: each reaches about two spacings into what is unknown. */
 const RELAXATIONS = 2;
 
+/** The flow is lost where fewer than this share of the usual pathlines find a detection, of at least so many. */
+const BROKEN_SHARE = 0.5;
+const FEWEST_PROVEN = 12;
+
 /** What a linker works with. */
 export interface LinkerOptions {
   readonly dims: Dims;
@@ -35,6 +39,8 @@ export interface LinkerOptions {
   readonly reach: number;
   /** How far from the flow about it a lone detection's link may lead, length unit, in plane. */
   readonly loneReach: number;
+  /** The same where the flow is lost altogether. */
+  readonly lostReach: number;
   readonly bridge: number;
   readonly care: 'quick' | 'thorough';
   readonly riskLimit: number;
@@ -87,6 +93,7 @@ export class Linker {
   private readonly links = new FrameLinks();
   private readonly presence = new Presence();
   private readonly relaxation: Relaxation;
+  private readonly lost: Relaxation;
   private readonly step = new LastStep();
   private readonly prediction: Prediction = { x: 0, y: 0, z: 0, expected: 0, widest: 0 };
   /** Flow of this interval, of the one before, and of this one about twice as far. */
@@ -115,6 +122,7 @@ export class Linker {
     this.before = new NeighbourFlow(dims, radius, depthNoise);
     this.wide = new NeighbourFlow(dims, 2 * radius, depthNoise);
     this.relaxation = new Relaxation(dims, spacing, options.loneReach, depthNoise);
+    this.lost = new Relaxation(dims, spacing, options.lostReach, depthNoise);
     const start = Math.max(options.expected, noiseSquare);
     const thorough = options.care === 'thorough';
     this.predictors = new Predictors(options.picture, this.before, noiseSquare, start, spacing, thorough);
@@ -193,6 +201,7 @@ export class Linker {
     predictors.now = null;
     predictors.before = this.before;
     this.oneRound(block, from, time, false, false);
+    if (this.broken()) this.findAgain(block, from, time);
     for (let round = 1; round < ROUNDS; round++) {
       this.gather(block, from, time);
       this.releaseUnsure();
@@ -215,11 +224,36 @@ export class Linker {
         turn > 0,
         this.now,
         this.wide,
+        this.before,
         picture,
       );
       if (more === 0) return;
       this.gather(block, from, time);
     }
+  }
+
+  /**
+   * True when the first round linked far fewer pathlines than usual, chance hits taken off: the flow is not what it was a
+   * frame ago. What was linked then is mostly wrong, whatever its risk says.
+   */
+  private broken(): boolean {
+    const { search, links, presence, options } = this;
+    const rows = search.candidates.rows;
+    if (rows < FEWEST_PROVEN) return false;
+    let linked = 0;
+    for (let i = 0; i < links.entries; i++) if (links.took[i] >= 0) linked++;
+    const chance = Math.min(rows, search.gates * options.density);
+    return linked - chance < BROKEN_SHARE * presence.of(2, 0) * (rows - chance);
+  }
+
+  /** Drops all links of this frame and makes those that neighbours support, as far as a flow can have changed. */
+  private findAgain(block: DetectionBlock, from: number, time: number): void {
+    const { links, active, now, wide, before, options } = this;
+    for (let i = 0; i < links.entries; i++) links.release(i);
+    now.begin(0);
+    wide.begin(0);
+    const { riskLimit, picture } = options;
+    this.lost.link(riskLimit, active, block, from, time, links, false, now, wide, before, picture);
   }
 
   /** One round over all active pathlines without a link. */

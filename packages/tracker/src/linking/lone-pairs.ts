@@ -7,7 +7,7 @@ import type { NeighbourFlow } from './neighbour-flow.js';
 import { LEAST_WEIGHT } from './predictors.js';
 
 /**
- * Possible links between detections that are alone: one of the last frame that no link led to or from, and one of this
+ * Possible links between detections that are alone: one of the last frame that no link leads from, and one of this
  * frame that none has taken, within a distance of where the flow about them would carry it. Columns in compressed rows;
  * buffers are kept, one object a thread.
  */
@@ -48,7 +48,7 @@ export class LonePairs {
   /**
    * Collects the pairs of the frame that begins at row `from`. Where the flow about a lone one was looked at in this
    * frame, its prediction stands, unless `anew`. Else the flow comes from the links of this interval nearby
-   * (`near`), or about twice as far (`wide`), or else from the picture.
+   * (`near`), or about twice as far (`wide`), or from those of the interval before, or else from the picture.
    */
   collect(
     active: ActivePathlines,
@@ -59,6 +59,7 @@ export class LonePairs {
     anew: boolean,
     near: NeighbourFlow,
     wide: NeighbourFlow,
+    before: NeighbourFlow,
     picture: FlowGrid,
   ): void {
     const { reach, depth, dims, flow } = this;
@@ -69,7 +70,7 @@ export class LonePairs {
     this.lone = 0;
     this.pairs = 0;
     for (let i = 0; i < active.count && this.free > 0; i++) {
-      if (active.age[i] !== 1 || active.missed[i] !== 0 || links.took[i] >= 0) continue;
+      if (active.missed[i] !== 0 || links.took[i] >= 0) continue;
       const x = active.x[i];
       const y = active.y[i];
       const z = active.z[i];
@@ -87,6 +88,8 @@ export class LonePairs {
         const mz = z + half * flow[2];
         if (near.along(x, y, z, step, mx, my, mz, i, flow) > LEAST_WEIGHT) continue;
         if (wide.along(x, y, z, step, mx, my, mz, i, flow) > LEAST_WEIGHT) continue;
+        // Links of the interval before bear this entry's number while no frame was missed.
+        if (before.along(x, y, z, step, mx, my, mz, i, flow) > LEAST_WEIGHT) continue;
         picture.at(mx, my, mz, flow);
       }
       this.add(i, x, y, z, x + step * flow[0], y + step * flow[1], z + step * flow[2]);

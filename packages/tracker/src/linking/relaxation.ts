@@ -54,10 +54,11 @@ export class Relaxation {
     anew: boolean,
     near: NeighbourFlow,
     wide: NeighbourFlow,
+    before: NeighbourFlow,
     picture: FlowGrid,
   ): number {
     const { pairs } = this;
-    pairs.collect(active, block, from, time, links, anew, near, wide, picture);
+    pairs.collect(active, block, from, time, links, anew, near, wide, before, picture);
     if (pairs.lone === 0) return 0;
     this.reserve();
     this.gatherSupport();
