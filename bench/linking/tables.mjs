@@ -57,7 +57,7 @@ export function compactTable(full) {
   return [
     `Precision / recall by flow and displacement ratio; ${USUAL_WORDS}; the worse of the seeds. ${
       missed === 0 ? 'All bars met.' : `${missed} of ${barred(full.cases).length} bars missed.`
-    } Link risk: ${full.risk.misses.length === 0 ? 'all bars met' : `${full.risk.misses.length} bars missed`}. All of it, with the bars, the linker that is told the flow and plain nearest neighbour: \`bench/results/linking.md\`, made from ${full.file}.`,
+    } Link risk: ${full.risk.misses.length === 0 ? 'all bars met' : `${full.risk.misses.length} of its bars missed`}. All of it, with the bars, the linker that is told the flow and plain nearest neighbour: \`bench/results/linking.md\`, made from ${full.file}.`,
     table(['flow', ...ratios.map(String)], rows),
   ].join('\n\n');
 }

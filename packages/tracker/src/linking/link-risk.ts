@@ -13,8 +13,8 @@ export function decay(q: number): number {
 
 /** Observed over reckoned: of large risks, what small ones have more, and where the change is. Measured. */
 const LARGE_RISK_FACTOR = 0.6;
-const SMALL_RISK_FACTOR = 1.4;
-const SMALL_RISK = 1e-3;
+const SMALL_RISK_FACTOR = 1.7;
+const SMALL_RISK = 8e-4;
 
 /** Assignment of one frame: entry of each pathline (negative: none) and pathline of each detection (-1: free). Borrowed. */
 export interface Assignment {

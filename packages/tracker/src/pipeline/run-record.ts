@@ -7,6 +7,9 @@ const MUCH_SET_ASIDE = 0.05;
 /** Displacement ratio up to which linking was measured against truth (bench/results/linking.md); the first votes reach two spacings. */
 const LARGE_RATIO = 1.5;
 
+/** Links left out for their risk over links made above which results may be a selection (steady flows: below 0.03, measured). */
+const MANY_LEFT_OUT = 0.2;
+
 /** Tells what a person should look at in the finished run; to be called once, before `runRecord`. */
 export function tellConcerns(board: Board): void {
   const finished = board.finished!;
@@ -22,6 +25,12 @@ export function tellConcerns(board: Board): void {
   if (ratio !== null && ratio > LARGE_RATIO) {
     const text = `displacement ratio ${ratio.toFixed(2)}: particles move much farther than they are apart; missing and wrong links are likely beyond 1.5, record at a higher rate or seed less`;
     warn('linking/large-ratio', text, { ratio });
+  }
+  const counts = board.linkCounts!;
+  const leftOut = counts.leftOutForRisk;
+  if (leftOut > MANY_LEFT_OUT * counts.links) {
+    const text = `${leftOut} links were left out for their risk, ${counts.links} were made: the flow could not be followed everywhere, and what was followed may be a selection of it (layers that move differently, a flow that jumps, noise, too low a frame rate); look at the pathlines before any mean`;
+    warn('linking/many-left-out', text, { leftOut, made: counts.links });
   }
   if (!prior.noiseMeasured && board.request.resolved.settings.clock.kind !== 'pairs') {
     warn(

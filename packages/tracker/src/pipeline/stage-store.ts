@@ -124,6 +124,6 @@ export const storeStage: Stage = {
 function nothingLinked(): WakeloomError {
   return new WakeloomError(
     'linking/no-pathlines',
-    'linking: got no pathline of the shortest length kept, expected some; check the frame column, the rate and the scale, then --reach and --shortest',
+    'linking: got no pathline of the shortest length kept, expected some; check the frame column, the rate and the scale; where particles move by more than two spacings a frame set --reach by hand; two-frame recordings need --pair-delay; see --shortest and --risk-limit too',
   );
 }
