@@ -277,7 +277,7 @@ describe('tables', () => {
     expect(text).toContain('| street | 0.3 | 0.9979 / 0.9990 | 0.998 / 0.995 **missed** |');
     expect(text).toContain('| 4.0 | 2 times not reached |');
     expect(text).toContain('| 1e-2 to 1e-1 | 4000 | 200.0 | 20 | 0.10 | **missed** |');
-    expect(compactTable(record([good]))).toContain('Link risk: 1 bars missed');
+    expect(compactTable(record([good]))).toContain('Link risk: 1 of its bars missed');
     expect(compactTable(record([good]))).toContain('All bars met');
     expect(compactTable(record([good, bad]))).toContain('1 of 1 bars missed');
     expect(compactTable(record([good, bad]))).toContain('| street | 0.9979 / 0.9990 **missed** |');
