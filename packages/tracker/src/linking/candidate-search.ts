@@ -112,8 +112,8 @@ export class CandidateSearch {
         const square = dx * dx + dy * dy + dz * dz;
         if (square > gate) continue;
         const q = square * scale;
-        const e = candidates.edges++;
-        candidates.column[e] = row - from;
+        // By column, so that sums over candidates do not depend on how neighbours were looked up.
+        const e = candidates.insert(rows, row - from);
         candidates.cost[e] = square * perWidest + handicap;
         candidates.density[e] = peak * surpriseDecay(dims, q);
       }

@@ -21,6 +21,20 @@ export class Candidates {
     this.start[0] = 0;
   }
 
+  /** Makes room for an edge to `column` among those of the last row, which stay in order of their columns. Its number. */
+  insert(row: number, column: number): number {
+    let e = this.edges++;
+    const first = this.start[row];
+    while (e > first && this.column[e - 1] > column) {
+      this.column[e] = this.column[e - 1];
+      this.cost[e] = this.cost[e - 1];
+      this.density[e] = this.density[e - 1];
+      e--;
+    }
+    this.column[e] = column;
+    return e;
+  }
+
   /** Room for `more` further edges. */
   reserve(more: number): void {
     if (this.edges + more <= this.column.length) return;
