@@ -18,7 +18,7 @@ describe('links by typed-array cells and by kd-tree-javascript', () => {
       ],
       lossShare: 0.1,
       ghostShare: 0.2,
-      noise: 0.02,
+      noise: 0.06,
       seed: 8,
     });
     const block = truthBlock(dump);
