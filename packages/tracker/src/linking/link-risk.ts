@@ -71,8 +71,8 @@ export function linkRisk(
 
 /**
  * What is left out of the sum above (surprises larger than their law, exchanges of three) makes small risks larger;
- * that expected squares lean to the safe side makes large ones smaller. The two factors were set once, on flows with
- * known truth, and hold on others, seeds and densities (bench/results/linking.md).
+ * that expected squares lean to the safe side makes large ones smaller. The factors were set on the flows
+ * of bench/linking, whose record shows how well stated risks hold (bench/results/linking.md).
  */
 function calibrated(risk: number): number {
   return risk * (LARGE_RISK_FACTOR + SMALL_RISK_FACTOR / (1 + risk * (1 / SMALL_RISK)));
